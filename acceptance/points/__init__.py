@@ -1,0 +1,1 @@
+"""From samples to steady points: dwells, means, what the instruments add, propagation."""

@@ -1,0 +1,1 @@
+"""The report: a record, drawn. Nothing that a verdict rests on is computed here."""
