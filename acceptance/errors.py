@@ -3,6 +3,7 @@
     AcceptanceError          anything this package raises on purpose
     ├── LimitsError          a limits or bench file is wrong; carries every fault found
     ├── LogError             a log cannot be read
+    │   └── SeveralSerialsError  the logs given belong to several units
     ├── MeasurementError     a reading or an instrument makes no sense
     ├── RecordError          a record cannot be read or does not agree with itself
     └── ReportError          a report cannot be drawn or written
@@ -23,6 +24,7 @@ __all__ = [
     "MeasurementError",
     "RecordError",
     "ReportError",
+    "SeveralSerialsError",
 ]
 
 
@@ -59,6 +61,14 @@ class LogError(AcceptanceError):
     def __init__(self, file: str, found: str, expected: str = "", *, line: int = 0, column: int = 0) -> None:
         self.fault = Fault(file, line, column, found, expected)
         super().__init__(str(self.fault))
+
+
+class SeveralSerialsError(LogError):
+    """The logs given belong to several units; `serials` names them in the order they were met."""
+
+    def __init__(self, file: str, found: str, expected: str = "", *, serials: Sequence[str] = ()) -> None:
+        self.serials = tuple(serials)
+        super().__init__(file, found, expected)
 
 
 class MeasurementError(AcceptanceError):

@@ -16,7 +16,17 @@ from dataclasses import dataclass
 
 from acceptance.errors import MeasurementError
 
-__all__ = ["KINDS", "UNITS", "Rate", "Unit", "find_unit", "parse_quantity", "parse_quantity_with_bound", "parse_rate"]
+__all__ = [
+    "KINDS",
+    "UNITS",
+    "Rate",
+    "Unit",
+    "find_unit",
+    "parse_quantity",
+    "parse_quantity_with_bound",
+    "parse_rate",
+    "quoted",
+]
 
 _MICRO = "\N{MICRO SIGN}"
 
@@ -51,7 +61,18 @@ KINDS: dict[str, str] = {
     "temperature coefficient": "1/K",
 }
 
-_PREFIXES = {"p": 1e-12, "n": 1e-9, "u": 1e-6, _MICRO: 1e-6, "μ": 1e-6, "m": 1e-3, "": 1.0, "k": 1e3, "M": 1e6}
+_PREFIXES = {
+    "p": 1e-12,
+    "n": 1e-9,
+    "u": 1e-6,
+    _MICRO: 1e-6,
+    "μ": 1e-6,
+    "m": 1e-3,
+    "": 1.0,
+    "k": 1e3,
+    "M": 1e6,
+    "G": 1e9,
+}
 
 
 def _prefixed(kind: str, symbol: str, prefixes: str) -> list[Unit]:
@@ -72,7 +93,7 @@ def _table() -> dict[str, Unit]:
         *_prefixed("time", "s", f"n{micro}m-"),
         Unit("min", "time", 60.0),
         Unit("h", "time", 3600.0),
-        *_prefixed("frequency", "Hz", "m-kM"),
+        *_prefixed("frequency", "Hz", "m-kMG"),
         Unit("°C", "temperature", 1.0),
         Unit("℃", "temperature", 1.0),
         Unit("degC", "temperature", 1.0),
@@ -87,14 +108,19 @@ def _table() -> dict[str, Unit]:
         Unit("ppm/K", "temperature coefficient", 1e-6),
         Unit("ppm/°C", "temperature coefficient", 1e-6),
         Unit("%/K", "temperature coefficient", 1e-2),
+        Unit("1/K", "temperature coefficient", 1.0),
     ]
     return {unit.symbol: unit for unit in units}
 
 
 UNITS: dict[str, Unit] = _table()
 
-# A letter for each prefix; the case of a unit is kept, since mA is not MA.
-_NUMBER = re.compile(r"[+\-−]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][+\-−]?\d+)?")
+_NUMBER = re.compile(r"([+\-−]?(?:\d+(?:\.\d*)?|\.\d+))(?:[eE]([+\-−]?\d{1,5}))?", re.ASCII)
+_NUMBER_STARTS = tuple("0123456789.")
+_ABSOLUTE_ZERO = -273.15  # °C
+_LONGEST = 200  # characters that a quantity may have
+# factors that only move the decimal point: 57 % is read as 57e-2, which is 0.57 and not 57 * 0.01
+_POWERS = {factor: round(math.log10(factor)) for factor in (*_PREFIXES.values(), 1e-2)}
 
 
 @dataclass(frozen=True, slots=True)
@@ -134,31 +160,55 @@ def parse_quantity(text: str, kind: str) -> float:
         If there is no number, no unit, an unknown unit, or a unit of another kind.
     """
     text = text.strip()
+    if len(text) > _LONGEST:
+        msg = f"{quoted(text)} is too long for a number and its unit"
+        raise MeasurementError(msg)
     match = _NUMBER.match(text)
     if match is None:
-        msg = f'"{text}" does not begin with a number'
+        msg = f"{quoted(text)} does not begin with a number" if text else "no number is given"
         raise MeasurementError(msg)
-    symbol = text[match.end() :].strip()
-    number = float(match.group().replace("−", "-"))
-    unit = find_unit(symbol, kind)
+    unit = find_unit(text[match.end() :], kind)
     if unit is None:
-        raise MeasurementError(_unit_fault(text, symbol, kind))
-    value = unit.to_si(number)
+        raise MeasurementError(_unit_fault(text, text[match.end() :].strip(), kind))
+    value = _scaled(match, unit)
     if not math.isfinite(value):
-        msg = f'"{text}" is too large'
+        msg = f"{quoted(text)} is too large"
+        raise MeasurementError(msg)
+    if kind == "temperature" and value < _ABSOLUTE_ZERO:
+        msg = f"{quoted(text)} lies below absolute zero"
         raise MeasurementError(msg)
     return value
 
 
+def quoted(text: str) -> str:
+    """The text in quotation marks, on one line and not longer than a line, for a message."""
+    shown = text if len(text) <= 60 else text[:57] + "..."
+    return '"' + "".join(c if c.isprintable() else c.encode("unicode_escape").decode("ascii") for c in shown) + '"'
+
+
+def _scaled(match: re.Match[str], unit: Unit) -> float:
+    """The SI value, correctly rounded where the unit only moves the decimal point; never minus zero."""
+    digits = match[1].replace("−", "-")
+    exponent = int((match[2] or "0").replace("−", "-"))
+    shift = _POWERS.get(unit.factor)
+    if shift is not None and unit.offset == 0:
+        return float(f"{digits}e{exponent + shift}") + 0.0
+    return unit.to_si(float(f"{digits}e{exponent}")) + 0.0
+
+
 def _unit_fault(text: str, symbol: str, kind: str) -> str:
     if not symbol:
-        return f'"{text}" has no unit'
+        return f"{quoted(text)} has no unit"
     if symbol[0] == "," and symbol[1:2].isdigit():
-        return f'"{text}" has a decimal comma, and a limits file takes a decimal point'
+        return f"{quoted(text)} has a decimal comma, and a limits file takes a decimal point"
+    if symbol[0].isdigit():
+        return f"{quoted(text)} has a space inside its number"
     known = UNITS.get(symbol)
     if known is not None:
-        return f'"{text}" is a {known.kind}, not a {kind}'
-    return f'"{symbol}" in "{text}" is no known unit'
+        return f"{quoted(text)} is a {known.kind}, not a {kind}"
+    alike = " or ".join(u.symbol for u in UNITS.values() if u.kind == kind and u.symbol.lower() == symbol.lower())
+    hint = f" (units keep their case: {alike})" if alike else ""
+    return f"{quoted(symbol)} in {quoted(text)} is no known unit{hint}"
 
 
 def parse_quantity_with_bound(text: str, kind: str) -> tuple[float, float | None]:
@@ -168,7 +218,7 @@ def parse_quantity_with_bound(text: str, kind: str) -> tuple[float, float | None
         return parse_quantity(value, kind), None
     limit = parse_quantity(bound, "temperature difference" if kind == "temperature" else kind)
     if limit < 0:
-        msg = f'"{text}" has a negative bound'
+        msg = f"{quoted(text)} has a negative bound"
         raise MeasurementError(msg)
     return parse_quantity(value, kind), limit
 
@@ -177,12 +227,12 @@ def parse_rate(text: str) -> Rate:
     """A change of temperature within an interval, written "1 K/30 min" or "2 K/h"."""
     difference, mark, interval = text.partition("/")
     if not mark:
-        msg = f'"{text}" is no change within a time'
+        msg = f"{quoted(text)} is no change within a time"
         raise MeasurementError(msg)
     interval = interval.strip()
-    seconds = parse_quantity(interval if interval[:1].isdigit() else f"1 {interval}", "time")
+    seconds = parse_quantity(interval if interval[:1] in _NUMBER_STARTS else f"1 {interval}", "time")
     kelvin = parse_quantity(difference, "temperature difference")
     if kelvin <= 0 or seconds <= 0:
-        msg = f'"{text}" must be above zero'
+        msg = f"{quoted(text)} must be above zero"
         raise MeasurementError(msg)
     return Rate(kelvin, seconds)

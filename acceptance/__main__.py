@@ -1,0 +1,5 @@
+"""`python -m acceptance` is `acceptance`."""
+
+from acceptance.cli import main
+
+main()

@@ -1,0 +1,509 @@
+"""What cannot be true about a log's samples: clocks, converters, columns and units that betray themselves.
+
+A bar keeps readings from being judged, so it must be as rare on good data as a miss on bad data. Every check
+that looks for a reading standing still therefore asks first whether this channel is known to move there: a
+coarse converter, a quiet dwell and a zero current stand still for good reasons.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from acceptance.bench.log import BenchLog, Doubt, Span
+
+__all__ = ["check_health"]
+
+Values = NDArray[np.float64]
+
+_GAP_STEPS = 5.0  # a gap is a step this many times the median step
+_COARSE_SHARE = 0.01  # repeated times beyond this share are no accident
+_FROZEN_RUN = 50  # samples
+_CLIPPED_RUN = 5
+_NOISE_STEPS = 3.0  # second differences (2.4 sigma) of this many resolution steps: then a run of equals is no chance
+_LISTED = 200  # spans kept of one doubt without a bar
+
+_ANALOGUE = ("input_voltage", "input_current", "input_power", "output_voltage", "output_current", "ripple")
+_PLACED = ("input_voltage", "input_current", "input_power", "output_voltage", "output_current")
+
+
+def check_health(
+    log: BenchLog,
+    *,
+    supply: str | None = None,
+    rated_input_voltage: float | None = None,
+    rated: Mapping[str, tuple[float, float]] | None = None,
+) -> tuple[Doubt, ...]:
+    """Every doubt about the samples of a log, those that bar a judgment marked.
+
+    Parameters
+    ----------
+    supply
+        "ac" or "dc": what the product is fed with; None where not known.
+    rated_input_voltage
+        [V]
+    rated
+        Output to its rated voltage and current. [V, A]
+
+    Notes
+    -----
+    A gap's span ends with the last sample before the gap, so that a dwell is cut at the end of the span.
+    """
+    rated = rated or {}
+    tables = tuple(_tables(log))
+    doubts: list[Doubt] = []
+    for table in tables:
+        doubts += _clock_doubts(log, table)
+    for key in log.samples.columns:
+        quantity = key.partition(" ")[0]
+        if quantity in _ANALOGUE:
+            channel = _Channel(log, key, _values(log, key), _driver(log, key))
+            doubts += _clipped(channel, tables)
+            if quantity in _PLACED:
+                doubts += _frozen(channel, tables)
+    doubts += _missing(log)
+    doubts += _no_input_power(log, supply)
+    doubts += _swapped(log, rated, rated_input_voltage)
+    doubts += _scale(log, rated, rated_input_voltage)
+    return tuple(doubts)
+
+
+# --- parts of a log -------------------------------------------------------------------------------------------------
+
+
+def _tables(log: BenchLog) -> Iterator[Span]:
+    table = log.samples["table"].to_numpy()
+    cuts = np.flatnonzero(np.diff(table)) + 1
+    edges = [0, *cuts.tolist(), len(table)]
+    yield from ((a, b) for a, b in zip(edges, edges[1:], strict=False) if b > a)
+
+
+def _values(log: BenchLog, key: str) -> Values:
+    return log.samples[key].to_numpy(np.float64)
+
+
+def _where(log: BenchLog, row: int) -> str:
+    name, first, _ = log.rows_of((row, row + 1))
+    return f"{name}:{first}"
+
+
+def _words(key: str) -> str:
+    return key.replace("_", " ")
+
+
+def _quantity_keys(log: BenchLog) -> tuple[str, ...]:
+    return tuple(key for key in log.samples.columns if key not in ("stage", "table", "line") and key != "time")
+
+
+def _driver(log: BenchLog, key: str) -> Values | None:
+    """What tells that the load changed: the output's current, else the load setting."""
+    qualifier = key.partition(" ")[2]
+    names = [f"load_setting {qualifier}".strip(), f"output_current {qualifier}".strip()]
+    candidates = names if key == names[1] else names[::-1]
+    candidates += [*log.keys("output_current"), *log.keys("load_setting")]
+    for name in candidates:
+        if name in log.samples and name != key:
+            return _values(log, name)
+    return None
+
+
+# --- time -----------------------------------------------------------------------------------------------------------
+
+
+def _clock_doubts(log: BenchLog, table: Span) -> Iterator[Doubt]:
+    if "time" not in log.samples or table[1] - table[0] < 2:
+        return
+    step = np.diff(_values(log, "time")[table[0] : table[1]])
+    back = np.flatnonzero(step < 0)
+    if back.size:
+        row = table[0] + int(back[0])
+        count = "once" if back.size == 1 else f"{back.size} times"
+        text = f"time runs backwards {count}, first after {_where(log, row)} by {-step[back[0]]:.6g} s"
+        remedy = "write each run of the logger into a file of its own"
+        channels = (*_quantity_keys(log), "time")
+        yield Doubt("backward time", text, bars=True, channels=channels, spans=(table,), remedy=remedy)
+        return
+    yield from _repeated(log, table, step)
+    yield from _gaps(log, table, step)
+
+
+def _repeated(log: BenchLog, table: Span, step: Values) -> Iterator[Doubt]:
+    """Equal times in a row: a clock coarser than the logger is normal; one that stands still bars what needs time.
+
+    Readings stay good in either case, so only the channel "time" is ever barred.
+    """
+    same = np.flatnonzero(step == 0)
+    if not same.size:
+        return
+    first, last = _runs(step == 0)
+    where = _where(log, table[0] + int(first[0]))
+    text = f"{same.size} samples carry the time of the one before, first after {where}"
+    lengths = np.diff(np.flatnonzero(np.concatenate(([True], step != 0, [True]))))
+    typical = float(np.median(lengths))
+    if same.size <= max(1, _COARSE_SHARE * step.size):
+        spans = tuple((table[0] + int(a), table[0] + int(b) + 1) for a, b in zip(first, last, strict=True))
+        yield Doubt("repeated time", text, channels=("time",), spans=spans[:_LISTED])
+    elif typical > 1 and lengths.max() <= 2 * typical + 1:
+        moved = float(np.median(step[step > 0])) if (step > 0).any() else 0.0
+        yield Doubt("repeated time", f"{text}; the clock moves in steps of {moved:.6g} s", channels=("time",))
+    else:
+        spans = tuple((table[0] + int(a), table[0] + int(b) + 1) for a, b in zip(first, last, strict=True))
+        remedy = "let the logger write the time of every sample"
+        yield Doubt("repeated time", text, bars=True, channels=("time",), spans=spans, remedy=remedy)
+
+
+def _gaps(log: BenchLog, table: Span, step: Values) -> Iterator[Doubt]:
+    """Steps far longer than a regular logger's; rows that a person wrote at leisure have no gaps."""
+    known = step[step > 0]
+    if known.size < 10:
+        return
+    median = float(np.median(known))
+    if np.mean(np.abs(known - median) <= 0.5 * median) < 0.75:
+        return
+    rows = np.flatnonzero(step > _GAP_STEPS * median)
+    if not rows.size:
+        return
+    longest = rows[np.argmax(step[rows])]
+    where = _where(log, table[0] + int(longest))
+    gaps = "1 gap" if rows.size == 1 else f"{rows.size} gaps"
+    text = f"{gaps} in the time; the longest, {step[longest]:.6g} s at steps of {median:.6g} s, is after {where}"
+    spans = tuple((table[0] + int(row), table[0] + int(row) + 1) for row in rows)
+    yield Doubt("gap", text, channels=("time",), spans=spans, remedy="dwells end at a gap")
+
+
+def _runs(mask: NDArray[np.bool_]) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
+    """First and last + 1 of every stretch of True."""
+    edges = np.flatnonzero(np.diff(np.concatenate(([False], mask, [False])).view(np.int8)))
+    return edges[::2], edges[1::2]
+
+
+# --- readings that stand still --------------------------------------------------------------------------------------
+
+
+@dataclass(frozen=True, slots=True)
+class _Channel:
+    log: BenchLog
+    key: str
+    values: Values
+    driver: Values | None  # the load, where another channel tells it
+
+
+def _resolution(values: Values) -> float:
+    """The smallest step between two readings; 0 where all are equal."""
+    sample = values[np.isfinite(values)]
+    if sample.size > 20_000:
+        sample = sample[:20_000]
+    levels = np.unique(sample)
+    if levels.size < 2:
+        return 0.0
+    steps = np.diff(levels)
+    # converting units leaves equal readings a rounding apart
+    steps = steps[steps > 1e-9 * max(abs(levels[0]), abs(levels[-1]))]
+    return float(steps.min()) if steps.size else 0.0
+
+
+def _noise(values: Values, mask: NDArray[np.bool_]) -> tuple[float, int]:
+    """Median second difference over three marked neighbours, and how many there are; a ramp has none."""
+    if values.size < 3:
+        return 0.0, 0
+    whole = mask[:-2] & mask[1:-1] & mask[2:]
+    second = np.abs(values[:-2] - 2 * values[1:-1] + values[2:])[whole]
+    second = second[np.isfinite(second)]
+    return (float(np.median(second)), second.size) if second.size else (0.0, 0)
+
+
+def _clipped(channel: _Channel, tables: Sequence[Span]) -> Iterator[Doubt]:
+    """A converter at the end of its range: the extreme reading stands still where others of its size move.
+
+    Zero is no rail: a current is 0.000 at no load. A quiet voltage at no load is none either.
+    """
+    values = channel.values
+    finite = np.isfinite(values)
+    if values.size < 2 * _CLIPPED_RUN or not finite.any():
+        return
+    top, bottom = (
+        float(np.max(values, where=finite, initial=-np.inf)),
+        float(np.min(values, where=finite, initial=np.inf)),
+    )
+    if top == bottom:
+        return
+    for rail in (top, bottom):
+        if abs(rail) <= 0.02 * max(abs(top), abs(bottom)):
+            continue
+        at_rail = values == rail
+        if np.count_nonzero(at_rail) < max(_CLIPPED_RUN, 0.01 * values.size):
+            continue
+        spans = _clipped_spans(channel, at_rail, tables)
+        if spans:
+            count = sum(b - a for a, b in spans)
+            text = (
+                f"{_words(channel.key)} stands at its {'largest' if rail == top else 'smallest'} value {rail:.6g} "
+                f"in {count} samples, first at {_where(channel.log, spans[0][0])}, while its other readings vary: clipped"
+            )
+            remedy = "measure again in a higher range"
+            yield Doubt("clipped", text, bars=True, channels=(channel.key,), spans=spans, remedy=remedy)
+
+
+def _clipped_spans(channel: _Channel, at_rail: NDArray[np.bool_], tables: Sequence[Span]) -> tuple[Span, ...]:
+    need = max(_CLIPPED_RUN, 0.01 * at_rail.size)
+    step = _resolution(channel.values)
+    found: list[Span] = []
+    for a, b in tables:
+        values, mask = channel.values[a:b], at_rail[a:b]
+        noise, count = _noise(values, ~mask)
+        if (
+            count < 20
+            or step == 0
+            or noise < _NOISE_STEPS * step
+            or noise > 0.2 * abs(values[mask][0] if mask.any() else 1.0)
+        ):
+            continue
+        first, last = _runs(mask)
+        long = last - first >= need
+        if not long.any() or not _is_loaded(channel, a, first[long], last[long]):
+            continue
+        piled = last - first >= _CLIPPED_RUN
+        found += [(a + int(i), a + int(j)) for i, j in zip(first[piled], last[piled], strict=True)]
+    return tuple(found)
+
+
+def _is_loaded(channel: _Channel, start: int, first: NDArray[np.intp], last: NDArray[np.intp]) -> bool:
+    """Whether the unit carried a load there; at no load a reading may be quiet for good reason."""
+    if channel.driver is None:
+        return True
+    top = float(np.nanmax(np.abs(channel.driver), initial=0.0))
+    loads = [np.nanmedian(np.abs(channel.driver[start + i : start + j])) for i, j in zip(first, last, strict=True)]
+    return top == 0 or max(loads) >= 0.1 * top
+
+
+def _frozen(channel: _Channel, tables: Sequence[Span]) -> Iterator[Doubt]:
+    """A reading that stops moving amid readings of its own level that move, or while the load changes."""
+    values = channel.values
+    if values.size < 2 * _FROZEN_RUN:
+        return
+    half = _FROZEN_RUN // 2
+    if not (values[:-half:half] == values[half::half]).any():  # no long run without two such equals
+        return
+    step = _resolution(values)
+    scale = float(np.nanmax(np.abs(values), initial=0.0))
+    found: list[Span] = []
+    for a, b in tables:
+        part = values[a:b]
+        first, last = _runs(part[1:] == part[:-1])
+        long = last - first >= _FROZEN_RUN - 1
+        runs = [(int(i), int(j) + 1) for i, j in zip(first[long], last[long], strict=True)]
+        runs = [run for run in runs if abs(part[run[0]]) > 0.01 * scale]
+        if not runs or step == 0 or len(runs) > 8:  # so many are the unit's manner, such as bursts at no load
+            continue
+        still = np.zeros(part.size, bool)
+        for i, j in runs:
+            still[i:j] = True
+        driver = None if channel.driver is None else channel.driver[a:b]
+        found += [(a + i, a + j) for i, j in runs if _stopped(part, (i, j), still, driver, step)]
+    if found:
+        first_run = found[0]
+        text = (
+            f"{_words(channel.key)} stands still at {values[first_run[0]]:.6g} for {first_run[1] - first_run[0]} samples "
+            f"from {_where(channel.log, first_run[0])}, while its other readings vary: frozen"
+        )
+        remedy = "look to the instrument and its logger, and measure again"
+        yield Doubt("frozen", text, bars=True, channels=(channel.key,), spans=tuple(found), remedy=remedy)
+
+
+def _stopped(part: Values, run: Span, still: NDArray[np.bool_], driver: Values | None, step: float) -> bool:
+    """Whether this run cannot be a quiet dwell: readings of its level have noise, and it does not end with the load."""
+    level = part[run[0]]
+    near = ~still & (np.abs(part - level) <= max(0.02 * abs(level), 20 * step))
+    noise, count = _noise(part, near)
+    if count < 20 or noise < _NOISE_STEPS * step:
+        return False
+    if driver is None:
+        return False
+    span = float(np.nanmax(driver, initial=-np.inf) - np.nanmin(driver, initial=np.inf))
+    inside = driver[run[0] : run[1]]
+    if not span > 0 or not np.isfinite(inside).all():
+        return False
+    edge = max(3, len(inside) // 20)
+    core = inside[edge:-edge] if len(inside) > 4 * edge else inside
+    if float(core.max() - core.min()) > 0.05 * span:
+        return True  # the load changed, and the reading did not
+    load = float(np.median(inside))
+    return any(
+        _noisy_neighbours(part, driver, rows, load, 0.02 * span, step)
+        for rows in ((max(0, run[0] - 24), run[0]), (run[1], min(part.size, run[1] + 24)))
+    )
+
+
+def _noisy_neighbours(part: Values, driver: Values, rows: Span, load: float, within: float, step: float) -> bool:
+    """Whether the samples beside a run, at the same load, have noise: then the run began amid a dwell."""
+    values, loads = part[rows[0] : rows[1]], driver[rows[0] : rows[1]]
+    noise, count = _noise(values, np.abs(loads - load) <= within)
+    return count >= 8 and noise >= _NOISE_STEPS * step
+
+
+# --- what is missing, and columns that cannot be what they say --------------------------------------------------------
+
+
+def _missing(log: BenchLog) -> Iterator[Doubt]:
+    """Empty readings that the reader has not told of already."""
+    told = {key for doubt in log.doubts if doubt.kind in ("missing", "over range") for key in doubt.channels}
+    table = log.samples["table"].to_numpy()
+    for key in (*_quantity_keys(log), "time"):
+        if key in told or key not in log.samples or log.samples[key].dtype.kind != "f":
+            continue
+        empty = np.isnan(_values(log, key))
+        if not empty.any():
+            continue
+        # a table without this column misses nothing
+        logged = np.unique(table[~empty])
+        rows = np.flatnonzero(empty & np.isin(table, logged))
+        if rows.size:
+            text = f"{rows.size} readings of {_words(key)} missing, first at {_where(log, int(rows[0]))}"
+            yield Doubt("missing", text, channels=(key,))
+
+
+def _no_input_power(log: BenchLog, supply: str | None) -> Iterator[Doubt]:
+    columns = log.samples.columns
+    has_power = "input_power" in columns or "power_factor" in columns
+    has_power = has_power or "input_power" in log.stated or "power_factor" in log.stated
+    if supply != "ac" or has_power or not {"input_voltage", "input_current"} <= set(columns):
+        return
+    text = "an a.c. input with volts and amperes, but no power and no power factor: their product is no power"
+    remedy = "record the input power with a wattmeter, or the power factor"
+    yield Doubt("no input power", text, bars=True, channels=("input_power", "input_current"), remedy=remedy)
+
+
+def _steady(log: BenchLog) -> NDArray[np.bool_]:
+    """Samples under the ordinary load; all where no stage is called steady."""
+    stage = log.samples["stage"]
+    if "steady" not in stage.cat.categories:
+        return np.ones(len(stage), bool)
+    return (stage == "steady").to_numpy()
+
+
+def _output_keys(log: BenchLog, output: str, rated: Mapping[str, tuple[float, float]]) -> tuple[str, str]:
+    first = next(iter(rated), "")
+    keys = [f"{quantity} {output}" for quantity in ("output_voltage", "output_current")]
+    bare = [key.partition(" ")[0] if key not in log.samples and output == first else key for key in keys]
+    return bare[0], bare[1]
+
+
+def _median(values: Values) -> float:
+    known = values[np.isfinite(values)]
+    return float(np.median(known)) if known.size else float("nan")
+
+
+def _swapped(
+    log: BenchLog, rated: Mapping[str, tuple[float, float]], rated_input_voltage: float | None
+) -> Iterator[Doubt]:
+    steady = _steady(log)
+    for output, (volts, amperes) in rated.items():
+        voltage, current = _output_keys(log, output, rated)
+        if voltage not in log.samples or current not in log.samples:
+            continue
+        v, i = _values(log, voltage)[steady], _values(log, current)[steady]
+        if abs(volts - amperes) > 0.3 * max(volts, amperes) and _mostly(
+            (np.abs(i - volts) < 0.1 * volts) & (np.abs(v - volts) > 0.2 * volts) & (np.abs(v) < 1.5 * amperes)
+        ):
+            text = f"{_words(voltage)} reads like a current, and {_words(current)} like the rated {volts:g} V: swapped"
+            remedy = "say which column is which under log: columns:"
+            yield Doubt("swapped", text, bars=True, channels=(voltage, current), remedy=remedy)
+        elif rated_input_voltage is not None and "input_voltage" in log.samples:
+            yield from _ends_swapped(log, voltage, volts, rated_input_voltage, steady)
+    yield from _gains_power(log, rated, steady)
+
+
+def _mostly(mask: NDArray[np.bool_], share: float = 0.8) -> bool:
+    return mask.size > 0 and float(np.mean(mask)) >= share
+
+
+def _ends_swapped(
+    log: BenchLog, voltage: str, volts: float, rated_input: float, steady: NDArray[np.bool_]
+) -> Iterator[Doubt]:
+    if abs(volts - rated_input) <= 0.3 * max(volts, rated_input):
+        return
+    v_in, v_out = _values(log, "input_voltage")[steady], _values(log, voltage)[steady]
+    if _mostly(np.abs(v_in - volts) < 0.1 * volts) and _mostly(np.abs(v_out - rated_input) < 0.2 * rated_input):
+        text = f"input voltage reads like the rated {volts:g} V output, and {_words(voltage)} like the input: swapped"
+        remedy = "say which column is which under log: columns:"
+        yield Doubt("swapped", text, bars=True, channels=("input_voltage", voltage), remedy=remedy)
+
+
+def _gains_power(log: BenchLog, rated: Mapping[str, tuple[float, float]], steady: NDArray[np.bool_]) -> Iterator[Doubt]:
+    """More power out than in, in nearly all samples under load: no gain error does that."""
+    if "input_power" not in log.samples:
+        return
+    power_in = _values(log, "input_power")
+    pairs = [(v, v.replace("output_voltage", "output_current")) for v in log.keys("output_voltage")]
+    pairs = [(v, i) for v, i in pairs if i in log.samples]
+    if not pairs:
+        return
+    power_out = np.sum([_values(log, v) * _values(log, i) for v, i in pairs], axis=0)
+    top = float(np.nanmax(power_out[steady], initial=0.0))
+    loaded = steady & (power_out > 0.1 * top) & np.isfinite(power_in)
+    if top <= 0 or np.count_nonzero(loaded) < 2 or not _mostly(power_out[loaded] > 1.02 * power_in[loaded], 0.95):
+        return
+    near = all(
+        abs(_median(_values(log, v)[loaded]) - rated[q][0]) <= 0.2 * rated[q][0]
+        for (v, _), q in ((pair, pair[0].partition(" ")[2] or next(iter(rated), "")) for pair in pairs)
+        if q in rated
+    )
+    outputs = () if near and rated else tuple(key for pair in pairs for key in pair)
+    inputs = tuple(key for key in ("input_power", "input_current", "power_factor") if key in log.samples)
+    text = "the output power exceeds the input power in nearly every sample: columns are swapped, or a unit is wrong"
+    remedy = "say which column is which, and in which unit, under log: columns:"
+    yield Doubt("swapped", text, bars=True, channels=(*inputs, *outputs), remedy=remedy)
+
+
+def _scale(
+    log: BenchLog, rated: Mapping[str, tuple[float, float]], rated_input_voltage: float | None
+) -> Iterator[Doubt]:
+    steady = _steady(log)
+    for output, (volts, amperes) in rated.items():
+        voltage, current = _output_keys(log, output, rated)
+        i = _values(log, current) if current in log.samples else None
+        if voltage in log.samples:
+            chosen = steady & _upper(i, steady)
+            yield from _off_by_tens(log, voltage, _median(_values(log, voltage)[chosen]), volts, "V")
+        if i is not None:
+            known = i[steady & np.isfinite(i)]
+            high = float(np.quantile(np.abs(known), 0.95)) if known.size else 0.0
+            if high > 8 * amperes:
+                yield _scale_doubt(log, current, high, amperes, "A")
+    if rated_input_voltage is not None and "input_voltage" in log.samples:
+        median = _median(_values(log, "input_voltage")[steady])
+        yield from _off_by_tens(log, "input_voltage", median, rated_input_voltage, "V")
+    if "power_factor" in log.samples:
+        factor = _median(np.abs(_values(log, "power_factor")))
+        if factor > 1.05:
+            yield _scale_doubt(log, "power_factor", factor, 1.0, "")
+
+
+def _upper(current: Values | None, steady: NDArray[np.bool_]) -> NDArray[np.bool_]:
+    """Samples in the upper half of the load."""
+    if current is None:
+        return steady
+    top = float(np.nanmax(np.abs(current[steady]), initial=0.0))
+    return np.abs(current) >= 0.5 * top
+
+
+def _off_by_tens(log: BenchLog, key: str, median: float, rating: float, symbol: str) -> Iterator[Doubt]:
+    ratio = abs(median) / rating
+    if ratio > 0 and np.isfinite(ratio):
+        tens = round(float(np.log10(ratio)))
+        if 1 <= abs(tens) <= 3 and abs(np.log10(ratio) - tens) < 0.08:
+            yield _scale_doubt(log, key, median, rating, symbol)
+
+
+def _scale_doubt(log: BenchLog, key: str, value: float, rating: float, symbol: str) -> Doubt:
+    """A bar only where the unit was assumed: a written unit is the log's own word, and the unit may be faulty."""
+    assumed = any(channel.key == key and channel.unit_from == "assumed" for channel in log.channels)
+    rating_text = f"rated {rating:g} {symbol}".strip() if symbol else "at most 1"
+    text = f"{_words(key)} reads {value:.4g} {symbol}".rstrip() + f" against {rating_text}"
+    text += ", and its unit was assumed" if assumed else ""
+    return Doubt(
+        "scale", text, bars=assumed, channels=(key,), remedy="write the unit into the heading or under log: columns:"
+    )

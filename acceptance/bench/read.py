@@ -1,0 +1,422 @@
+"""Log files -> `BenchLog`: the whole of reading, in order.
+
+bytes ──text or workbook──> raw tables ──assemble──> samples in SI ──read_logs──> one log of one unit
+"""
+
+from __future__ import annotations
+
+import hashlib
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass
+from datetime import date
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from acceptance.bench.assemble import Samples, assemble, spans_of
+from acceptance.bench.clocks import parse_day
+from acceptance.bench.headings import Vocabulary, shown
+from acceptance.bench.log import BenchLog, Channel, Doubt, Evidence, Ignored, Span
+from acceptance.bench.stages import split_name, stage_of_sheet
+from acceptance.bench.table import Source
+from acceptance.bench.text import read_text
+from acceptance.bench.workbook import is_workbook, read_workbook
+from acceptance.errors import LogError, SeveralSerialsError
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+__all__ = ["read_logs"]
+
+MAX_TEXT_BYTES = 2 << 30
+MAX_WORKBOOK_BYTES = 256 << 20
+
+_SERIAL_NOTES = (
+    "serial", "serial number", "serial no", "serial no.", "serialno", "serial nr", "sn", "s/n", "unit serial",
+    "dut serial", "seriennummer", "numéro de série",
+)  # fmt: skip
+_DATE_NOTES = ("date", "test date", "date of test", "tested", "tested on", "datum", "prüfdatum")
+
+
+@dataclass(frozen=True, slots=True)
+class _File:
+    """One file, read."""
+
+    source: Source
+    samples: list[Samples]
+    evidence: Evidence
+    stem_serial: str
+    stem_stage: str
+
+
+def read_logs(
+    paths: Sequence[Path],
+    *,
+    columns: Mapping[str, tuple[str, str | None]] | None = None,
+    stated: Mapping[str, float] | None = None,
+    load_mode: str | None = None,
+    outputs: Sequence[str] = (),
+    serial: str | None = None,
+    progress: Callable[[int, int], None] | None = None,
+) -> BenchLog:
+    """The log of one unit, all its files together, in SI units.
+
+    Parameters
+    ----------
+    paths
+        Delimited text or workbooks, told apart by what is in them; samples keep this order.
+    columns
+        Channel key ("output_voltage", "temperature case") to its heading as in the file and its unit, or None.
+    stated
+        Channel key to a value that was not logged. [SI]
+    load_mode
+        CC, CR, CV or CP, for samples whose log does not tell.
+    outputs
+        The product's outputs; the first is meant where a heading names none. Without them such channels stay bare.
+    serial
+        The unit's; without it a serial column or note tells, else the file's name without its stage.
+    progress
+        Called with the number of files read and of all files.
+
+    Raises
+    ------
+    LogError
+        If a file cannot be read, holds no table of readings, or a cell is not what its heading says.
+    SeveralSerialsError
+        If the files belong to several units.
+    """
+    if not paths:
+        raise LogError(file="log", found="no log was given", expected="expected at least one file")
+    vocabulary = Vocabulary(columns, outputs)
+    files: list[_File] = []
+    repeated: list[Ignored] = []
+    for number, path in enumerate(map(Path, paths)):
+        _read_another(path, files, repeated, vocabulary, load_mode)
+        if progress is not None:
+            progress(number + 1, len(paths))
+    _refuse_unmet_columns(files, vocabulary)
+    unit, serial_from, serial_doubts = _serial(files, serial)
+    return _merge(files, vocabulary, dict(stated or {}), load_mode, (unit, serial_from, serial_doubts), repeated)
+
+
+# --- files ----------------------------------------------------------------------------------------------------------
+
+
+def _read_another(
+    path: Path, files: list[_File], repeated: list[Ignored], vocabulary: Vocabulary, load_mode: str | None
+) -> None:
+    raw, name = _bytes(path)
+    digest = hashlib.sha256(raw).hexdigest()
+    same = next((f.evidence.file for f in files if f.evidence.sha256 == digest), None)
+    if same is not None:
+        repeated.append(Ignored(name, "the whole file", f"its bytes are those of {same}: no sample counts twice"))
+        return
+    read = read_workbook if is_workbook(raw) else read_text
+    source = read(raw, name, vocabulary)
+    chosen = frozenset(vocabulary.columns)
+    samples = [assemble(table, source, chosen=chosen, load_mode=load_mode) for table in source.tables]
+    started = next((s.started_at for s in samples if s.started_at is not None), None)
+    evidence = Evidence(name, digest, len(raw), sum(map(len, samples)), source.dialect, started)
+    stem, stage = split_name(_file_name(path.with_suffix("")) if path.suffix else name)
+    files.append(_File(source, samples, evidence, stem, stage))
+
+
+def _file_name(path: Path) -> str:
+    """The file's name as text that can be printed anywhere."""
+    return shown(path.name.encode("utf-8", "surrogateescape").decode("utf-8", "replace"), 200)
+
+
+def _bytes(path: Path) -> tuple[bytes, str]:
+    name = _file_name(path) or str(path)
+    try:
+        if path.is_dir():
+            raise LogError(name, "this is a folder", "expected a log file")
+        if not path.exists():
+            raise LogError(name, "there is no such file")
+        if not path.is_file():
+            raise LogError(name, "this is no regular file", "expected a log file")
+        size = path.stat().st_size
+        with path.open("rb") as stream:
+            limit = MAX_WORKBOOK_BYTES if is_workbook(stream.read(8)) else MAX_TEXT_BYTES
+            if size > limit:
+                raise LogError(
+                    name, f"the file is too large ({size} bytes)", f"expected at most {limit}; split the log"
+                )
+            stream.seek(0)
+            return stream.read(limit + 1), name
+    except (OSError, ValueError) as problem:
+        reason = getattr(problem, "strerror", None) or str(problem)
+        raise LogError(name, f"the file cannot be read ({shown(reason)})") from None
+
+
+def _refuse_unmet_columns(files: Sequence[_File], vocabulary: Vocabulary) -> None:
+    met = {channel.key for file in files for samples in file.samples for channel in samples.channels}
+    for key, (heading, _) in vocabulary.columns.items():
+        named = any(
+            channel.key == key and channel.reason.startswith(f'heading "{shown(heading)}"')
+            for file in files
+            for samples in file.samples
+            for channel in samples.channels
+        )
+        if key not in met or not (named or _any_case(files, key, heading)):
+            listed = ", ".join(file.evidence.file for file in files)
+            found = f'no heading "{shown(heading)}" is there, which log: columns: gives for {key.replace("_", " ")}'
+            raise LogError(listed, found, "write the heading as it stands in the file")
+
+
+def _any_case(files: Sequence[_File], key: str, heading: str) -> bool:
+    wanted = " ".join(heading.split()).casefold()
+    return any(
+        channel.key == key and wanted in " ".join(channel.reason.split()).casefold()
+        for file in files
+        for samples in file.samples
+        for channel in samples.channels
+    )
+
+
+# --- whose log it is ------------------------------------------------------------------------------------------------
+
+
+def _told_serials(file: _File) -> tuple[list[str], str]:
+    """Serials in a file's columns, else in its notes, and which of the two."""
+    columns = [text for s in file.samples for text in dict.fromkeys(s.texts.get("serial", ())) if text]
+    if columns:
+        return list(dict.fromkeys(columns)), "column"
+    notes = [file.source.notes[key] for key in _SERIAL_NOTES if file.source.notes.get(key)]
+    return list(dict.fromkeys(notes))[:1], "note"
+
+
+def _serial(files: Sequence[_File], given: str | None) -> tuple[str, str, list[Doubt]]:
+    told: dict[str, str] = {}
+    named: dict[str, str] = {}
+    for file in files:
+        serials, origin = _told_serials(file)
+        for text in serials:
+            told.setdefault(text, origin)
+        if not serials and file.stem_serial:
+            named.setdefault(file.stem_serial, "file name")
+    listed = ", ".join(file.evidence.file for file in files)
+    if len(told) > 1:
+        units = ", ".join(shown(text, 30) for text in list(told)[:6])
+        found = f"the logs belong to {len(told)} units: {units}"
+        raise SeveralSerialsError(listed, found, "give the logs of one unit", serials=tuple(told))
+    if given is not None:
+        return given, "--serial", _differing(given, told)
+    both = {**told, **named}
+    if len(both) > 1:
+        units = ", ".join(shown(text, 30) for text in list(both)[:6])
+        found = f"the names of the logs tell {len(both)} serials: {units}"
+        expected = "give the logs of one unit, or say which unit it is with --serial"
+        raise SeveralSerialsError(listed, found, expected, serials=tuple(both))
+    if not both:
+        raise LogError(listed, "no serial is told by the log or its name", "give it with --serial")
+    unit, origin = next(iter(both.items()))
+    return unit, origin, []
+
+
+def _differing(given: str, told: Mapping[str, str]) -> list[Doubt]:
+    return [
+        Doubt(
+            "serial differs",
+            f'--serial says "{shown(given)}", and the log\'s serial {origin} says "{shown(text)}"',
+            remedy="make sure that these are the logs of this unit",
+        )
+        for text, origin in told.items()
+        if text != given
+    ]
+
+
+# --- all tables together --------------------------------------------------------------------------------------------
+
+
+def _merge(
+    files: Sequence[_File],
+    vocabulary: Vocabulary,
+    stated: dict[str, float],
+    load_mode: str | None,
+    identity: tuple[str, str, list[Doubt]],
+    repeated: list[Ignored],
+) -> BenchLog:
+    unit, serial_from, doubts = identity
+    tables = [(file, samples) for file in files for samples in file.samples]
+    offsets = np.concatenate(([0], np.cumsum([len(samples) for _, samples in tables]))).tolist()
+    stages, stages_from = _stages(tables)
+    frame = _frame(tables, stages, load_mode)
+    notes = _notes(files)
+    day, day_doubts = _test_date(tables, notes)
+    qualified = {vocabulary.qualify(key): value for key, value in stated.items()}
+    doubts = [
+        *doubts,
+        *day_doubts,
+        *_reading_doubts(tables, offsets),
+        *_unit_doubts(samples for _, samples in tables),
+        *_stated_doubts(qualified, frame),
+    ]
+    return BenchLog(
+        serial=unit,
+        samples=frame,
+        channels=_channels(tables),
+        evidence=tuple(file.evidence for file in files),
+        tables=tuple(samples.name for _, samples in tables),
+        notes=notes,
+        stated=qualified,
+        ignored=tuple(dict.fromkeys([item for file in files for item in file.source.ignored] + repeated)),
+        doubts=tuple(doubts),
+        test_date=day,
+        serial_from=serial_from,
+        stages_from=stages_from,
+    )
+
+
+def _channels(tables: Sequence[tuple[_File, Samples]]) -> tuple[Channel, ...]:
+    return tuple(dict.fromkeys(channel for _, samples in tables for channel in samples.channels))
+
+
+def _stages(tables: Sequence[tuple[_File, Samples]]) -> tuple[list[list[str] | str], str]:
+    """Each table's stage, or one a sample; and what told them."""
+    stages: list[list[str] | str] = []
+    told = set()
+    for file, samples in tables:
+        own = stage_of_sheet(samples.sheet) if samples.sheet else ""
+        default = own or file.stem_stage or "steady"
+        column = samples.texts.get("stage")
+        if column is not None and any(column):
+            stages.append([text or default for text in column])
+            told.add("stage column")
+        else:
+            stages.append(default)
+            told.add("sheet name" if own else "file name" if file.stem_stage else "none told")
+    order = ("stage column", "file name", "sheet name", "none told")
+    return stages, next(name for name in order if name in told)
+
+
+def _frame(
+    tables: Sequence[tuple[_File, Samples]], stages: Sequence[list[str] | str], load_mode: str | None
+) -> pd.DataFrame:
+    import pandas as pd
+
+    sizes = [len(samples) for _, samples in tables]
+    columns: dict[str, Any] = {}
+    keys = dict.fromkeys(key for _, samples in tables for key in samples.numbers)
+    for key in sorted(keys, key=lambda key: key != "time"):  # time first, the others as met
+        parts = [
+            samples.numbers[key] if key in samples.numbers else np.full(size, np.nan)
+            for (_, samples), size in zip(tables, sizes, strict=True)
+        ]
+        columns[key] = parts[0] if len(parts) == 1 else np.concatenate(parts)
+    columns["stage"] = _categorical(list(stages), sizes)
+    for key, modes in _modes(tables, load_mode).items():
+        columns[key] = _categorical(modes, sizes)
+    columns["table"] = np.repeat(np.arange(len(sizes)), sizes)
+    columns["line"] = np.concatenate([samples.lines for _, samples in tables])
+    return pd.DataFrame(columns, copy=False)
+
+
+def _modes(tables: Sequence[tuple[_File, Samples]], load_mode: str | None) -> dict[str, list[list[str] | str]]:
+    """Load modes by channel, each table's as one text or one a sample; the stated one where none is logged."""
+    keys = dict.fromkeys(key for _, samples in tables for key in samples.texts if key.partition(" ")[0] == "load_mode")
+    if not keys and load_mode is not None:
+        return {"load_mode": [load_mode for _ in tables]}
+    default = load_mode or ""
+    return {
+        key: [[text or default for text in s.texts[key]] if key in s.texts else default for _, s in tables]
+        for key in keys
+    }
+
+
+def _categorical(parts: Sequence[list[str] | str], sizes: Sequence[int]) -> Any:
+    """Texts as categories in the order they are met; an empty text is no value."""
+    import pandas as pd
+
+    codes: dict[str, int] = {}
+    arrays: list[NDArray[np.int64]] = []
+    for part, size in zip(parts, sizes, strict=True):
+        if isinstance(part, str):
+            arrays.append(np.full(size, codes.setdefault(part, len(codes)) if part else -1))
+        else:
+            arrays.append(np.array([codes.setdefault(text, len(codes)) if text else -1 for text in part]))
+    return pd.Categorical.from_codes(np.concatenate(arrays), categories=pd.Index(list(codes), dtype=object))
+
+
+def _notes(files: Sequence[_File]) -> dict[str, str]:
+    """All notes; where two files differ in one, the later stands under its file's name too."""
+    notes: dict[str, str] = {}
+    for file in files:
+        for key, value in file.source.notes.items():
+            if notes.setdefault(key, value) != value:
+                notes[f"{key} ({file.evidence.file})"] = value
+    return notes
+
+
+def _test_date(tables: Sequence[tuple[_File, Samples]], notes: Mapping[str, str]) -> tuple[date | None, list[Doubt]]:
+    """The day of the test: the latest that a table begins on, which no calibration may be past; else a note's."""
+    doubts = [
+        Doubt(kind, f"{samples.name}: {text}", channels=("time",))
+        for _, samples in tables
+        for kind, text in samples.doubts
+    ]
+    days = [samples.day for _, samples in tables if samples.day is not None]
+    if days:
+        return max(days), doubts
+    for key in _DATE_NOTES:
+        day, either = parse_day(notes.get(key, ""))
+        if day is not None:
+            return day, doubts
+        if either:
+            text = f'the note "{key}: {shown(notes[key])}" may be day/month or month/day: no test date is taken'
+            doubts.append(Doubt("ambiguous date", text, remedy="write dates as 2026-05-04"))
+    return None, doubts
+
+
+# --- doubts ---------------------------------------------------------------------------------------------------------
+
+
+def _reading_doubts(tables: Sequence[tuple[_File, Samples]], offsets: Sequence[int]) -> list[Doubt]:
+    missing: dict[str, list[tuple[int, str, tuple[Span, ...]]]] = {}
+    over: dict[str, list[tuple[int, str, tuple[Span, ...]]]] = {}
+    for (_, samples), offset in zip(tables, offsets, strict=False):
+        for kept, found in ((missing, samples.missing), (over, samples.over_range)):
+            for key, (rows, place) in found.items():
+                kept.setdefault(key, []).append((len(rows), place, spans_of(rows, offset)))
+    doubts = []
+    for key, parts in missing.items():
+        text = f"{_count(parts)} of {key.replace('_', ' ')} missing, first at {parts[0][1]}"
+        doubts.append(Doubt("missing", text, channels=(key,), spans=tuple(s for p in parts for s in p[2])))
+    for key, parts in over.items():
+        text = f"{_count(parts)} of {key.replace('_', ' ')} over range, first at {parts[0][1]}"
+        spans = tuple(s for p in parts for s in p[2])
+        remedy = "measure again in a higher range"
+        doubts.append(Doubt("over range", text, bars=True, channels=(key,), spans=spans, remedy=remedy))
+    return doubts
+
+
+def _count(parts: Sequence[tuple[int, str, tuple[Span, ...]]]) -> str:
+    number = sum(part[0] for part in parts)
+    return "1 reading" if number == 1 else f"{number} readings"
+
+
+def _unit_doubts(tables: Any) -> list[Doubt]:
+    """One doubt for all the headings without a unit."""
+    assumed: dict[str, Channel] = {}
+    for samples in tables:
+        for channel in samples.channels:
+            if channel.unit_from == "assumed" and channel.quantity != "power_factor":
+                assumed.setdefault(channel.key, channel)
+    if not assumed:
+        return []
+    listed = ", ".join(f"{key.replace('_', ' ')} in {channel.unit or '?'}" for key, channel in assumed.items())
+    text = f"no unit is written, and SI is assumed: {listed}"
+    remedy = "write the units into the headings, or name them under log: columns:"
+    return [Doubt("unit assumed", text, channels=tuple(assumed), remedy=remedy)]
+
+
+def _stated_doubts(stated: Mapping[str, float], frame: pd.DataFrame) -> list[Doubt]:
+    return [
+        Doubt(
+            "stated and logged", f"{key.replace('_', ' ')} is stated, and also logged: the log counts", channels=(key,)
+        )
+        for key in stated
+        if key in frame.columns
+    ]

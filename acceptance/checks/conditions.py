@@ -1,0 +1,182 @@
+"""Which points meet a requirement's conditions, and what to say when none does."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from typing import Literal
+
+from acceptance.bench.log import channel_key
+from acceptance.limitfile.limits import Limits
+from acceptance.limitfile.model import Conditions, Requirement
+from acceptance.points.point import Point, Points
+from acceptance.points.propagation import expanded
+
+ANY: Literal["any"] = "any"
+
+__all__ = ["Condition", "condition_of", "load_tolerance", "matching", "missing_dwell"]
+
+_NO_LOAD = 0.002  # of rated current
+_LOAD_TOLERANCE = 0.02  # of rated current; half of it at 10 % and below
+_INPUT_TOLERANCE = 0.01  # of the input voltage
+
+Load = float | Literal["any"] | None
+
+
+@dataclass(frozen=True, slots=True)
+class Condition:
+    """Where a value is asked for, output by output. None: it does not matter."""
+
+    loads: Mapping[str, Load]
+    input: float | Literal["any"] | None
+
+    def __str__(self) -> str:
+        return ", ".join([*self._load_words(), *self._input_words()])
+
+    def _load_words(self) -> list[str]:
+        given = {output: load for output, load in self.loads.items() if load is not None}
+        if not given:
+            return []
+        values = set(given.values())
+        if len(values) == 1 and len(given) == len(self.loads):
+            return [f"load {_percent(next(iter(values)))}"]
+        return [f"load {output} {_percent(load)}" for output, load in given.items()]
+
+    def _input_words(self) -> list[str]:
+        if self.input is None:
+            return []
+        return ["input any" if self.input == ANY else f"input {self.input:g} V"]
+
+
+def _percent(load: Load) -> str:
+    return ANY if load == ANY else f"{100 * (load or 0.0):g} %"
+
+
+def condition_of(at: Conditions | None, limits: Limits, outputs: Sequence[str], *, load: Load = None) -> Condition:
+    """The condition written under `at:`, a load standing there meaning the given outputs; `load` goes before it."""
+    given = load if load is not None else (at.load if at is not None else None)
+    if isinstance(given, Mapping):
+        loads: dict[str, Load] = {output: given.get(output) for output in limits.outputs}
+    else:
+        loads = {output: (given if output in outputs else None) for output in limits.outputs}
+    voltage = at.input if at is not None else None
+    return Condition(loads, ANY if isinstance(voltage, str) else voltage)
+
+
+def output_of(requirement: Requirement, limits: Limits) -> str:
+    """The output that a requirement is about: the one it names, or the first."""
+    return requirement.output or limits.outputs[0]
+
+
+def load_tolerance(load: float, limits: Limits) -> float:
+    """How far a load may lie from the one asked for, as a fraction of rated current."""
+    stated = limits.decision.tolerance.load
+    if stated is not None:
+        return stated
+    return _LOAD_TOLERANCE if load > 0.1 + 1e-12 else _LOAD_TOLERANCE / 2
+
+
+def meets_load(point: Point, output: str, load: Load) -> bool:
+    """Whether a point has the load asked for; any: up to the rated current."""
+    fraction = point.load_fraction(output)
+    if load is None:
+        return True
+    if fraction is None:
+        return False
+    if isinstance(load, str):
+        return fraction <= 1 + load_tolerance(1.0, point.limits) + 1e-12
+    if load == 0:
+        return abs(fraction) <= _no_load(point, output)
+    return abs(fraction - load) <= load_tolerance(load, point.limits) + 1e-12
+
+
+def _no_load(point: Point, output: str) -> float:
+    """The largest |I| that is no load: its uncertainty or 0.2 % of rated current, as a fraction of that."""
+    key = channel_key("output_current", output)
+    rated = point.limits.ratings.outputs[output].current
+    value = point.bench.correct(key, point.mean(key).mean)
+    return max(expanded(value, point.limits.decision.confidence).expanded / rated, _NO_LOAD) + 1e-12
+
+
+def meets_input(point: Point, voltage: float | Literal["any"] | None) -> bool:
+    """Whether a point has the input voltage asked for; any: within the rated range."""
+    if voltage is None:
+        return True
+    measured = point.input_voltage()
+    share = point.limits.decision.tolerance.input
+    tolerance = _INPUT_TOLERANCE if share is None else share
+    if isinstance(voltage, str):
+        span = point.limits.ratings.input.range
+        if measured is None or span is None:
+            return measured is not None
+        return span[0] * (1 - tolerance) <= measured <= span[1] * (1 + tolerance)
+    if measured is None:
+        return False
+    return abs(measured - voltage) <= tolerance * voltage * (1 + 1e-12)
+
+
+def matching(points: Points, condition: Condition) -> list[Point]:
+    """The steady points that meet a condition."""
+    return [
+        point
+        for point in points.steady
+        if meets_input(point, condition.input)
+        and all(meets_load(point, output, load) for output, load in condition.loads.items())
+    ]
+
+
+def condition_channels(condition: Condition) -> list[str]:
+    """The channels that tell whether a condition is met."""
+    keys = [channel_key("output_current", output) for output, load in condition.loads.items() if load is not None]
+    return keys + (["input_voltage"] if condition.input is not None else [])
+
+
+def missing_dwell(points: Points, condition: Condition) -> str:
+    """Why no point meets a condition, with the nearest one named."""
+    unknown = _unknown(points, condition)
+    if unknown:
+        return unknown
+    if not points.steady:
+        return "the log has no steady dwell"
+    nearest = min(points.steady, key=lambda point: _distance(point, condition))
+    return f"no dwell at {condition or 'any condition'}; the nearest is at {describe(nearest)} ({nearest.where})"
+
+
+def _unknown(points: Points, condition: Condition) -> str:
+    """What the log does not tell at all, and the condition needs."""
+    for output, load in condition.loads.items():
+        if load is not None and all(point.load_fraction(output) is None for point in points.steady) and points.steady:
+            key = channel_key("output_current", output)
+            return f"{key} was not logged, so that no load can be told; record it"
+    if condition.input is not None and points.steady and all(p.input_voltage() is None for p in points.steady):
+        return "the input voltage was neither logged nor stated; record it, or give it under log: stated:"
+    return ""
+
+
+def describe(point: Point) -> str:
+    """The operating condition of a point, in words."""
+    several = len(point.limits.outputs) > 1
+    words = []
+    for output in point.limits.outputs:
+        fraction = point.load_fraction(output)
+        told = "unknown" if fraction is None else f"{100 * fraction:.1f} %"
+        words.append(f"load {output} {told}" if several else f"load {told}")
+    voltage = point.input_voltage()
+    words.append("input unknown" if voltage is None else f"input {voltage:.4g} V")
+    return ", ".join(words)
+
+
+def _distance(point: Point, condition: Condition) -> float:
+    far = 0.0
+    for output, load in condition.loads.items():
+        fraction = point.load_fraction(output)
+        if fraction is None:
+            far += 10.0
+        elif isinstance(load, float):
+            far += abs(fraction - load)
+        elif load == ANY:
+            far += max(0.0, fraction - 1)
+    voltage = point.input_voltage()
+    if isinstance(condition.input, float):
+        far += 10.0 if voltage is None else abs(voltage / condition.input - 1)
+    return far

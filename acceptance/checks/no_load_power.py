@@ -1,0 +1,93 @@
+"""No-load power: what the unit draws with nothing connected to its outputs."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import replace
+
+import numpy as np
+
+from acceptance.bench.log import channel_key
+from acceptance.checks.conditions import (
+    Condition,
+    condition_channels,
+    condition_of,
+    matching,
+    missing_dwell,
+)
+from acceptance.checks.outcome import Candidate, CheckResult, Outcome, Used
+from acceptance.errors import MeasurementError
+from acceptance.limitfile.model import NoLoadPower
+from acceptance.points.point import Point, Points
+
+__all__ = ["check_no_load_power"]
+
+
+def check_no_load_power(requirements: Sequence[NoLoadPower], points: Points) -> CheckResult:
+    """Outcomes of the no-load power requirements: the mean over each whole no-load stretch, bursts and all."""
+    return CheckResult.of([_outcome(requirement, points) for requirement in requirements])
+
+
+def _outcome(requirement: NoLoadPower, points: Points) -> Outcome:
+    limits = points.limits
+    condition = condition_of(requirement.at, limits, limits.outputs, load=0.0)
+    stretches = whole_stretches(matching(points, condition))
+    times = [duration for point in stretches if (duration := point.starts()[1]) is not None]
+    over = f", over {min(times):.4g} s" if times else ", of single readings" if stretches else ""
+    return Outcome(
+        name=requirement.name or "",
+        characteristic="no_load_power",
+        condition=f"{condition}{over}",
+        unit="W",
+        high=requirement.max,
+        candidates=tuple(_candidate(point, condition) for point in stretches),
+        reason="" if stretches else missing_dwell(points, condition),
+        output=requirement.output or "",
+        note=requirement.note or "",
+        formula="mean input power over the whole no-load stretch after settling",
+    )
+
+
+def whole_stretches(found: Sequence[Point]) -> list[Point]:
+    """The points, those that only a burst or a spike keeps apart joined to one."""
+    joined: list[Point] = []
+    for point in found:
+        last = joined[-1] if joined else None
+        if last is not None and _is_one_stretch(last, point):
+            joined[-1] = replace(last, dwell=replace(last.dwell, stop=point.dwell.stop), _kept={})
+        else:
+            joined.append(point)
+    return joined
+
+
+def _is_one_stretch(first: Point, second: Point) -> bool:
+    """Whether no load was drawn between two no-load points either."""
+    a, b = first.dwell, second.dwell
+    if a.table != b.table or a.stage != b.stage or b.first - a.stop > (a.stop - a.first) + (b.stop - b.first):
+        return False
+    for output, rating in first.limits.ratings.outputs.items():
+        between = first.log.samples[channel_key("output_current", output)].to_numpy()[a.stop : b.first]
+        if not np.all(np.abs(between) <= 0.01 * rating.current):
+            return False
+    voltages = (first.input_voltage(), second.input_voltage())
+    return None not in voltages and voltages[0] == voltages[1] or _close(*voltages)
+
+
+def _close(first: float | None, second: float | None) -> bool:
+    return first is not None and second is not None and abs(first - second) <= 0.005 * abs(first)
+
+
+def _candidate(point: Point, condition: Condition) -> Candidate:
+    used = (Used(point, "no load"),)
+    try:
+        point.require(*condition_channels(condition))
+        power = point.input_power()
+        if not power.nominal > 0:
+            msg = (
+                f"the mean no-load power reads {power.nominal:.4g} W, not above zero: the meter does not resolve it; "
+                "use a lower range, or a meter that does"
+            )
+            raise MeasurementError(msg)
+        return Candidate(used, power)
+    except MeasurementError as problem:
+        return Candidate(used, reason=str(problem))

@@ -1,0 +1,73 @@
+"""Output voltage: a band that every steady reading lies in."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from acceptance.checks.conditions import (
+    Condition,
+    condition_channels,
+    condition_of,
+    describe,
+    matching,
+    missing_dwell,
+    output_of,
+)
+from acceptance.checks.figures import voltage_figures
+from acceptance.checks.outcome import Candidate, CheckResult, Outcome, Used
+from acceptance.errors import MeasurementError
+from acceptance.limitfile.model import OutputVoltage
+from acceptance.points.point import Point, Points
+from acceptance.record import LimitLine
+
+__all__ = ["check_output_voltage"]
+
+
+def check_output_voltage(requirements: Sequence[OutputVoltage], points: Points) -> CheckResult:
+    """Outcomes of the output voltage requirements, and the voltage with its bands over load as figures."""
+    outcomes = [_outcome(requirement, points) for requirement in requirements]
+    outputs = dict.fromkeys(outcome.output for outcome in outcomes)
+    bands = {output: _lines([o for o in outcomes if o.output == output]) for output in outputs}
+    return CheckResult.of(outcomes, voltage_figures(list(outputs), points, bands=bands))
+
+
+def _outcome(requirement: OutputVoltage, points: Points) -> Outcome:
+    output = output_of(requirement, points.limits)
+    outputs = (output,) if requirement.output else points.limits.outputs
+    condition = condition_of(requirement.at, points.limits, outputs)
+    found = matching(points, condition)
+    low, high = _band(requirement, points.limits.ratings.outputs[output].voltage)
+    within = f", within {100 * requirement.within:g} % of rated" if requirement.within is not None else ""
+    return Outcome(
+        name=requirement.name or "",
+        characteristic="output_voltage",
+        condition=f"{condition}{within}",
+        unit="V",
+        low=low,
+        high=high,
+        candidates=tuple(_candidate(point, output, condition) for point in found),
+        reason="" if found else missing_dwell(points, condition),
+        output=output,
+        note=requirement.note or "",
+        formula="mean of the output voltage at the terminals",
+    )
+
+
+def _band(requirement: OutputVoltage, rated: float) -> tuple[float | None, float | None]:
+    if requirement.within is None:
+        return requirement.min, requirement.max
+    return rated * (1 - requirement.within), rated * (1 + requirement.within)
+
+
+def _candidate(point: Point, output: str, condition: Condition) -> Candidate:
+    used = (Used(point, describe(point)),)
+    try:
+        point.require(*condition_channels(condition))
+        return Candidate(used, point.voltage(output))
+    except MeasurementError as problem:
+        return Candidate(used, reason=str(problem))
+
+
+def _lines(outcomes: Sequence[Outcome]) -> list[LimitLine]:
+    lines = [LimitLine(f"{o.name} min", o.low, "min") for o in outcomes if o.low is not None]
+    return lines + [LimitLine(f"{o.name} max", o.high, "max") for o in outcomes if o.high is not None]

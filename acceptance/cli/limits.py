@@ -1,0 +1,50 @@
+"""`acceptance limits`: what a limits file may say, and whether one does."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import click
+
+from acceptance.cli.shared import existing
+
+__all__ = ["limits"]
+
+
+@click.group()
+def limits() -> None:
+    """Check a limits file, or print its JSON Schema."""
+
+
+@limits.command()
+@click.argument("path", metavar="FILE", type=click.Path(path_type=Path))
+@click.option("--bench", "bench_path", metavar="FILE", type=click.Path(path_type=Path), help="The bench file with it.")
+@click.option("--json", "as_json", is_flag=True, help="Print what was found as JSON.")
+def check(path: Path, bench_path: Path | None, as_json: bool) -> int:
+    """Check a limits file: every fault with file, line and column, all at once."""
+    existing([path, *([bench_path] if bench_path else [])])
+    from acceptance.limitfile.load import load_limits
+
+    found = load_limits(path, bench_path)
+    if as_json:
+        import json
+
+        names = [requirement.name for requirement in found.requirements]
+        told = {"file": str(path), "requirements_sha256": found.requirements_sha256, "requirements": names}
+        click.echo(json.dumps(told, ensure_ascii=False, indent=1))
+    else:
+        count = len(found.requirements)
+        click.echo(f"{path}: no fault; {count} {'requirement' if count == 1 else 'requirements'}")
+    return 0
+
+
+@limits.command()
+@click.option("--bench", "of_bench", is_flag=True, help="That of a bench file instead.")
+def schema(of_bench: bool) -> int:
+    """Print the JSON Schema of a limits file, for an editor that completes and checks while you type."""
+    import json
+
+    from acceptance.limitfile.load import bench_schema, limits_schema
+
+    click.echo(json.dumps(bench_schema() if of_bench else limits_schema(), ensure_ascii=False, indent=2))
+    return 0

@@ -1,0 +1,125 @@
+"""Type B: what the instruments and the wiring add to a mean reading.
+
+The bound of an accuracy text is a = gain |x| + fixed parts, u = a / sqrt(3) (a rectangle), or a / k where it says k.
+Of one channel in one range the gain part is the same error at every point, so that it cancels in a difference; the
+rest, u^2 - u_gain^2, is independent from point to point.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass, field
+
+from acceptance.limitfile.accuracy import Accuracy
+from acceptance.limitfile.limits import Limits, Meter, ShuntResistor, Wiring
+from acceptance.points.propagation import Source, Value, of_source
+
+__all__ = ["Bench", "converter_step_uncertainty", "rectangular"]
+
+RECTANGLE = math.sqrt(3.0)
+
+
+def rectangular(bound: float) -> float:
+    """Standard uncertainty of an error known only to lie within ± bound (JCGM 100:2008, 4.3.7)."""
+    return bound / RECTANGLE
+
+
+def converter_step_uncertainty(step: float) -> float:
+    """Standard uncertainty of rounding to a step (JCGM 100:2008, F.2.2.1)."""
+    return step / math.sqrt(12.0)
+
+
+@dataclass(frozen=True, slots=True)
+class GainAndRest:
+    """The uncertainty of one reading by an accuracy text, in the unit of the reading."""
+
+    gain: float
+    rest: float
+
+
+def split(accuracy: Accuracy, reading: float, *, meter_range: float, resolution: float) -> GainAndRest:
+    """The part of a reading's uncertainty that is proportional to it, and the rest."""
+    divisor = accuracy.coverage or RECTANGLE
+    gain = accuracy.gain * abs(reading) / divisor
+    fixed = (accuracy.of_range * meter_range + accuracy.fixed + accuracy.digits * resolution) / divisor
+    # bounds add, so the whole is gain + fixed, and what is not shared is what squares leave of it
+    return GainAndRest(gain, math.sqrt(fixed * fixed + 2 * gain * fixed))
+
+
+@dataclass(frozen=True, slots=True)
+class Bench:
+    """The bench as a source of errors: asked twice for what is shared, it gives the same error twice."""
+
+    limits: Limits
+    _shared: dict[tuple[str, str], Value] = field(default_factory=dict)
+
+    def is_stated(self, key: str) -> bool:
+        """Whether the accuracy of a channel is stated."""
+        meter = self.limits.meter(key)
+        return meter is not None and meter.is_stated
+
+    def correct(self, key: str, reading: float) -> Value:
+        """The reading with the errors of its instrument; a plain number where nothing is stated about it."""
+        meter = self.limits.meter(key)
+        if meter is None or not meter.is_stated:
+            return reading
+        value = self._own(f"{key}, {meter.device}: converter and fixed parts", self._fixed(meter), reading)
+        if meter.accuracy is not None:
+            value = value + self._by_accuracy(meter, meter.accuracy, key, reading)
+        if meter.shunt is not None:
+            value = value + self._by_shunt(meter, meter.shunt, key, reading)
+        return value
+
+    def lead(self, side: str, output: str, wiring: Wiring) -> Value:
+        """Resistance of the leads, the same error wherever it enters. [ohm]"""
+        name = f"{side} {output}".strip()
+        bound = wiring.bound or 0.0
+        unit = self._share(("lead", name), Source(f"lead resistance, {name}", "B"), rectangular(bound))
+        return wiring.resistance + unit
+
+    def _by_accuracy(self, meter: Meter, accuracy: Accuracy, key: str, reading: float) -> Value:
+        span = meter.meter_range
+        parts = split(
+            accuracy,
+            reading,
+            meter_range=span if isinstance(span, float) else 0.0,
+            resolution=meter.resolution or 0.0,
+        )
+        source = f"{key}, {meter.device}"
+        rest = of_source(parts.rest, Source(f"{source}: fixed part", "B"))
+        gain_source = Source(f"{source}: gain", "B")
+        if span == "auto":  # the range may change between points, so nothing is shared
+            return rest + of_source(parts.gain, gain_source)
+        relative = accuracy.gain / (accuracy.coverage or RECTANGLE)
+        return rest + reading * self._share(("gain", key), gain_source, relative)
+
+    def _by_shunt(self, meter: Meter, shunt: ShuntResistor, key: str, reading: float) -> Value:
+        source = f"{key}, {meter.device}"
+        tolerance = self._share(("shunt", key), Source(f"{source}: shunt tolerance", "B"), rectangular(shunt.tolerance))
+        coefficient = self._share(
+            ("shunt temperature", key),
+            Source(f"{source}: shunt self-heating", "B"),
+            rectangular(shunt.temperature_coefficient),
+        )
+        # dR/R = coefficient x thermal resistance x I^2 R
+        heating = shunt.heating * reading * reading * shunt.resistance
+        return reading * tolerance + reading * heating * coefficient
+
+    def _fixed(self, meter: Meter) -> float:
+        """Converter offset and step, and the display's step where the accuracy text does not count digits."""
+        squares = 0.0
+        if meter.converter is not None:
+            scale = 1.0 / meter.shunt.resistance if meter.shunt is not None else 1.0
+            squares += (scale * rectangular(meter.converter.offset)) ** 2
+            squares += (scale * converter_step_uncertainty(meter.converter.step)) ** 2
+        if meter.resolution is not None and not (meter.accuracy is not None and meter.accuracy.digits):
+            squares += converter_step_uncertainty(meter.resolution) ** 2
+        return math.sqrt(squares)
+
+    def _own(self, name: str, u: float, reading: float) -> Value:
+        return of_source(u, Source(name, "B"), reading)
+
+    def _share(self, name: tuple[str, str], source: Source, u: float) -> Value:
+        if name not in self._shared:
+            self._shared[name] = of_source(u, source)
+        return self._shared[name]

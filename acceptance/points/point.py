@@ -1,0 +1,369 @@
+"""Steady points: the mean readings of each dwell, what they are worth, and what may be formed from them."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass, field
+from typing import Any, TypeVar
+
+import numpy as np
+from numpy.typing import NDArray
+
+from acceptance.bench.log import BenchLog, channel_key
+from acceptance.errors import MeasurementError
+from acceptance.limitfile.limits import Limits
+from acceptance.points.dwells import Dwell
+from acceptance.points.instrument import Bench
+from acceptance.points.propagation import Source, Value, nominal, of_source
+from acceptance.points.type_a import TypeA, type_a
+
+__all__ = ["Estimate", "Point", "Points", "measure_points"]
+
+Floats = NDArray[np.float64]
+T = TypeVar("T")
+
+
+@dataclass(frozen=True, slots=True)
+class Estimate:
+    """A value, and which of the channels it was formed from have no stated accuracy."""
+
+    value: Value
+    unstated: frozenset[str] = frozenset()
+    single: bool = False  # formed from one reading alone, so that nothing of type A is in it
+
+    @property
+    def nominal(self) -> float:
+        """The best estimate."""
+        return nominal(self.value)
+
+    @staticmethod
+    def of(value: Value, *parts: Estimate) -> Estimate:
+        """A value formed from others."""
+        unstated = frozenset[str]().union(*(part.unstated for part in parts))
+        return Estimate(value, unstated, any(part.single for part in parts))
+
+
+@dataclass(frozen=True, slots=True)
+class Power:
+    """Power sample by sample, and its mean with the errors of the instruments alone."""
+
+    samples: Floats  # shape (n,) [W]
+    mean: Value  # [W]
+    unstated: frozenset[str]
+
+
+@dataclass(frozen=True, slots=True, eq=False)  # a point is itself, not what it looks like
+class Point:
+    """One dwell, and whatever is asked of it; what is formed is kept, so that two askers share its errors."""
+
+    index: int
+    dwell: Dwell
+    log: BenchLog
+    limits: Limits
+    bench: Bench
+    _kept: dict[tuple[str, ...], Any] = field(default_factory=dict)
+
+    # --- samples ----------------------------------------------------------------------------------------------------
+
+    def has(self, key: str) -> bool:
+        """Whether a channel was logged."""
+        return key in self.log.samples.columns
+
+    def samples(self, key: str) -> Floats:
+        """The samples of a channel in this dwell, missing ones as NaN."""
+        column = self.log.samples[key].to_numpy()
+        return np.asarray(column[self.dwell.first : self.dwell.stop], dtype=np.float64)
+
+    def require(self, *keys: str) -> None:
+        """See to it that channels may be judged here.
+
+        Raises
+        ------
+        MeasurementError
+            With the reason and the remedy, where a doubt about the data bars one of them.
+        """
+        span = (self.dwell.first, self.dwell.stop)
+        for doubt in self.log.doubts:
+            concerned = not doubt.channels or any(key in doubt.channels for key in keys)
+            here = not doubt.spans or any(a < span[1] and b > span[0] for a, b in doubt.spans)
+            if doubt.bars and concerned and here:
+                remedy = f"; {doubt.remedy}" if doubt.remedy else ""
+                msg = f"{doubt.text}{remedy}"
+                raise MeasurementError(msg)
+
+    @property
+    def where(self) -> str:
+        """File and lines, for people."""
+        table, first, last = self.log.rows_of((self.dwell.first, self.dwell.stop))
+        return f"{table}, line {first}" if first == last else f"{table}, lines {first} to {last}"
+
+    @property
+    def readings(self) -> int:
+        """Samples in the dwell."""
+        return self.dwell.stop - self.dwell.first
+
+    def starts(self) -> tuple[float | None, float | None]:
+        """Time of the first sample within its table, and the time from it to the last. [s]"""
+        if not self.has("time"):
+            return None, None
+        time = self.samples("time")
+        if not np.isfinite(time[[0, -1]]).all():
+            return None, None
+        return float(time[0]), float(time[-1] - time[0])
+
+    # --- mean readings ----------------------------------------------------------------------------------------------
+
+    def mean(self, key: str) -> TypeA:
+        """Mean of a channel as logged, barred or not, with what its spread tells."""
+        return self._keep(("mean", key), lambda: type_a(self._finite(key)))
+
+    def reading(self, key: str) -> Estimate:
+        """Mean of a channel as logged, with the errors of its instrument and of its spread; never of a barred one."""
+        self.require(key)
+        return self._keep(("reading", key), lambda: self._reading(key))
+
+    def voltage(self, output: str) -> Estimate:
+        """Voltage at an output's terminals: the drop in the leads put back. [V]"""
+        return self._keep(("voltage", output), lambda: self._voltage(output))
+
+    def current(self, output: str) -> Estimate:
+        """Current of an output. [A]"""
+        return self.reading(channel_key("output_current", output))
+
+    def load_fraction(self, output: str) -> float | None:
+        """Measured current over rated current; None where it was not logged."""
+        key = channel_key("output_current", output)
+        if not self.has(key) or not np.isfinite(self.samples(key)).any():
+            return None
+        return self.mean(key).mean / self.limits.ratings.outputs[output].current
+
+    def input_voltage(self) -> float | None:
+        """Mean input voltage at the unit, or the one that is only stated; None where neither is there. [V]"""
+        if self.has("input_voltage") and np.isfinite(self.samples("input_voltage")).any():
+            wiring, key = self.limits.wiring("input"), "input_current"
+            drop = wiring.resistance * self.mean(key).mean if wiring is not None and self.has(key) else 0.0
+            return self.mean("input_voltage").mean - drop
+        return self.log.stated.get("input_voltage")
+
+    # --- powers -----------------------------------------------------------------------------------------------------
+
+    def input_power(self) -> Estimate:
+        """Mean power drawn by the unit. [W]"""
+        return self._keep(("input power",), self._mean_input_power)
+
+    def efficiency(self, outputs: Sequence[str]) -> Estimate:
+        """Output power over input power, sample by sample, with everything that both share. [1]
+
+        Raises
+        ------
+        MeasurementError
+            If a channel is missing or may not be judged, or if no power flows.
+
+        Notes
+        -----
+        eta = mean(sum V I) / mean(P). The errors of the instruments act on eta through the means; the spread acts
+        through the residuals e_t = (p_out,t - eta p_in,t) / mean(p_in), so that a load that wanders, and that both
+        powers follow, costs nothing.
+        """
+        return self._keep(("efficiency", *outputs), lambda: self._efficiency(outputs))
+
+    def _efficiency(self, outputs: Sequence[str]) -> Estimate:
+        rows = self._complete([*self._input_keys(), *(k for o in outputs for k in self._output_keys(o))])
+        source = self._input_power(rows)
+        sinks = [self._output_power(output, rows) for output in outputs]
+        p_in, p_out = source.samples, np.sum([sink.samples for sink in sinks], axis=0)
+        if not p_in.mean() > 0:
+            msg = f"the mean input power is {p_in.mean():.4g} W, not above zero ({self.where})"
+            raise MeasurementError(msg)
+        if not p_out.mean() > 0:
+            msg = f"no output power flows ({self.where})"
+            raise MeasurementError(msg)
+        eta = float(p_out.mean() / p_in.mean())
+        spread = type_a((p_out - eta * p_in) / p_in.mean())
+        value = sum((sink.mean for sink in sinks), start=0.0) / source.mean
+        value = value + self._spread(f"spread of the efficiency, point {self.index + 1}", spread)
+        unstated = source.unstated.union(*(sink.unstated for sink in sinks))
+        return Estimate(value, unstated, single=spread.readings == 1)
+
+    def _mean_input_power(self) -> Estimate:
+        rows = self._complete(self._input_keys())
+        power = self._input_power(rows)
+        spread = type_a(power.samples)
+        value = power.mean + self._spread(f"spread of the input power, point {self.index + 1}", spread)
+        return Estimate(value, power.unstated, single=spread.readings == 1)
+
+    def _input_keys(self) -> list[str]:
+        """Channels that the input power is formed from.
+
+        Raises
+        ------
+        MeasurementError
+            If what was logged gives no power, such as volts and amperes of an a.c. input alone.
+        """
+        leads = ["input_current"] if self.limits.wiring("input") is not None else []
+        if self.has("input_power"):
+            return ["input_power", *leads]
+        factors = ["input_voltage", "input_current"]
+        if self.limits.ratings.input.supply == "ac":
+            factors.append("power_factor")
+        missing = [key for key in factors if not self.has(key) and key not in self.log.stated]
+        if not missing:
+            return factors
+        if missing == ["power_factor"]:
+            msg = (
+                "an a.c. input with volts and amperes but no power and no power factor; "
+                "record the input power with a wattmeter, or the power factor"
+            )
+            raise MeasurementError(msg)
+        msg = f"no input power was logged, and {_words(missing)} neither; record the input power"
+        raise MeasurementError(msg)
+
+    def _output_keys(self, output: str) -> list[str]:
+        return [channel_key("output_voltage", output), channel_key("output_current", output)]
+
+    def _input_power(self, rows: NDArray[np.bool_]) -> Power:
+        keys = self._input_keys()
+        if keys[0] == "input_power":
+            samples = self._at(keys[0], rows)
+            power = Power(samples, self._corrected(keys[0], float(samples.mean())), self._unstated(keys[:1]))
+        else:
+            power = self._product(keys, rows)
+        return self._without_input_leads(power, rows)
+
+    def _without_input_leads(self, power: Power, rows: NDArray[np.bool_]) -> Power:
+        """The power less what the input leads burn, where the input was not sensed at the unit."""
+        wiring = self.limits.wiring("input")
+        if wiring is None:
+            return power
+        squares = self._at("input_current", rows) ** 2
+        lost = self.bench.lead("input", "", wiring) * float(squares.mean())
+        unstated = power.unstated if wiring.bound is not None else power.unstated | {"lead_resistance input"}
+        return Power(power.samples - wiring.resistance * squares, power.mean - lost, unstated)
+
+    def _output_power(self, output: str, rows: NDArray[np.bool_]) -> Power:
+        """Power at an output's terminals, what the leads drop put back: (V + I R) I."""
+        voltage, current = self._output_keys(output)
+        power = self._product([voltage, current], rows)
+        wiring = self.limits.wiring("output", output)
+        if wiring is None:
+            return power
+        i = self._at(current, rows)
+        gained = self.bench.lead("output", output, wiring) * float((i * i).mean())
+        unstated = power.unstated if wiring.bound is not None else power.unstated | {_lead(output, self.limits)}
+        return Power(power.samples + wiring.resistance * i * i, power.mean + gained, unstated)
+
+    def _product(self, keys: Sequence[str], rows: NDArray[np.bool_]) -> Power:
+        """Power as a product of channels, sample by sample.
+
+        The mean of the product is c times the product of the means, and c is known far better than the means are.
+        """
+        columns = [self._at(key, rows) for key in keys]
+        samples = np.prod(columns, axis=0)
+        means = [float(column.mean()) for column in columns]
+        product = float(np.prod(means))
+        if product == 0.0:
+            return Power(samples, float(samples.mean()), self._unstated(keys))
+        mean: Value = float(samples.mean()) / product
+        for key, value in zip(keys, means, strict=True):
+            mean = mean * self._corrected(key, value)
+        return Power(samples, mean, self._unstated(keys))
+
+    # --- helpers ----------------------------------------------------------------------------------------------------
+
+    def _reading(self, key: str) -> Estimate:
+        spread = self.mean(key)
+        value = self._corrected(key, spread.mean) + self._spread(f"spread of {key}, point {self.index + 1}", spread)
+        return Estimate(value, self._unstated([key]), single=spread.readings == 1)
+
+    def _voltage(self, output: str) -> Estimate:
+        voltage = self.reading(channel_key("output_voltage", output))
+        wiring = self.limits.wiring("output", output)
+        if wiring is None:
+            return voltage
+        current = self.current(output)
+        value = voltage.value + current.value * self.bench.lead("output", output, wiring)
+        # the current only enters through a small drop, but its accuracy must be known like any other
+        unstated = frozenset() if wiring.bound is not None else frozenset({_lead(output, self.limits)})
+        return Estimate.of(value, voltage, current, Estimate(0.0, unstated))
+
+    def _corrected(self, key: str, mean: float) -> Value:
+        """A mean with the errors of its instrument, the same errors for whatever is formed from this channel here."""
+        if not self.has(key):  # only stated
+            return self.bench.correct(key, mean)
+        reference = self.mean(key).mean
+        error = self._keep(("error", key), lambda: self.bench.correct(key, reference) - reference)
+        return mean + error
+
+    def _spread(self, name: str, spread: TypeA) -> Value:
+        return of_source(spread.standard_uncertainty or 0.0, Source(name, "A", spread.degrees_of_freedom))
+
+    def _unstated(self, keys: Sequence[str]) -> frozenset[str]:
+        return frozenset(key for key in keys if not self.bench.is_stated(key))
+
+    def _finite(self, key: str) -> Floats:
+        if not self.has(key):
+            msg = f"{key} was not logged"
+            raise MeasurementError(msg)
+        samples = self.samples(key)
+        finite = samples[np.isfinite(samples)]
+        if not finite.size:
+            msg = f"{key} has no reading ({self.where})"
+            raise MeasurementError(msg)
+        return finite
+
+    def _complete(self, keys: Sequence[str]) -> NDArray[np.bool_]:
+        """Which samples have all channels; those only stated are the same in every sample."""
+        self.require(*keys)
+        rows = np.ones(self.readings, dtype=bool)
+        for key in keys:
+            if self.has(key):
+                rows &= np.isfinite(self.samples(key))
+            elif key not in self.log.stated:
+                msg = f"{key} was not logged"
+                raise MeasurementError(msg)
+        if not rows.any():
+            msg = f"no sample has all of {_words(keys)} ({self.where})"
+            raise MeasurementError(msg)
+        return rows
+
+    def _at(self, key: str, rows: NDArray[np.bool_]) -> Floats:
+        if self.has(key):
+            return self.samples(key)[rows]
+        return np.full(int(rows.sum()), self.log.stated[key])
+
+    def _keep(self, name: tuple[str, ...], form: Callable[[], T]) -> T:
+        if name not in self._kept:
+            self._kept[name] = form()
+        kept: T = self._kept[name]
+        return kept
+
+
+@dataclass(frozen=True, slots=True)
+class Points:
+    """All points of one unit, in the order of the log."""
+
+    all: tuple[Point, ...]
+    log: BenchLog
+    limits: Limits
+    bench: Bench
+
+    @property
+    def steady(self) -> tuple[Point, ...]:
+        """Those of the steady test."""
+        return tuple(point for point in self.all if point.dwell.stage == "steady")
+
+
+def measure_points(log: BenchLog, dwells: Sequence[Dwell], limits: Limits) -> Points:
+    """The points of a log's dwells."""
+    bench = Bench(limits)
+    points = tuple(Point(index, dwell, log, limits, bench) for index, dwell in enumerate(dwells))
+    return Points(points, log, limits, bench)
+
+
+def _words(keys: Sequence[str]) -> str:
+    return " and ".join(keys)
+
+
+def _lead(output: str, limits: Limits) -> str:
+    name = f"output {output}"
+    return f"lead_resistance {name if name in limits.leads else 'output'}"

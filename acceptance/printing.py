@@ -1,0 +1,329 @@
+"""Numbers for people: quantities with their units and prefixes, uncertainties, limits, probabilities, durations.
+
+Values come in as SI (ratios as fractions) and leave as text. Rounding follows the uncertainty: two significant digits
+of U, and as many decimals of the value. A value never prints on another side of its limit than it lies on: where
+rounding would do that, it gets more digits. Limits are printed exactly as they are, in the shortest form.
+
+    with_uncertainty   "90.12 % ± 0.18 %"
+    quantity           "12.3 mV"
+    limit_range        "≥ 88 %", "23.52 V to 24.48 V"
+    printed            value, U, limits and margin of one finding, in one unit, for the columns of a table
+    probability        "97.3 %", "> 99.9 %"
+    duration           "1 h 5 min"
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterable
+from dataclasses import dataclass
+from decimal import Decimal, localcontext
+from functools import lru_cache
+
+__all__ = [
+    "DASH",
+    "MINUS",
+    "Printed",
+    "Scale",
+    "count",
+    "duration",
+    "limit_range",
+    "printed",
+    "probability",
+    "quantity",
+    "scale_for",
+    "with_uncertainty",
+]
+
+MINUS = "\N{MINUS SIGN}"
+DASH = "\N{EN DASH}"  # stands where there is no value
+
+_PREFIXES = {-12: "p", -9: "n", -6: "\N{MICRO SIGN}", -3: "m", 0: "", 3: "k", 6: "M"}
+
+# unit -> lowest and highest power of ten a prefix may stand for; units that are not here take none
+_SPAN = {"V": (-9, 3), "A": (-9, 3), "W": (-9, 6), "ohm": (-6, 6), "s": (-9, 0), "Hz": (0, 6), "F": (-12, 0)}
+_SYMBOLS = {"ohm": "Ω"}
+
+_MOST_DIGITS = 12  # significant; more than any reading has, and few enough that binary fractions do not show
+_SLACK = 1e-12  # a value this near to a limit is equal to it
+
+
+@dataclass(frozen=True, slots=True)
+class Scale:
+    """One way to show SI values: number shown = value / 10^exponent, followed by the symbol."""
+
+    exponent: int
+    symbol: str
+
+    def number(self, value: float) -> Decimal:
+        """The exact decimal of a finite value on this scale, binary noise beyond 13 digits left out."""
+        return Decimal(f"{value:.13g}").scaleb(-self.exponent)
+
+    def fixed(self, value: float, decimals: int) -> str:
+        """A finite value with so many decimals, without its unit; negative decimals round to tens and more."""
+        return _fixed(self.number(value), decimals)
+
+    def exact(self, value: float) -> str:
+        """A finite value in its shortest exact form, without its unit."""
+        return _shortest(self.number(value))
+
+    def with_unit(self, number: str) -> str:
+        """A number's text with the unit after it."""
+        return f"{number} {self.symbol}" if self.symbol else number
+
+    def pair(self, value: float, expanded: float | None) -> str:
+        """A value and its expanded uncertainty without units, "24.012 ± 0.011"; without one, the value alone."""
+        odd = _odd(value)
+        if odd is not None:
+            return odd
+        text = self.fixed(value, _decimals(self, value, expanded))
+        return _stripped(text) if expanded is None else f"{text} ± {_expanded_text(self, value, expanded)}"
+
+
+@dataclass(frozen=True, slots=True)
+class Printed:
+    """The texts of one finding on one scale, without units; a dash where there is no number."""
+
+    unit: str
+    value: str
+    expanded: str
+    low: str
+    high: str
+    margin: str
+
+    def with_unit(self, number: str) -> str:
+        """A text of this finding with its unit, a dash as it is."""
+        return f"{number} {self.unit}" if self.unit and any(c.isdigit() for c in number) else number
+
+
+def scale_for(unit: str, numbers: Iterable[float | None], *, per_cent: bool = True) -> Scale:
+    """The scale that suits the largest of the numbers: 0.0123 V reads 12.3 mV, a ratio reads per cent.
+
+    Parameters
+    ----------
+    unit
+        SI unit as in the record; "" for a ratio.
+    numbers
+        Values that share the scale; missing and infinite ones do not count. [unit]
+    per_cent
+        Whether a ratio is shown in per cent.
+    """
+    if not unit:
+        return Scale(-2, "%") if per_cent else Scale(0, "")
+    if unit == "1/K":
+        return Scale(-6, "ppm/K")
+    symbol = _SYMBOLS.get(unit, unit)
+    span = _SPAN.get(unit)
+    largest = max((abs(n) for n in numbers if n is not None and math.isfinite(n)), default=0.0)
+    if span is None or largest == 0:
+        return Scale(0, symbol)
+    # the small surplus keeps 0.9999 V from reading 1000 mV
+    power = 3 * math.floor(math.log10(largest * 1.0005) / 3)
+    power = min(max(power, span[0]), span[1])
+    return Scale(power, _PREFIXES[power] + symbol)
+
+
+def quantity(value: float | None, unit: str, *, digits: int = 5, per_cent: bool = True) -> str:
+    """A value with its unit, rounded to so many significant digits, trailing zeros left out."""
+    odd = _odd(value)
+    if odd is not None or value is None:
+        return odd or DASH
+    scale = scale_for(unit, [value], per_cent=per_cent)
+    number = scale.number(value)
+    return scale.with_unit(_shortest(_rounded(number, digits - 1 - _order(number))))
+
+
+def with_uncertainty(value: float | None, expanded: float | None, unit: str, *, per_cent: bool = True) -> str:
+    """A value and its expanded uncertainty, such as "90.12 % ± 0.18 %"; without one, the value alone.
+
+    Parameters
+    ----------
+    value, expanded
+        SI; ratios as fractions. None where not known. [unit]
+    unit
+        SI unit as in the record; "" for a ratio.
+    per_cent
+        Whether a ratio is shown in per cent.
+    """
+    texts = printed(value, expanded, unit, per_cent=per_cent)
+    if texts.value == DASH or texts.expanded == DASH:
+        return texts.with_unit(texts.value)
+    return f"{texts.with_unit(texts.value)} ± {texts.with_unit(texts.expanded)}"
+
+
+def printed(
+    value: float | str | None,
+    expanded: float | None,
+    unit: str,
+    *,
+    low: float | None = None,
+    high: float | None = None,
+    margin: float | None = None,
+    per_cent: bool = True,
+) -> Printed:
+    """The texts of one finding, all on one scale.
+
+    The value has the decimals of U at two significant digits, and more where it would otherwise print on the limit,
+    or beyond it, without being there. A text (a behaviour) is printed as it is.
+    """
+    number = value if isinstance(value, (int, float)) else None
+    limits = [limit for limit in (low, high) if _is_number(limit)]
+    scale = scale_for(unit, [number, expanded, *limits], per_cent=per_cent)
+    if number is None or not math.isfinite(number):
+        decimals = 0
+        shown = value if isinstance(value, str) else _odd(number) or DASH
+    else:
+        decimals = _decimals_on_its_side(scale, number, _decimals(scale, number, expanded), limits)
+        shown = scale.fixed(number, decimals)
+        if not _is_number(expanded):
+            shown = _stripped(shown)
+    return Printed(
+        unit=scale.symbol if value is None or not isinstance(value, str) else "",
+        value=shown,
+        expanded=_expanded_text(scale, number, expanded),
+        low=scale.exact(low) if low is not None and _is_number(low) else DASH,
+        high=scale.exact(high) if high is not None and _is_number(high) else DASH,
+        margin=_margin_text(scale, margin, decimals),
+    )
+
+
+def limit_range(low: float | None, high: float | None, unit: str, *, per_cent: bool = True) -> str:
+    """What must be met: "≥ 88 %", "≤ 120 mV", "23.52 V to 24.48 V", or a dash."""
+    scale = scale_for(unit, [low, high], per_cent=per_cent)
+    texts = [scale.with_unit(scale.exact(n)) if n is not None and _is_number(n) else "" for n in (low, high)]
+    if all(texts):
+        return f"{texts[0]} to {texts[1]}"
+    if texts[0]:
+        return f"≥ {texts[0]}"
+    return f"≤ {texts[1]}" if texts[1] else DASH
+
+
+def probability(share: float | None, *, required: float | None = None) -> str:
+    """A probability in per cent: "97.3 %", "> 99.9 %", "< 0.1 %".
+
+    With the one that is required, as many digits as it takes to show on which side of it this one lies.
+    """
+    if share is None or not math.isfinite(share):
+        return DASH if share is None else "not a number"
+    needed = None if required is None else Decimal(repr(required)) * 100
+    if share > 0.999 and (needed is None or needed <= Decimal("99.9")):
+        return "> 99.9 %"
+    if share < 0.001 and (needed is None or needed >= Decimal("0.1")):
+        return "< 0.1 %"
+    exact = Decimal(repr(float(share))) * 100
+    decimals = 1
+    while needed is not None and decimals < 12 and _side(_rounded(exact, decimals), needed) != _side(exact, needed):
+        decimals += 1
+    return f"{_fixed(exact, decimals)} %"
+
+
+def duration(seconds: float | None) -> str:
+    """A stretch of time: "2 h 5 min", "45 s", "12.3 ms"."""
+    odd = _odd(seconds)
+    if odd is not None or seconds is None:
+        return odd or DASH
+    if abs(seconds) < 59.95:
+        return quantity(seconds, "s", digits=3)
+    sign = MINUS if seconds < 0 else ""
+    whole = round(abs(seconds))
+    parts = [(whole // 3600, "h"), (whole % 3600 // 60, "min"), (whole % 60, "s")]
+    return sign + " ".join(f"{n} {unit}" for n, unit in parts if n)
+
+
+def count(number: int) -> str:
+    """A whole number, its thousands apart: "12 345"."""
+    return f"{number:,}".replace(",", " ").replace("-", MINUS)
+
+
+def _is_number(value: float | None) -> bool:
+    return value is not None and math.isfinite(value)
+
+
+def _odd(value: float | None) -> str | None:
+    """The word for what is no finite number, or None."""
+    if value is None:
+        return DASH
+    if math.isnan(value):
+        return "not a number"
+    return None if math.isfinite(value) else f"{MINUS if value < 0 else ''}infinite"
+
+
+@lru_cache(maxsize=4096)
+def _fixed(number: Decimal, decimals: int) -> str:
+    if number and not -15 < number.adjusted() < 15:
+        return f"{float(number):.6g}".replace("-", MINUS)
+    text = f"{_rounded(number, decimals):f}"
+    if text.startswith("-") and not text.strip("-0."):
+        text = text[1:]
+    return text.replace("-", MINUS)
+
+
+def _rounded(number: Decimal, decimals: int) -> Decimal:
+    with localcontext() as context:
+        context.prec = 700  # any float fits
+        return number.quantize(Decimal(1).scaleb(-decimals))
+
+
+def _shortest(number: Decimal) -> str:
+    return _fixed(number, max(0, -_exponent(number.normalize())))
+
+
+def _stripped(text: str) -> str:
+    return text.rstrip("0").rstrip(".") if "." in text else text
+
+
+def _exponent(number: Decimal) -> int:
+    exponent = number.as_tuple().exponent
+    assert isinstance(exponent, int)  # only finite numbers come here
+    return exponent
+
+
+def _order(number: Decimal) -> int:
+    """Power of ten of the first digit; 0 for zero."""
+    return number.adjusted() if number else 0
+
+
+def _side(number: Decimal, limit: Decimal) -> int:
+    return (number > limit) - (number < limit)
+
+
+def _decimals(scale: Scale, value: float, expanded: float | None) -> int:
+    """Decimals of U at two significant digits; without U, what five significant digits of the value take."""
+    number = scale.number(value)
+    if expanded is None or not math.isfinite(expanded) or expanded <= 0:
+        return max(0, 4 - _order(number))
+    u = scale.number(expanded)
+    order = int(f"{u:.1e}".partition("e")[2])  # after rounding: 0.0996 is 0.10
+    return min(1 - order, max(0, _MOST_DIGITS - 1 - _order(max(abs(number), u))))
+
+
+def _decimals_on_its_side(scale: Scale, value: float, decimals: int, limits: Iterable[float | None]) -> int:
+    """As many decimals as keep the printed value on the side of each printed limit that it truly lies on."""
+    number = scale.number(value)
+    for limit in limits:
+        if limit is None or abs(value - limit) <= _SLACK * abs(limit):
+            continue
+        exact = scale.number(limit)
+        while decimals < 20 and _side(_rounded(number, decimals), exact) != _side(number, exact):
+            decimals += 1
+    return decimals
+
+
+def _expanded_text(scale: Scale, value: float | None, expanded: float | None) -> str:
+    if expanded is None or not math.isfinite(expanded):
+        return DASH if expanded is None else "not a number"
+    if expanded == 0:
+        return "0"
+    decimals = _decimals(scale, value if value is not None and math.isfinite(value) else expanded, expanded)
+    text = scale.fixed(expanded, decimals)
+    return text if text.strip("0.") else f"{float(scale.number(expanded)):.1e}".replace("-", MINUS)
+
+
+def _margin_text(scale: Scale, margin: float | None, decimals: int) -> str:
+    """With its sign; more digits where it would print as zero without being it."""
+    if margin is None or not math.isfinite(margin):
+        return DASH if margin is None else "not a number"
+    while decimals < 20 and margin and not scale.fixed(margin, decimals).strip(f"{MINUS}0."):
+        decimals += 1
+    text = scale.fixed(margin, decimals)
+    return text if margin <= 0 or not text.strip("0.") else f"+{text}"
