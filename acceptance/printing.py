@@ -118,19 +118,21 @@ def scale_for(unit: str, numbers: Iterable[float | None], *, per_cent: bool = Tr
     if span is None or largest == 0:
         return Scale(0, symbol)
     # the small surplus keeps 0.9999 V from reading 1000 mV
-    power = 3 * math.floor(math.log10(largest * 1.0005) / 3)
+    power = 3 * math.floor(math.log10(min(largest, 1e300) * 1.0005) / 3)
     power = min(max(power, span[0]), span[1])
     return Scale(power, _PREFIXES[power] + symbol)
 
 
-def quantity(value: float | None, unit: str, *, digits: int = 5, per_cent: bool = True) -> str:
-    """A value with its unit, rounded to so many significant digits, trailing zeros left out."""
+def quantity(value: float | None, unit: str, *, digits: int = 5, stripped: bool = True, per_cent: bool = True) -> str:
+    """A value with its unit, rounded to so many significant digits; trailing zeros are left out where `stripped`."""
     odd = _odd(value)
     if odd is not None or value is None:
         return odd or DASH
     scale = scale_for(unit, [value], per_cent=per_cent)
     number = scale.number(value)
-    return scale.with_unit(_shortest(_rounded(number, digits - 1 - _order(number))))
+    decimals = digits - 1 - _order(number)
+    text = _fixed(number, decimals)
+    return scale.with_unit(_stripped(text) if stripped else text)
 
 
 def with_uncertainty(value: float | None, expanded: float | None, unit: str, *, per_cent: bool = True) -> str:
@@ -146,7 +148,7 @@ def with_uncertainty(value: float | None, expanded: float | None, unit: str, *, 
         Whether a ratio is shown in per cent.
     """
     texts = printed(value, expanded, unit, per_cent=per_cent)
-    if texts.value == DASH or texts.expanded == DASH:
+    if _odd(value) is not None or texts.expanded == DASH:
         return texts.with_unit(texts.value)
     return f"{texts.with_unit(texts.value)} ± {texts.with_unit(texts.expanded)}"
 
@@ -183,7 +185,7 @@ def printed(
         expanded=_expanded_text(scale, number, expanded),
         low=scale.exact(low) if low is not None and _is_number(low) else DASH,
         high=scale.exact(high) if high is not None and _is_number(high) else DASH,
-        margin=_margin_text(scale, margin, decimals),
+        margin=_margin_text(scale, margin, decimals, stripped=not _is_number(expanded)),
     )
 
 
@@ -212,7 +214,9 @@ def probability(share: float | None, *, required: float | None = None) -> str:
         return "< 0.1 %"
     exact = Decimal(repr(float(share))) * 100
     decimals = 1
-    while needed is not None and decimals < 12 and _side(_rounded(exact, decimals), needed) != _side(exact, needed):
+    # 0 and 100 are certainties: nothing else prints as one
+    sides = [Decimal(0), Decimal(100), *([] if needed is None else [needed])]
+    while decimals < 12 and any(_side(_rounded(exact, decimals), side) != _side(exact, side) for side in sides):
         decimals += 1
     return f"{_fixed(exact, decimals)} %"
 
@@ -319,11 +323,11 @@ def _expanded_text(scale: Scale, value: float | None, expanded: float | None) ->
     return text if text.strip("0.") else f"{float(scale.number(expanded)):.1e}".replace("-", MINUS)
 
 
-def _margin_text(scale: Scale, margin: float | None, decimals: int) -> str:
+def _margin_text(scale: Scale, margin: float | None, decimals: int, *, stripped: bool) -> str:
     """With its sign; more digits where it would print as zero without being it."""
     if margin is None or not math.isfinite(margin):
         return DASH if margin is None else "not a number"
     while decimals < 20 and margin and not scale.fixed(margin, decimals).strip(f"{MINUS}0."):
         decimals += 1
-    text = scale.fixed(margin, decimals)
+    text = _stripped(scale.fixed(margin, decimals)) if stripped else scale.fixed(margin, decimals)
     return text if margin <= 0 or not text.strip("0.") else f"+{text}"

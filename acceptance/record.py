@@ -416,10 +416,9 @@ def _same_content(path: Path, record: Record) -> bool | None:
     """Whether the file holds this record but for the time of judging; None where there is no file."""
     try:
         there = json.loads(path.read_text(encoding="utf-8"))
-    except FileNotFoundError:
-        return None
     except (OSError, ValueError):
-        return False
+        # something unreadable that stands there is kept too; where nothing stands, or nothing can, the place is free
+        return False if path.exists() else None
     if not isinstance(there, dict):
         return False
     mine = json.loads(record_text(record))

@@ -41,6 +41,7 @@ class Samples:
     missing: dict[str, tuple[NDArray[np.intp], str]] = field(default_factory=dict)  # key -> rows, first place
     over_range: dict[str, tuple[NDArray[np.intp], str]] = field(default_factory=dict)
     doubts: list[tuple[str, str]] = field(default_factory=list)  # kind and text
+    chosen: set[str] = field(default_factory=set)  # channels whose heading the limits or bench file names
     day: date | None = None
     started_at: datetime | None = None
 
@@ -48,13 +49,11 @@ class Samples:
         return len(self.lines)
 
 
-def assemble(table: RawTable, source: Source, *, chosen: frozenset[str], load_mode: str | None = None) -> Samples:
+def assemble(table: RawTable, source: Source, *, load_mode: str | None = None) -> Samples:
     """The samples of a table.
 
     Parameters
     ----------
-    chosen
-        Channel keys that the limits or bench file gives a heading for; another column for one of them is left out.
     load_mode
         Tells the unit of a load setting without one.
 
@@ -64,8 +63,9 @@ def assemble(table: RawTable, source: Source, *, chosen: frozenset[str], load_mo
         Where two columns claim one channel, a unit is of the wrong kind, or a cell is no number.
     """
     samples = Samples(table.name, table.file, table.sheet, table.lines)
-    columns = _claims(table, source, chosen)
-    _take_time(samples, table, [column for column in columns if column.heading.quantity == "time"], source)
+    columns = _claims(table, source)
+    samples.chosen = {column.heading.key for column in columns if column.heading.is_chosen}
+    _take_time(samples, table, [column for column in columns if column.heading.quantity == "time"])
     for column in columns:
         heading = column.heading
         if heading.quantity == "time":
@@ -91,13 +91,13 @@ def spans_of(rows: NDArray[np.intp], offset: int = 0) -> tuple[Span, ...]:
 # --- one column a channel -------------------------------------------------------------------------------------------
 
 
-def _claims(table: RawTable, source: Source, chosen: frozenset[str]) -> list[RawColumn]:
+def _claims(table: RawTable, source: Source) -> list[RawColumn]:
     """The columns to read: one a channel, a date beside a clock excepted."""
     kept: dict[tuple[str, bool], RawColumn] = {}
-    by_file = {column.heading.key for column in table.columns if _is_chosen(column, chosen)}
+    by_file = {column.heading.key for column in table.columns if column.heading.is_chosen}
     for column in table.columns:
         key = column.heading.key
-        if key in by_file and not _is_chosen(column, chosen) and not column.heading.is_date:
+        if key in by_file and not column.heading.is_chosen and not column.heading.is_date:
             reason = f"the limits or bench file names another column for {_words(key)}"
             source.ignore(f'column "{shown(column.heading.text)}"', reason, file=table.name)
             continue
@@ -106,10 +106,6 @@ def _claims(table: RawTable, source: Source, chosen: frozenset[str]) -> list[Raw
             _refuse_two(table, kept[claim], column)
         kept[claim] = column
     return list(kept.values())
-
-
-def _is_chosen(column: RawColumn, chosen: frozenset[str]) -> bool:
-    return column.heading.key in chosen and column.heading.reason.endswith("as the limits or bench file says")
 
 
 def _refuse_two(table: RawTable, first: RawColumn, second: RawColumn) -> None:
@@ -269,7 +265,7 @@ def _refuse_nothing(samples: Samples, table: RawTable) -> None:
 # --- time -----------------------------------------------------------------------------------------------------------
 
 
-def _take_time(samples: Samples, table: RawTable, columns: Sequence[RawColumn], source: Source) -> None:
+def _take_time(samples: Samples, table: RawTable, columns: Sequence[RawColumn]) -> None:
     """Time from its column; from a date and a clock beside each other; or only the day from a date alone."""
     if not columns:
         return
@@ -309,7 +305,7 @@ def _has_clock(column: RawColumn) -> bool:
 def _times(table: RawTable, column: RawColumn, dates: RawColumn | None) -> Times:
     place = table.place(column)
     if dates is not None:
-        return read_times(column.cells, place, dates=dates.cells)
+        return read_times(column.cells, place, dates=(dates.cells, table.place(dates)))
     cells = column.cells
     unit, _ = _unit(table, column)
     if not isinstance(cells, np.ndarray) and _is_numeric(cells):
@@ -318,6 +314,7 @@ def _times(table: RawTable, column: RawColumn, dates: RawColumn | None) -> Times
         ).values
     if (
         isinstance(cells, np.ndarray)
+        and cells.dtype.kind == "f"
         and unit is None
         and cells.size
         and np.nanmax(np.abs(cells), initial=0) > _EPOCH_IN_MILLISECONDS

@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterable, Sequence
+from contextlib import suppress
 from dataclasses import dataclass, field
 from datetime import UTC, date, datetime, time, timedelta, timezone
 from typing import Any
@@ -80,7 +81,9 @@ class _Order:
             self.open.add((a, b, year))
 
 
-def read_times(cells: Cells, place: Place, *, unit_factor: float = 1.0, dates: Cells | None = None) -> Times:
+def read_times(
+    cells: Cells, place: Place, *, unit_factor: float = 1.0, dates: tuple[Cells, Place] | None = None
+) -> Times:
     """The times of a column, or of a column of clocks beside one of dates.
 
     Raises
@@ -89,27 +92,29 @@ def read_times(cells: Cells, place: Place, *, unit_factor: float = 1.0, dates: C
         At the first cell that is no time, or where dates that differ may be read in two ways.
     """
     if isinstance(cells, np.ndarray):
-        return _from_first(cells * unit_factor, "seconds")
+        times = _from_datetimes(cells) if cells.dtype.kind == "M" else None
+        return times or _from_first(cells * unit_factor, "seconds")
     if dates is None:
         quick = _quick(cells)
         if quick is not None:
             return quick
         stamps, order = _stamps(cells, place)
     else:
-        joined, order = _stamps(dates, place)
+        joined, order = _stamps(*dates)
         clocks, _ = _stamps(cells, place)
         stamps = [
             clock if clock is None or day is None or clock.day is not None
             else _Stamp(day.day, clock.seconds, clock.zone, day.either)
             for day, clock in zip(joined, clocks, strict=True)
         ]  # fmt: skip
-    return _from_stamps(stamps, order, place)
+    return _from_stamps(stamps, order, place if dates is None else dates[1])
 
 
 def read_dates(cells: Cells, place: Place) -> tuple[date | None, tuple[tuple[str, str], ...]]:
     """The first date of a column of dates, None where it may be read in two ways, and what is doubtful about it."""
     if isinstance(cells, np.ndarray):
-        return None, ()
+        times = _from_datetimes(cells) if cells.dtype.kind == "M" else None
+        return (times.day if times else None), ()
     stamps, order = _stamps(cells, place)
     days, doubts = _days(stamps, order, place)
     known = [day for day in days if day is not None]
@@ -183,7 +188,7 @@ def _quick_clock(cells: Sequence[object]) -> Times | None:
     return _from_first(seconds, "clock", doubts=doubts)
 
 
-def _from_datetimes(stamps: NDArray[np.datetime64], zone: Any = None) -> Times | None:
+def _from_datetimes(stamps: NDArray[Any], zone: Any = None) -> Times | None:
     known = np.flatnonzero(~np.isnat(stamps))
     if not known.size:
         return None
@@ -225,14 +230,14 @@ def _read_cell(row: int, cell: object, place: Place, order: _Order) -> _Stamp | 
     text = cell.strip() if isinstance(cell, str) else ""
     if isinstance(cell, str) and text.casefold() in _MISSING:
         return None
-    match = _STAMP.fullmatch(text)
-    if match is not None and text:
-        try:
-            return _stamp_of(match, order)
-        except ValueError:
-            pass
+    match = _STAMP.fullmatch(text) if text else None
+    stamp = None
+    with suppress(ValueError):
+        stamp = _stamp_of(match, order) if match is not None else None
+    if stamp is not None:
+        return stamp
     found = f'"{shown(cell, 30)}" under "{shown(place.heading)}" is not a time like the others'
-    place.refuse(row, found, "expected seconds, hh:mm:ss, or a date and time")
+    return place.refuse(row, found, "expected seconds, hh:mm:ss, or a date and time")
 
 
 def _since_midnight(clock: time) -> float:
@@ -321,7 +326,8 @@ def _days(
     if not unknown:
         return days, ()
     a, b, year = next(iter(written))
-    text = f'the date {a:02}/{b:02}/{year} under "{shown(place.heading)}" may be day/month or month/day: no test date is taken'
+    which = f'the date {a:02}/{b:02}/{year} under "{shown(place.heading)}"'
+    text = f"{which} may be day/month or month/day: no test date is taken"
     return days, (("ambiguous date", text),)
 
 

@@ -48,14 +48,19 @@ _DATE_WORDS = frozenset({"date", "datum"})
 _TEMPERATURE_WORDS = frozenset({"t", "temp", "temperature", "temperatur"})
 _GLUED_PROBES = {"tcase": "case", "tcore": "core", "twinding": "winding", "twdg": "winding", "theatsink": "heatsink"}
 # "t_on" and their like are times; "T_set", "T_rise" and their like are no readings of a probe
-_NO_PROBE = frozenset(
+_NO_PROBE_WORDS = (
     "on off start stop end rise fall rec recovery delay hold step set setpoint sample samples stamp dwell min max "
-    "avg mean std delta diff limit rate abs rel total elapsed meas zero".split()  # noqa: SIM905
+    "avg mean std delta diff limit rate abs rel total elapsed meas zero"
 )
-_NO_QUALIFIER = _NO_PROBE | frozenset(
+_NO_PROBE = frozenset(_NO_PROBE_WORDS.split())
+_NO_QUALIFIER_WORDS = (
     "rms pp p pk peak ac dc range error err status sense target nominal nom rated corr corrected raw ref cal average "
-    "average sd rel abs ripple noise u unc uncertainty and in out l n".split()  # noqa: SIM905
+    "sd ripple noise u unc uncertainty and in out l n"
 )
+_NO_QUALIFIER = _NO_PROBE | frozenset(_NO_QUALIFIER_WORDS.split())
+
+# a unit in the wrong case, or one not known here, is no output's name
+_UNITLIKE = re.compile(r"[munk\u00b5\u03bc]?(?:v|a|w|va|var|wh|ah|ohm|hz|s|db)(?:pp|rms|dc|ac)?", re.IGNORECASE)
 
 _UNIT_WORDS = {
     "volt": "V", "volts": "V", "millivolt": "mV", "millivolts": "mV", "amp": "A", "amps": "A", "ampere": "A",
@@ -115,6 +120,7 @@ class Heading:
     reason: str
     is_date: bool = False  # a column of dates, whose times stand in another
     is_lower: bool = False  # no capital in it
+    is_chosen: bool = False  # named by the limits or bench file
 
     @property
     def key(self) -> str:
@@ -190,13 +196,14 @@ class Vocabulary:
         lower = text == text.lower()
         reason = f'heading "{shown(text)}" is {_words(key)}, as the limits or bench file says'
         if unit is not None:
-            return Heading(text, quantity, qualifier, unit, "limits file", reason, is_lower=lower)
+            return Heading(text, quantity, qualifier, unit, "limits file", reason, is_lower=lower, is_chosen=True)
         found, _ = _bracketed(shown(text, 200), QUANTITIES.get(quantity, ""), lower=lower)
         if not found:
             last = _JOINT.split(text.strip())[-1]
             if last != text.strip() and resolve_unit(last, QUANTITIES.get(quantity, ""), lower=lower):
                 found = last
-        return Heading(text, quantity, qualifier, found, "heading" if found else "", reason, is_lower=lower)
+        origin = "heading" if found else ""
+        return Heading(text, quantity, qualifier, found, origin, reason, is_lower=lower, is_chosen=True)
 
     def _from_words(self, text: str, stripped: str) -> Heading:
         lower = stripped == stripped.lower()
@@ -247,7 +254,7 @@ class Vocabulary:
         probe = _probe(tokens, unit, lower=lower)
         if probe is not None:
             return "temperature", probe, False
-        if self.outputs or len(tokens) < 2 or tokens[-1].casefold() in _NO_QUALIFIER:
+        if self.outputs or len(tokens) < 2 or tokens[-1].casefold() in _NO_QUALIFIER or _UNITLIKE.fullmatch(tokens[-1]):
             return None
         quantity = _ALIASES.get("".join(tokens[:-1]).casefold())
         return (quantity, tokens[-1], False) if quantity in OUTPUT_QUANTITIES else None

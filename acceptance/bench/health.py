@@ -239,10 +239,10 @@ def _clipped(channel: _Channel, tables: Sequence[Span]) -> Iterator[Doubt]:
         spans = _clipped_spans(channel, at_rail, tables)
         if spans:
             count = sum(b - a for a, b in spans)
-            text = (
-                f"{_words(channel.key)} stands at its {'largest' if rail == top else 'smallest'} value {rail:.6g} "
-                f"in {count} samples, first at {_where(channel.log, spans[0][0])}, while its other readings vary: clipped"
-            )
+            where = f"{count} samples, first at {_where(channel.log, spans[0][0])}"
+            extreme = "largest" if rail == top else "smallest"
+            text = f"{_words(channel.key)} stands at its {extreme} value {rail:.6g} in {where}"
+            text += ", while its other readings vary: clipped"
             remedy = "measure again in a higher range"
             yield Doubt("clipped", text, bars=True, channels=(channel.key,), spans=spans, remedy=remedy)
 
@@ -304,11 +304,9 @@ def _frozen(channel: _Channel, tables: Sequence[Span]) -> Iterator[Doubt]:
         driver = None if channel.driver is None else channel.driver[a:b]
         found += [(a + i, a + j) for i, j in runs if _stopped(part, (i, j), still, driver, step)]
     if found:
-        first_run = found[0]
-        text = (
-            f"{_words(channel.key)} stands still at {values[first_run[0]]:.6g} for {first_run[1] - first_run[0]} samples "
-            f"from {_where(channel.log, first_run[0])}, while its other readings vary: frozen"
-        )
+        begin, end = found[0]
+        text = f"{_words(channel.key)} stands still at {values[begin]:.6g} for {end - begin} samples"
+        text += f" from {_where(channel.log, begin)}, while its other readings vary: frozen"
         remedy = "look to the instrument and its logger, and measure again"
         yield Doubt("frozen", text, bars=True, channels=(channel.key,), spans=tuple(found), remedy=remedy)
 

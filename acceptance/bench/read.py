@@ -115,8 +115,7 @@ def _read_another(
         return
     read = read_workbook if is_workbook(raw) else read_text
     source = read(raw, name, vocabulary)
-    chosen = frozenset(vocabulary.columns)
-    samples = [assemble(table, source, chosen=chosen, load_mode=load_mode) for table in source.tables]
+    samples = [assemble(table, source, load_mode=load_mode) for table in source.tables]
     started = next((s.started_at for s in samples if s.started_at is not None), None)
     evidence = Evidence(name, digest, len(raw), sum(map(len, samples)), source.dialect, started)
     stem, stage = split_name(_file_name(path.with_suffix("")) if path.suffix else name)
@@ -152,28 +151,12 @@ def _bytes(path: Path) -> tuple[bytes, str]:
 
 
 def _refuse_unmet_columns(files: Sequence[_File], vocabulary: Vocabulary) -> None:
-    met = {channel.key for file in files for samples in file.samples for channel in samples.channels}
+    met = {key for file in files for samples in file.samples for key in samples.chosen}
     for key, (heading, _) in vocabulary.columns.items():
-        named = any(
-            channel.key == key and channel.reason.startswith(f'heading "{shown(heading)}"')
-            for file in files
-            for samples in file.samples
-            for channel in samples.channels
-        )
-        if key not in met or not (named or _any_case(files, key, heading)):
+        if key not in met:
             listed = ", ".join(file.evidence.file for file in files)
             found = f'no heading "{shown(heading)}" is there, which log: columns: gives for {key.replace("_", " ")}'
             raise LogError(listed, found, "write the heading as it stands in the file")
-
-
-def _any_case(files: Sequence[_File], key: str, heading: str) -> bool:
-    wanted = " ".join(heading.split()).casefold()
-    return any(
-        channel.key == key and wanted in " ".join(channel.reason.split()).casefold()
-        for file in files
-        for samples in file.samples
-        for channel in samples.channels
-    )
 
 
 # --- whose log it is ------------------------------------------------------------------------------------------------

@@ -36,6 +36,7 @@ __all__ = [
     "tables_of",
 ]
 
+_SIDE_ROWS = 400  # notes beside a table stand beside its first rows
 MAX_COLUMNS = 2000  # a bench log has tens; beyond this a file is something else
 _DASHES = re.compile(r":?-{2,}:?")
 _CLOCK_FORM = re.compile(r"[hmsydtf:./\- ]+", re.IGNORECASE)  # hh:mm:ss, dd.mm.yyyy
@@ -237,11 +238,14 @@ def tables_of(
     heading_line = rows[layout.heading][0]
     repeated = tuple(cell.strip() for cell in layout.cells[: layout.width])
     after_heading = False
-    for row in rows[layout.first :]:
+    has_gap = len(layout.columns) + len(layout.unread) < layout.width
+    for number, row in enumerate(rows[layout.first :]):
         line, cells = row
         if _has_reading(cells, layout.numbers) and not _is_remark(cells, layout):
             if strict_width and len(cells) > layout.width:
                 _refuse_long(row, layout, source)
+            if number < _SIDE_ROWS and (has_gap or len(cells) > layout.width):
+                _side_note(cells, layout, source)
             data.append(row)
             after_heading = False
         elif _is_empty(cells, layout.columns):
@@ -273,7 +277,7 @@ def _is_remark(cells: Sequence[object], layout: Layout) -> bool:
 
 def _refuse_long(row: Row, layout: Layout, source: Source) -> None:
     line, cells = row
-    if all(is_blank(cell) for cell in cells[layout.width :]):
+    if is_blank(cells[layout.width]):  # what stands behind an empty column is a note
         return
     found = f"this line has {len(cells)} cells and the headings are {layout.width}"
     expected = "write the log again with a separator that is not also the decimal mark"
@@ -300,7 +304,8 @@ def _leave_out(row: Row, layout: Layout, source: Source, name: str) -> None:
 
 
 def _side_note(cells: Sequence[object], layout: Layout, source: Source) -> None:
-    outside = [str(c).strip() for i, c in enumerate(cells) if i not in layout.columns and not is_blank(c)]
+    table = layout.columns.keys() | layout.unread.keys()
+    outside = [str(c).strip() for i, c in enumerate(cells) if i not in table and not is_blank(c)]
     pair = note_of(outside) if outside and not all(map(_is_rule, outside)) else None
     if pair:
         source.note(*pair)

@@ -9,6 +9,8 @@ from __future__ import annotations
 
 import csv
 import io
+import re
+import warnings
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Any
@@ -40,9 +42,10 @@ if TYPE_CHECKING:
 __all__ = ["read_text"]
 
 _SEPARATORS = {";": "semicolons", "\t": "tabs", "|": "bars", ",": "commas"}
-_HEAD_LINES = (60, 600)  # notes longer than this are prose
+_HEAD_LINES = (32, 600)  # notes longer than this are prose
 _HEAD_BYTES = 1 << 20
 _TAIL_LINES = 40
+_ISO = re.compile(r"\d{4}-\d{2}-\d{2}[T ]\d{2}:\d{2}(:\d{2}(\.\d{1,6})?)?")
 
 
 @dataclass(frozen=True, slots=True)
@@ -94,7 +97,8 @@ def _decode(raw: bytes, file: str) -> _Text:
     text, encoding = _by_mark(raw, file)
     if text is None:
         try:
-            raw.decode("utf-8")
+            if not raw.isascii():
+                raw.decode("utf-8")
             data, encoding = raw, "ASCII" if raw.isascii() else "UTF-8"
         except UnicodeDecodeError:
             data, encoding = raw.decode("cp1252", errors="replace").encode(), "Latin-1"
@@ -155,7 +159,7 @@ def _find_table(data: bytes, file: str, vocabulary: Vocabulary) -> tuple[list[Ro
         line, width = max(((line, len(cells)) for line, cells in widest), key=lambda w: w[1], default=(0, 0))
         if width > MAX_COLUMNS:
             refuse_width(file, width, line=line)
-    refuse_headings(file, widest, vocabulary)
+    return refuse_headings(file, widest, vocabulary)
 
 
 def _first_lines(data: bytes, count: int) -> list[str]:
@@ -220,6 +224,7 @@ def _quick_tables(
     if decimal is None or first <= start or b'"' in heading and heading.count(b'"') % 2:
         return None
     tables: list[RawTable] = []
+    stamps = _stamp_columns(head, layout)
     while True:
         again = data.find(b"\n" + heading, first - 1) + 1 if heading.endswith(b"\n") else 0
         last = again or len(data)
@@ -227,7 +232,7 @@ def _quick_tables(
         cut = _cut_tail(data, first, last, separator, layout, source if not again else None)
         if cut is None:
             return None
-        table = _quick_table(data[first:cut], separator, decimal, layout, source, (line, body_line))
+        table = _quick_table(data[first:cut], separator, decimal, layout, source, stamps=stamps, at=(line, body_line))
         if table is None:
             return None
         tables.append(table)
@@ -249,6 +254,8 @@ def _offset(data: bytes, line: int) -> int:
 def _head_decimal(head: Sequence[Row], layout: Layout) -> str | None:
     """The decimal mark of the first rows; None where they do not settle it alone."""
     rows = head[layout.first :]
+    if not any("," in cell for _, cells in rows for cell in cells if isinstance(cell, str)):
+        return "."  # what is no number with a point goes the careful way
     lines = np.fromiter((line for line, _ in rows), np.int64, len(rows))
     columns = [
         (Place("", "", index + 1, lines), [cells[index] if index < len(cells) else "" for _, cells in rows])
@@ -260,6 +267,13 @@ def _head_decimal(head: Sequence[Row], layout: Layout) -> str | None:
     except LogError:
         return None
     return None if thousands else decimal
+
+
+def _stamp_columns(head: Sequence[Row], layout: Layout) -> list[int]:
+    """Cell indices of times that are ISO stamps without a zone, by the first row."""
+    _, cells = head[layout.first]
+    times = [index for index, heading in layout.columns.items() if heading.quantity == "time" and index < len(cells)]
+    return [index for index in times if _ISO.fullmatch(str(cells[index]).strip())]
 
 
 def _cut_tail(data: bytes, first: int, last: int, separator: str, layout: Layout, source: Source | None) -> int | None:
@@ -280,9 +294,10 @@ def _cut_tail(data: bytes, first: int, last: int, separator: str, layout: Layout
 
 
 def _quick_table(
-    body: bytes, separator: str, decimal: str, layout: Layout, source: Source, at: tuple[int, int]
+    body: bytes, separator: str, decimal: str, layout: Layout, source: Source, *, stamps: list[int], at: tuple[int, int]
 ) -> RawTable | None:
-    frame = _frame(body, separator, decimal, layout)
+    """One table; `at` tells the lines of its headings and of its first row."""
+    frame = _frame(body, separator, decimal, layout, stamps)
     if frame is None or not len(frame):
         return None
     lines = _line_numbers(body, len(frame), at[1])
@@ -293,10 +308,12 @@ def _quick_table(
         cells: Any = frame[index]
         if cells.dtype.kind in "fi":
             cells = cells.to_numpy(np.float64)
+        elif cells.dtype.kind == "M":
+            cells = cells.to_numpy("datetime64[us]")
         elif cells.dtype.kind in "bu":
             return None
         elif heading.is_number and heading.quantity != "time":
-            cells = _clean_texts(cells)
+            cells = _clean_texts(cells, decimal)
             if cells is None:
                 return None
         else:
@@ -307,32 +324,57 @@ def _quick_table(
     return RawTable(source.file, "", source.file, at[0], tuple(columns), lines, decimal)
 
 
-def _frame(body: bytes, separator: str, decimal: str, layout: Layout) -> pd.DataFrame | None:
+def _frame(body: bytes, separator: str, decimal: str, layout: Layout, stamps: list[int]) -> pd.DataFrame | None:
+    """The rows as pandas reads them, ISO stamps without a zone as dates; None where a row does not fit."""
     import pandas as pd
 
     texts = {index: str for index, heading in layout.columns.items() if not heading.is_number}
     # one column more than there are headings: what stands in it has lost its heading
     extra = layout.width
-    options: dict[str, Any] = {"dtype": texts or None, "decimal": decimal}
-    options |= {"float_precision": "round_trip"} if _needs_precision(pd.__version__) else {}
-    read: Any = pd.read_csv  # its stubs know no options given by name
-    try:
-        frame: pd.DataFrame = read(
-            io.BytesIO(body),
-            sep=separator,
-            header=None,
-            names=list(range(extra + 1)),
-            index_col=False,
-            engine="c",
-            keep_default_na=False,
-            na_values={index: list(MISSING) for index in [*layout.numbers, extra]},
-            skipinitialspace=True,
-            low_memory=False,
-            **options,
-        )
-    except (ValueError, OverflowError, MemoryError, pd.errors.ParserError):
-        return None
-    return None if frame[extra].notna().any() else frame
+    options: dict[str, Any] = {
+        "sep": separator,
+        "header": None,
+        "names": list(range(extra + 1)),
+        "index_col": False,
+        "dtype": texts or None,
+        "decimal": decimal,
+        "engine": "c",
+        "keep_default_na": False,
+        "na_values": {index: list(MISSING) for index in [*layout.numbers, extra]},
+        "skipinitialspace": True,
+    }
+    if _needs_precision(pd.__version__):
+        options["float_precision"] = "round_trip"
+    # each next one is slower and takes more: pieces may differ in kind, and stamps may be no stamps
+    for more in ({"parse_dates": stamps, "date_format": "ISO8601"}, {}, {"low_memory": False}):
+        if not stamps and "parse_dates" in more:
+            continue
+        try:
+            frame: pd.DataFrame = _strictly(pd.read_csv, io.BytesIO(body), **options, **more)
+        except (Warning, TypeError):
+            continue
+        except (ValueError, OverflowError, pd.errors.ParserError):
+            return None
+        if frame[extra].notna().any():
+            return None
+        if "low_memory" in more or _is_settled(frame, layout, more):
+            return frame
+    return None
+
+
+def _is_settled(frame: pd.DataFrame, layout: Layout, options: dict[str, Any]) -> bool:
+    """Whether every column is of one kind, and stamps became dates without a zone."""
+    stamps = options.get("parse_dates", ())
+    if any(frame[index].dtype.kind != "M" or getattr(frame[index].dtype, "tz", None) for index in stamps):
+        return False
+    return all(frame[index].dtype != object for index in layout.columns)
+
+
+def _strictly(read: Any, *arguments: Any, **options: Any) -> Any:
+    """Call the reader; that it leaves cells out, of which it only warns, is an error."""
+    with warnings.catch_warnings():
+        warnings.simplefilter("error")
+        return read(*arguments, **options)
 
 
 def _needs_precision(version: str) -> bool:
@@ -350,10 +392,11 @@ def _line_numbers(body: bytes, rows: int, first: int) -> NDArray[np.int64] | Non
     return numbers.astype(np.int64) if len(numbers) == rows else None
 
 
-def _clean_texts(cells: pd.Series[Any]) -> list[object] | None:
+def _clean_texts(cells: pd.Series[Any], decimal: str) -> list[object] | None:
     """Texts under a numeric heading, where each can only be read in one way; else None."""
+    other = "," if decimal == "." else "."
     for text in cells.unique():
-        if isinstance(text, str) and (not is_reading(text) or "," in text or "." in text):
+        if isinstance(text, str) and (not is_reading(text) or other in text or text.count(decimal) > 1):
             return None
         if not isinstance(text, (str, float)):
             return None

@@ -7,7 +7,7 @@ import re
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from datetime import date, datetime, time, timedelta
-from typing import NoReturn
+from typing import Any, NoReturn
 
 import numpy as np
 from numpy.typing import NDArray
@@ -18,7 +18,8 @@ from acceptance.units import Unit
 
 __all__ = ["MISSING", "Cells", "Place", "Readings", "is_reading", "settle_decimal", "to_readings"]
 
-Cells = NDArray[np.float64] | Sequence[object]
+# numbers, stamps (datetime64), or cells as they stand
+Cells = NDArray[Any] | Sequence[object]
 
 MISSING = ("", "-", "--", "NaN", "nan", "NAN", "n/a", "N/A", "na", "NA", "n.a.", "#N/A", "null", "NULL")
 _MISSING = frozenset(word.casefold() for word in MISSING)
@@ -35,7 +36,8 @@ _NUMBER = re.compile(
     re.ASCII,
 )
 _CLOCK_LIKE = re.compile(
-    r"\d{1,4}:\d{2}|\d{1,4}[-/]\d{1,2}[-/]\d{1,4}|\d{1,2}\.\d{1,2}\.\d{2,4}|\d{1,2}[- ][A-Za-z]{3,9}[- ]\d{4}|\d{8}T\d{4}",
+    r"\d{1,4}:\d{2}|\d{1,4}[-/]\d{1,2}[-/]\d{1,4}|\d{1,2}\.\d{1,2}\.\d{2,4}|\d{1,2}[- ][A-Za-z]{3,9}[- ]\d{4}"
+    r"|\d{8}T\d{4}",
     re.ASCII,
 )
 
@@ -219,18 +221,20 @@ def to_readings(
         At the first cell that is no number, or whose unit is unknown, of another kind or another than the heading's.
     """
     if isinstance(cells, np.ndarray):
-        values, over, cell_unit = cells.astype(np.float64), np.zeros(len(cells), bool), ""
+        values, over, cell_unit = cells, np.zeros(0, np.intp), ""
     else:
-        values, over, cell_unit = _from_texts(cells, place, unit, kind, decimal, thousands)
-    with np.errstate(invalid="ignore"):
-        big = np.abs(values) > _SENT_FOR_OVER
-    if big.any():
-        over = over | (big & ~(np.abs(values) > _SENT_FOR_NONE)) | (big & ~np.isfinite(values) & ~np.isnan(values))
+        values, worded, cell_unit = _from_texts(cells, place, unit, kind, decimal, thousands)
+        over = np.flatnonzero(worded)
+    if max(np.fmax.reduce(values, initial=0.0), -np.fmin.reduce(values, initial=0.0)) > _SENT_FOR_OVER:
+        size = np.abs(values)
+        big = size > _SENT_FOR_OVER
+        sent = big & ((size < _SENT_FOR_NONE) | np.isinf(size))
+        over = np.union1d(over, np.flatnonzero(sent))
         values = np.where(big, np.nan, values)
     if unit is not None and (unit.factor != 1.0 or unit.offset != 0.0):
         values = values * unit.factor + unit.offset
-    missing = np.flatnonzero(np.isnan(values) & ~over)
-    return Readings(values, missing, np.flatnonzero(over), cell_unit)
+    missing = np.flatnonzero(np.isnan(values))
+    return Readings(values, np.setdiff1d(missing, over) if missing.size else missing, over, cell_unit)
 
 
 def _from_texts(

@@ -53,17 +53,16 @@ def read_workbook(raw: bytes, file: str, vocabulary: Vocabulary) -> Source:
     _refuse_container(raw, file)
     source = Source(file)
     tried: list[tuple[str, list[Row]]] = []
-    with _opened(raw, file) as book:
-        names = [sheet.title for sheet in book.worksheets]
+    with _opened(raw, file) as (book, charts):
         for sheet in book.worksheets:
             rows, layout = _read_sheet(sheet, file, vocabulary)
             if layout is None:
                 tried.append((sheet.title, rows[:_HEAD_ROWS]))
                 source.ignore(f'sheet "{shown(sheet.title)}"', "no table of readings on it")
                 continue
-            _take_sheet(source, sheet, rows, layout, several=len(names) > 1)
-        for sheet in book.chartsheets:
-            source.ignore(f'sheet "{shown(sheet.title)}"', "a sheet of charts only")
+            _take_sheet(source, sheet, rows, layout)
+        for title in charts:
+            source.ignore(f'sheet "{shown(title)}"', "a sheet of charts only")
     if not source.tables:
         _refuse_sheets(raw, file, tried, vocabulary)
     _refuse_formulas(raw, source)
@@ -87,7 +86,9 @@ def _refuse_container(raw: bytes, file: str) -> None:
             if not any(entry.filename.startswith("xl/") for entry in entries):
                 raise LogError(file, "this archive is no .xlsx workbook", "save the log as .xlsx or as delimited text")
             _refuse_doctypes(archive, entries, file)
-    except (zipfile.BadZipFile, OSError, ValueError, NotImplementedError, RuntimeError, EOFError):
+    except LogError:
+        raise
+    except Exception:  # a damaged archive ends in zlib's, struct's or zipfile's own errors
         found = "the workbook is cut short or damaged"
         raise LogError(file, found, "copy it again, or save it anew in a spreadsheet program") from None
 
@@ -113,16 +114,20 @@ def _refuse_doctypes(archive: zipfile.ZipFile, entries: Sequence[zipfile.ZipInfo
 @contextmanager
 def _opened(raw: bytes, file: str, *, values: bool = True) -> Iterator[Any]:
     """The workbook in read-only mode; anything that goes wrong inside it is a LogError."""
-    import openpyxl
+    from openpyxl.reader.excel import ExcelReader
 
     with warnings.catch_warnings():
         warnings.simplefilter("ignore")  # styles and validations that are not read here
         try:
-            book = openpyxl.load_workbook(io.BytesIO(raw), read_only=True, data_only=values, keep_links=False)
+            reader: Any = ExcelReader(io.BytesIO(raw), read_only=True, data_only=values, keep_links=False)
+            charts: list[str] = []
+            # a sheet of charts is not opened: an odd chart must not lose the log beside it
+            reader.read_chartsheet = lambda sheet, _: charts.append(sheet.name)
+            reader.read()
             try:
-                yield book
+                yield reader.wb, charts
             finally:
-                book.close()
+                reader.wb.close()
         except (LogError, KeyboardInterrupt, MemoryError):
             raise
         except Exception as problem:
@@ -166,14 +171,11 @@ def _read_sheet(sheet: Any, file: str, vocabulary: Vocabulary) -> tuple[list[Row
     return rows, layout
 
 
-def _take_sheet(source: Source, sheet: Any, rows: list[Row], layout: Layout, *, several: bool) -> None:
+def _take_sheet(source: Source, sheet: Any, rows: list[Row], layout: Layout) -> None:
     name = f'{source.file}, sheet "{shown(sheet.title)}"'
     for _, cells in rows[: layout.heading]:
         _side_pairs(source, cells, frozenset())
-    table = frozenset(layout.columns) | frozenset(layout.unread)
-    for _, cells in rows[layout.heading : layout.heading + _HEAD_ROWS]:
-        if len(cells) > layout.width or len(table) < layout.width:
-            _side_pairs(source, cells, table)
+    _side_pairs(source, rows[layout.heading][1], frozenset(layout.columns) | frozenset(layout.unread))
     source.tables += tables_of(rows, layout, source, name=name, sheet=sheet.title)
     for heading in layout.unread.values():
         if heading.text.strip():
@@ -193,9 +195,9 @@ def _refuse_sheets(raw: bytes, file: str, tried: Sequence[tuple[str, list[Row]]]
     if not filled:
         raise LogError(file, "the workbook is empty", "expected a sheet with headings and readings")
     title, rows = filled[0]
-    with _opened(raw, file, values=False) as book:
+    with _opened(raw, file, values=False) as (book, _):
         for name, kept in filled:
-            cells = book[name].iter_rows(min_row=kept[0][0], max_row=kept[-1][0], max_col=40, values_only=True)
+            cells = book[name].iter_rows(min_row=kept[0][0], max_row=kept[-1][0] + 50, max_col=40, values_only=True)
             if any(isinstance(cell, str) and cell.startswith("=") for row in cells for cell in row):
                 raise LogError(file, f'sheet "{shown(name)}" holds a {_FORMULA}')
     refuse_headings(f'{file}, sheet "{shown(title)}"' if len(filled) > 1 else file, rows, vocabulary)
@@ -214,7 +216,7 @@ def _refuse_formulas(raw: bytes, source: Source) -> None:
     ]
     if not empty:
         return
-    with _opened(raw, source.file, values=False) as book:
+    with _opened(raw, source.file, values=False) as (book, _):
         for table, column in empty:
             if _is_formula(book[table.sheet], table, column.position):
                 found = f'sheet "{shown(table.sheet)}": the column "{shown(column.heading.text)}" holds a {_FORMULA}'

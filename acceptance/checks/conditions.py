@@ -10,13 +10,11 @@ from acceptance.bench.log import channel_key
 from acceptance.limitfile.limits import Limits
 from acceptance.limitfile.model import Conditions, Requirement
 from acceptance.points.point import Point, Points
-from acceptance.points.propagation import expanded
 
 ANY: Literal["any"] = "any"
 
 __all__ = ["Condition", "condition_of", "load_tolerance", "matching", "missing_dwell"]
 
-_NO_LOAD = 0.002  # of rated current
 _LOAD_TOLERANCE = 0.02  # of rated current; half of it at 10 % and below
 _INPUT_TOLERANCE = 0.01  # of the input voltage
 
@@ -86,16 +84,8 @@ def meets_load(point: Point, output: str, load: Load) -> bool:
     if isinstance(load, str):
         return fraction <= 1 + load_tolerance(1.0, point.limits) + 1e-12
     if load == 0:
-        return abs(fraction) <= _no_load(point, output)
+        return point.is_unloaded(output)
     return abs(fraction - load) <= load_tolerance(load, point.limits) + 1e-12
-
-
-def _no_load(point: Point, output: str) -> float:
-    """The largest |I| that is no load: its uncertainty or 0.2 % of rated current, as a fraction of that."""
-    key = channel_key("output_current", output)
-    rated = point.limits.ratings.outputs[output].current
-    value = point.bench.correct(key, point.mean(key).mean)
-    return max(expanded(value, point.limits.decision.confidence).expanded / rated, _NO_LOAD) + 1e-12
 
 
 def meets_input(point: Point, voltage: float | Literal["any"] | None) -> bool:

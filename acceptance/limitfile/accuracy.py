@@ -82,9 +82,14 @@ def _term(term: str, text: str, kind: str) -> tuple[str, float]:
     unit, what = match["unit"] or "", (match["what"] or "").lower()
     if (not what and unit.lower() in _DIGITS) or (not unit and what in _DIGITS):
         return "digits", _number(match["size"], text)
+    if not what and unit.lower() in _READING | _RANGE:
+        unit, what = "", unit.lower()
     if what in _READING or what in _RANGE:
         return _share(match, what, text)
-    known = UNITS.get(unit or match["what"] or "")
+    if unit and what:
+        msg = f"{quoted(match['what'])} in {quoted(text)} is neither reading, range nor digits"
+        raise MeasurementError(msg)
+    known = UNITS.get(unit)
     if known is not None and known.kind == "ratio":
         msg = f'{quoted(term)} in {quoted(text)} does not say of what ("{term} reading" or "{term} range")'
         raise MeasurementError(msg)
@@ -95,7 +100,7 @@ def _term(term: str, text: str, kind: str) -> tuple[str, float]:
 
 def _share(match: re.Match[str], what: str, text: str) -> tuple[str, float]:
     """A share of the reading or of the range."""
-    known = UNITS.get(match["unit"] or "")
+    known = UNITS.get(match["unit"] or "") if match["what"] else None
     if known is None or known.kind != "ratio":
         msg = f'{quoted(match[0])} in {quoted(text)} needs % or ppm before "{what}"'
         raise MeasurementError(msg)

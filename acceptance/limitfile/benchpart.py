@@ -67,7 +67,7 @@ def bench_part(source: Source, model: BenchFile, outputs: Sequence[str]) -> Benc
 
 
 def _channel(
-    source: Source, path: Path, quantities: Collection[str], outputs: Sequence[str], *, probe_needed: bool = False
+    source: Source, path: Path, *, quantities: Collection[str], outputs: Sequence[str], probe_needed: bool = False
 ) -> tuple[str, str] | None:
     """Quantity, and output or probe, of the key that a path ends with; None, and a fault noted, where it is neither."""
     key = str(path[-1])
@@ -90,7 +90,7 @@ def _channel(
     return None
 
 
-def _kept_once(source: Source, path: Path, key: str, seen: dict[str, Path]) -> bool:
+def _kept_once(source: Source, path: Path, *, key: str, seen: dict[str, Path]) -> bool:
     """Whether a channel is named for the first time; a fault is noted where it is not."""
     if key not in seen:
         seen[key] = path
@@ -109,13 +109,13 @@ def _columns(
     headings: dict[str, str] = {}
     for name, choice in columns.items():
         path: Path = ("log", "columns", name)
-        channel = _channel(source, path, QUANTITIES, outputs, probe_needed=True)
+        channel = _channel(source, path, quantities=QUANTITIES, outputs=outputs, probe_needed=True)
         if channel is None:
             continue
         quantity, qualifier = channel
-        _check_column_unit(source, path, quantity, choice.unit)
+        _check_column_unit(source, path, quantity=quantity, unit=choice.unit)
         default = outputs[0] if outputs and quantity in OUTPUT_QUANTITIES else ""
-        if not _kept_once(source, path, channel_key(quantity, qualifier or default), seen):
+        if not _kept_once(source, path, key=channel_key(quantity, qualifier or default), seen=seen):
             continue
         if choice.heading in headings:
             found = f"the heading {quoted(choice.heading)} stands for {headings[choice.heading]} already"
@@ -125,7 +125,7 @@ def _columns(
     return made
 
 
-def _check_column_unit(source: Source, path: Path, quantity: str, unit: str | None) -> None:
+def _check_column_unit(source: Source, path: Path, *, quantity: str, unit: str | None) -> None:
     if unit is None:
         return
     kind = QUANTITIES[quantity]
@@ -146,11 +146,11 @@ def _stated(source: Source, stated: Mapping[str, str], outputs: Sequence[str]) -
     seen: dict[str, Path] = {}
     for name, text in stated.items():
         path: Path = ("log", "stated", name)
-        channel = _channel(source, path, _NUMBERS, outputs, probe_needed=True)
-        if channel is None or not _kept_once(source, path, channel_key(*channel), seen):
+        channel = _channel(source, path, quantities=_NUMBERS, outputs=outputs, probe_needed=True)
+        if channel is None or not _kept_once(source, path, key=channel_key(*channel), seen=seen):
             continue
         kind = _NUMBERS[channel[0]]
-        value = _number(source, path, text, kind)
+        value = _number(source, path, text, kind=kind)
         if value is None:
             continue
         if kind == "ratio" and not 0 < value <= 1:
@@ -169,25 +169,24 @@ def _meters(source: Source, instruments: Mapping[str, Instrument], outputs: Sequ
     seen: dict[str, Path] = {}
     for name, instrument in instruments.items():
         path: Path = ("instruments", name)
-        channel = _channel(source, path, _NUMBERS, outputs)
-        if channel is None or not _kept_once(source, path, channel_key(*channel), seen):
+        channel = _channel(source, path, quantities=_NUMBERS, outputs=outputs)
+        if channel is None or not _kept_once(source, path, key=channel_key(*channel), seen=seen):
             continue
         key = channel_key(*channel)
-        made[key] = _meter(source, path, instrument, (key, _NUMBERS[channel[0]]))
+        made[key] = _meter(source, path, instrument, key=key, kind=_NUMBERS[channel[0]])
     return made
 
 
-def _meter(source: Source, path: Path, instrument: Instrument, channel: tuple[str, str]) -> Meter:
-    """What measured a channel, which is its key and the kind of its unit."""
-    key, kind = channel
+def _meter(source: Source, path: Path, instrument: Instrument, *, key: str, kind: str) -> Meter:
+    """What measured the channel `key`, whose unit is of that kind."""
     difference = "temperature difference" if kind == "temperature" else kind
     meter = Meter(
         quantity=key,
         device=instrument.device,
         kind=kind,
-        accuracy=_accuracy(source, (*path, "accuracy"), instrument.accuracy, kind),
-        meter_range=_meter_range(source, (*path, "meter_range"), instrument.meter_range, kind),
-        resolution=_positive(source, (*path, "resolution"), instrument.resolution, difference),
+        accuracy=_accuracy(source, (*path, "accuracy"), instrument.accuracy, kind=kind),
+        meter_range=_meter_range(source, (*path, "meter_range"), instrument.meter_range, kind=kind),
+        resolution=_positive(source, (*path, "resolution"), instrument.resolution, kind=difference),
         shunt=_shunt(instrument.shunt),
         converter=_converter(instrument.adc),
         due=instrument.due,
@@ -195,12 +194,12 @@ def _meter(source: Source, path: Path, instrument: Instrument, channel: tuple[st
         note=instrument.note or "",
         text=_in_words(source, path, instrument),
     )
-    _check_accuracy(source, path, instrument, meter.accuracy)
-    _check_chain(source, path, instrument, channel)
+    _check_accuracy(source, path, instrument, accuracy=meter.accuracy)
+    _check_chain(source, path, instrument, key=key, kind=kind)
     return meter
 
 
-def _accuracy(source: Source, path: Path, text: str | None, kind: str) -> Accuracy | None:
+def _accuracy(source: Source, path: Path, text: str | None, *, kind: str) -> Accuracy | None:
     if text is None:
         return None
     try:
@@ -210,20 +209,20 @@ def _accuracy(source: Source, path: Path, text: str | None, kind: str) -> Accura
         return None
 
 
-def _meter_range(source: Source, path: Path, text: str | None, kind: str) -> float | Literal["auto"] | None:
-    return "auto" if text == "auto" else _positive(source, path, text, kind, other=", or auto")
+def _meter_range(source: Source, path: Path, text: str | None, *, kind: str) -> float | Literal["auto"] | None:
+    return "auto" if text == "auto" else _positive(source, path, text, kind=kind, other=", or auto")
 
 
-def _positive(source: Source, path: Path, text: str | None, kind: str, *, other: str = "") -> float | None:
+def _positive(source: Source, path: Path, text: str | None, *, kind: str, other: str = "") -> float | None:
     if text is None:
         return None
-    value = _number(source, path, text, kind, other=other)
+    value = _number(source, path, text, kind=kind, other=other)
     if value is not None and value <= 0:
         source.refuse(path, f"{quoted(text)} is not above zero", f"expected a {kind}, such as 1 {_si(kind)}{other}")
     return value
 
 
-def _number(source: Source, path: Path, text: str, kind: str, *, other: str = "") -> float | None:
+def _number(source: Source, path: Path, text: str, *, kind: str, other: str = "") -> float | None:
     """The SI value of a text, a ratio also without a unit; None, and a fault noted, where it is none."""
     try:
         # a ratio of two quantities is as often a plain number: a power factor of 0.95
@@ -238,7 +237,7 @@ def _si(kind: str) -> str:
     return KINDS[kind] or "%"
 
 
-def _check_accuracy(source: Source, path: Path, instrument: Instrument, accuracy: Accuracy | None) -> None:
+def _check_accuracy(source: Source, path: Path, instrument: Instrument, *, accuracy: Accuracy | None) -> None:
     """Note what an accuracy refers to and the entry does not give."""
     if accuracy is None:
         return
@@ -252,9 +251,8 @@ def _check_accuracy(source: Source, path: Path, instrument: Instrument, accuracy
         source.refuse((*path, "accuracy"), found, expected)
 
 
-def _check_chain(source: Source, path: Path, instrument: Instrument, channel: tuple[str, str]) -> None:
+def _check_chain(source: Source, path: Path, instrument: Instrument, *, key: str, kind: str) -> None:
     """Note a shunt or a converter that cannot have measured this."""
-    key, kind = channel
     if instrument.shunt is not None and kind != "current":
         source.refuse(
             (*path, "shunt"), f"{key} is read across a shunt", "expected a shunt for a current alone", key=True

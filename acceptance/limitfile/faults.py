@@ -27,12 +27,11 @@ class Source:
 
     def refuse(self, path: Path, found: str, expected: str, *, key: bool = False) -> None:
         """Note a fault at the value of a path, or at its key."""
-        line, column = self.tree.place(path, key=key)
-        self.add(line, column, found, expected)
+        self.add(self.tree.place(path, key=key), found, expected)
 
-    def add(self, line: int, column: int, found: str, expected: str) -> None:
-        """Note a fault at a place."""
-        self.faults.append(Fault(self.file, line, column, on_one_line(found), on_one_line(expected)))
+    def add(self, place: tuple[int, int], found: str, expected: str) -> None:
+        """Note a fault at line and column; (0, 0) is the file as a whole."""
+        self.faults.append(Fault(self.file, *place, on_one_line(found), on_one_line(expected)))
 
 
 def on_one_line(text: str) -> str:
@@ -85,14 +84,14 @@ def add_model_faults(
             for problem in found["ctx"]["problems"]:
                 source.refuse(path + problem.at, problem.found, problem.expected)
         elif found["type"] == "extra_forbidden":
-            _unknown_key(source, path, model, elsewhere)
+            _unknown_key(source, path, model, elsewhere=elsewhere)
         elif found["type"] == "missing":
             _missing_key(source, path, model)
         else:
-            _unfit_value(source, path, found["input"], model)
+            _unfit_value(source, path, model, value=found["input"])
 
 
-def _unknown_key(source: Source, path: Path, model: type[Part], elsewhere: Iterable[str]) -> None:
+def _unknown_key(source: Source, path: Path, model: type[Part], *, elsewhere: Iterable[str]) -> None:
     key = str(path[-1])
     if len(path) == 1 and key in set(elsewhere):
         source.refuse(path, f"the key {quoted(key)} stands in a bench file", "expected it in the limits file", key=True)
@@ -111,7 +110,7 @@ def _missing_key(source: Source, path: Path, model: type[Part]) -> None:
     source.refuse(path[:-1], f"{key} is missing", f"expected {key}: {example}")
 
 
-def _unfit_value(source: Source, path: Path, value: object, model: type[Part]) -> None:
+def _unfit_value(source: Source, path: Path, model: type[Part], *, value: object) -> None:
     annotation = _annotation_at(model, path)
     shown = quoted(value) if isinstance(value, str) else _kind_of(value)
     found = "no value is given" if value == "" else f"{shown} stands here"

@@ -17,13 +17,15 @@ from acceptance.limitfile.faults import Source, add_model_faults, on_one_line
 from acceptance.limitfile.fields import Part
 from acceptance.limitfile.fingerprint import requirements_sha256
 from acceptance.limitfile.limits import Limits
-from acceptance.limitfile.model import BenchFile, InputRating, LimitsFile, Requirement, Requirements
+from acceptance.limitfile.model import BenchFile, InputRating, LimitsFile, Requirements
 from acceptance.limitfile.yamltree import MAX_BYTES, Path, Tree, read_tree
 
 __all__ = ["bench_schema", "limits_schema", "load_limits"]
 
 P = TypeVar("P", bound=Part)
 
+# keys that a bench file cannot have
+_OWN_KEYS = frozenset(LimitsFile.model_fields) - frozenset(BenchFile.model_fields)
 # sections that may stand empty, as when all their entries are commented out
 _SECTIONS = frozenset({"log", "instruments", "lead_resistance", "lot", "decision"})
 
@@ -72,23 +74,14 @@ def load_limits(path: FilePath, bench: FilePath | None = None) -> Limits:
     faults = {fault: None for file in files for fault in file.source.faults}
     if faults or model is None:
         raise LimitsError(list(faults))
-    return _limits(limits_file, model, named(requirements), part, bench_file)
-
-
-_OWN_KEYS = frozenset(LimitsFile.model_fields) - frozenset(BenchFile.model_fields)
-
-
-def _limits(
-    file: _File, model: LimitsFile, requirements: list[Requirement], part: BenchPart, bench_file: _File | None
-) -> Limits:
     return Limits(
-        file=file.name,
-        sha256=file.sha256,
-        requirements_sha256=requirements_sha256(model.ratings, model.decision, requirements),
+        file=limits_file.name,
+        sha256=limits_file.sha256,
+        requirements_sha256=requirements_sha256(model.ratings, model.decision, named(requirements)),
         product=model.product,
         ratings=model.ratings,
         decision=model.decision,
-        requirements=tuple(requirements),
+        requirements=tuple(named(requirements)),
         columns=part.columns,
         stated=part.stated,
         load_mode=part.load_mode,
@@ -127,14 +120,14 @@ def _read(path: FilePath) -> _File:
             data = stream.read(MAX_BYTES + 1)
     except OSError as problem:
         reason = "it is a folder" if isinstance(problem, IsADirectoryError) else problem.strerror or "it is not there"
-        source.add(0, 0, f"the file cannot be read: {reason}", "expected a readable file")
+        source.add((0, 0), f"the file cannot be read: {reason}", "expected a readable file")
         return _File(path.name, source, "", {}, broken=True)
     if len(data) > MAX_BYTES:
-        source.add(0, 0, "the file is larger than 1 MB", "expected a limits or bench file")
+        source.add((0, 0), "the file is larger than 1 MB", "expected a limits or bench file")
         return _File(path.name, source, "", {}, broken=True)
     source.tree = read_tree(data)
     for flaw in source.tree.flaws:
-        source.add(flaw.line, flaw.column, flaw.found, flaw.expected)
+        source.add((flaw.line, flaw.column), flaw.found, flaw.expected)
     return _with_content(path.name, source, hashlib.sha256(data).hexdigest())
 
 

@@ -243,7 +243,8 @@ class ColumnChoice(Part):
     def __get_pydantic_json_schema__(cls, schema: CoreSchema, handler: GetJsonSchemaHandler) -> dict[str, Any]:
         """Alone the heading, or a mapping with heading and unit."""
         heading = {"type": "string", "description": "the heading as it stands in the log"}
-        return {"anyOf": [heading, handler(schema)]}
+        mapping = handler.resolve_ref_schema(handler(schema))
+        return {"anyOf": [heading, dict(mapping)]}
 
 
 def _column(value: object) -> object:

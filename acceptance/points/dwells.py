@@ -9,26 +9,25 @@ from __future__ import annotations
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from itertools import pairwise
-from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 
 from acceptance.bench.log import BenchLog, Doubt, Span
+from acceptance.points.borders import Codes, changes, common, gaps_in
 from acceptance.points.levels import Level, find_levels
 from acceptance.points.settling import drift_of, samples_ahead, settling_samples
 
 __all__ = ["Dwell", "Dwells", "find_dwells"]
 
 Array = npt.NDArray[np.float64]
-Codes = npt.NDArray[np.signedinteger[Any]]
 
 RATED_SHARE = 0.002  # of the rated current: a smaller change is no new load
 INPUT_SHARE = 0.01  # of the input voltage: the tolerance within which a condition on it is met
 BY_HAND_ROWS = 24  # in so short a table a row may be a condition of its own
+ROWS_BY_HAND = 200  # a longer table whose settings all differ was not written by hand, but read back
 FEW = 5  # samples; a log whose settings are mostly held for fewer is kept by hand
 HALF_LEFT = 8  # samples; below this a half says nothing about settling
-GAP_STEPS = 10  # median time steps without a sample: a gap
 SETTLING_QUANTITIES = ("output_current", "output_voltage", "input_power")
 BY_HAND = "one row a condition"
 DECLARED = "load setting"
@@ -115,7 +114,7 @@ def find_dwells(
     if time is None or np.isnan(time).all():
         doubts = [_no_time(name) for name, value in (("settle", settle), ("min_dwell", min_dwell)) if value]
         time, settle, min_dwell = None, None, None
-    samples = _Samples(channels, time, settle, min_dwell, _smallest_changes(channels, rated or {}))
+    samples = _Samples(channels, time, settle, min_dwell, _smallestchanges(channels, rated or {}))
     table, stage = log.samples["table"].to_numpy(dtype=np.int64), log.samples["stage"]
     dwells: list[Dwell] = []
     for group, borders in _groups(log, samples):
@@ -174,7 +173,7 @@ def _finite(x: Array) -> Array:
     return np.where(infinite, np.nan, x) if infinite.any() else np.ascontiguousarray(x)
 
 
-def _smallest_changes(channels: Iterable[str], rated: Mapping[str, float]) -> dict[str, float]:
+def _smallestchanges(channels: Iterable[str], rated: Mapping[str, float]) -> dict[str, float]:
     """Output current channel -> the smallest change that is a new load. [A]"""
     out: dict[str, float] = {}
     for key in channels:
@@ -191,34 +190,14 @@ def _smallest_changes(channels: Iterable[str], rated: Mapping[str, float]) -> di
 def _groups(log: BenchLog, samples: _Samples) -> Iterator[tuple[Span, list[int]]]:
     """Each stretch of one table, stage and load mode, with the borders of its gapless parts."""
     told = [log.samples["table"].to_numpy(), *(_codes(log, key) for key in ("stage", *log.keys("load_mode")))]
-    for first, stop in pairwise([0, *_changes(told).tolist(), len(log.samples)]):
-        gaps = [] if samples.time is None else (_gaps(samples.time[first:stop]) + first).tolist()
+    for first, stop in pairwise([0, *changes(told).tolist(), len(log.samples)]):
+        gaps = [] if samples.time is None else (gaps_in(samples.time[first:stop]) + first).tolist()
         yield (first, stop), [first, *gaps, stop]
 
 
 def _codes(log: BenchLog, key: str) -> Codes:
     """A number for each text of a column; equal numbers, equal text."""
     return np.asarray(log.samples[key].astype("category").cat.codes, dtype=np.int64)
-
-
-def _changes(columns: Iterable[npt.NDArray[np.generic]]) -> Codes:
-    """Indices of the samples at which any column differs from the sample before."""
-    differs = [column[1:] != column[:-1] for column in columns]
-    return np.flatnonzero(np.logical_or.reduce(differs)) + 1
-
-
-def _gaps(time: Array) -> Codes:
-    """Indices of the samples before which time jumps, or runs back; a logger that slows down for good has no gap."""
-    step = np.diff(time)
-    forward = step[step > 0]
-    back = np.flatnonzero(step < 0)
-    if forward.size < 4:
-        return back + 1
-    long = step > GAP_STEPS * float(np.median(forward))
-    count = np.concatenate(([0], np.cumsum(long)))
-    at = np.flatnonzero(long)
-    around = count[np.minimum(at + 4, step.size)] - count[np.maximum(at - 3, 0)]
-    return np.union1d(at[around <= 3], back) + 1
 
 
 # --- steady stretches -------------------------------------------------------------------------------------------
@@ -267,9 +246,11 @@ def _without_holes(setting: Array) -> Array:
 def _declared(samples: _Samples, block: Span, settings: Array) -> list[_Steady]:
     """Runs of equal settings, each cut where the input voltage is stepped; where all are empty, found instead."""
     empty = np.isnan(settings)
-    runs = list(pairwise([0, *_changes([*np.where(empty, 0.0, settings), *empty]).tolist(), settings.shape[1]]))
+    runs = list(pairwise([0, *changes([*np.where(empty, 0.0, settings), *empty]).tolist(), settings.shape[1]]))
     lengths = np.array([stop - first for first, stop in runs])
     by_hand = float(np.median(np.repeat(lengths, lengths))) < FEW  # else a setting of one sample is part of a ramp
+    if by_hand and settings.shape[1] > ROWS_BY_HAND:
+        runs, by_hand = _levels_read_back(settings), False
     inputs = _levels(samples, "input_voltage", block, by_hand=by_hand) or [block]
     out: list[_Steady] = []
     for first, stop in runs:
@@ -280,10 +261,20 @@ def _declared(samples: _Samples, block: Span, settings: Array) -> list[_Steady]:
     return out
 
 
+def _levels_read_back(settings: Array) -> list[Span]:
+    """The runs of settings that were read back with noise, so that hardly two samples are equal."""
+    joint: list[Span] = [(0, settings.shape[1])]
+    for setting in settings:
+        largest = float(np.nanmax(np.abs(setting)))
+        levels = [(first, stop) for first, stop, _ in find_levels(setting, smallest=RATED_SHARE * largest)]
+        joint = list(common(joint, levels))
+    return joint
+
+
 def _within(run: Span, inputs: Sequence[Span]) -> Iterator[_Steady]:
     """A declared run, once for every input-voltage level in it."""
     begins = run[0]
-    for first, stop in _common([run], inputs):
+    for first, stop in common([run], inputs):
         yield _Steady(begins, first, stop, DECLARED)
         begins = stop
 
@@ -298,16 +289,16 @@ def _found(samples: _Samples, block: Span) -> list[_Steady]:
             told[key] = levels
     if not told:
         return [_Steady(block[0], *block, BY_HAND if block[1] - block[0] == 1 else "found in no channel")]
-    by_hand = by_hand or any(_is_by_hand(levels) for levels in told.values())
+    rows_told = any(_is_by_hand(levels) for levels in told.values())
     joint: Iterable[Span] = [block]
     for levels in told.values():
-        joint = _common(joint, levels)
+        joint = common(joint, levels)
     out: list[_Steady] = []
     begins = block[0]
     for first, stop in joint:
-        if stop - first == 1 and not by_hand:
+        if stop - first == 1 and not (by_hand or rows_told):
             continue
-        single = stop - first == 1 or any(_is_by_hand(levels) for levels in told.values())
+        single = rows_told or stop - first == 1
         out.append(_Steady(first if single else begins, first, stop, BY_HAND if single else _source(told, first)))
         begins = stop
     return out
@@ -354,18 +345,6 @@ def _over_empty_ends(levels: Sequence[Level], known: Codes, size: int) -> list[S
     if spans and spans[-1][1] == known[-1] + 1:
         spans[-1] = (spans[-1][0], size)
     return spans
-
-
-def _common(one: Iterable[Span], other: Sequence[Span]) -> Iterator[Span]:
-    """What two ordered lists of spans have in common."""
-    i = 0
-    for first, stop in one:
-        while i < len(other) and other[i][1] <= first:
-            i += 1
-        j = i
-        while j < len(other) and other[j][0] < stop:
-            yield max(first, other[j][0]), min(stop, other[j][1])
-            j += 1
 
 
 def _source(told: Mapping[str, Sequence[Span]], first: int) -> str:

@@ -11,53 +11,36 @@ model and the constants are ours, set on synthetic sweeps with known truth (test
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from itertools import pairwise
 
 import numpy as np
 import numpy.typing as npt
 
+from acceptance.points.noise import (
+    SAMPLED,
+    SIGMAS,
+    SWING_SHARE,
+    Array,
+    Noise,
+    median,
+    noise_of,
+    running_sum,
+    two_windows,
+    windows,
+)
+
 __all__ = ["Level", "find_levels"]
 
-Array = npt.NDArray[np.float64]
 Span = tuple[int, int]
 Level = tuple[int, int, float]  # first sample, one past the last, level in the channel's unit
 
-WINDOWS = (1, 4, 16, 32, 64)  # samples
-SIGMAS = 6.0  # a difference beyond this many standard deviations is no noise, even among 1e7 samples
-SPAN_SHARE = 0.004  # of the channel's span: smaller changes make no new level
-READING_SHARE = 0.001  # of the largest reading: the same
-SWING_SHARE = 0.008  # of the reading: noise in proportion to it (mains hum) is looked for up to this
 RAMP_SHARE = 0.3  # of the step to a neighbour: a piece that drifts so far towards it is on a ramp
 MOST_ROWS = 2000  # nobody writes down more by hand
 FEW_ROWS = 24  # too few to tell noise from conditions in any order
 MOSTLY = 0.6  # of the rows
 CLUSTER_SHARE = 0.08  # of the span, between two loads of a plan by hand
-SAMPLED = 8192  # a median over more samples than this is taken over every n-th
-QUARTER_NORMAL = 0.3186394  # lower quartile of |z|, z standard normal
-
-
-@dataclass(frozen=True, slots=True)
-class _Noise:
-    """What a channel does while it stands still. All in the channel's unit over its largest magnitude."""
-
-    sigma: float  # of a sample
-    step: float  # of the converter; 0 where none shows
-    floor: float  # changes up to this are no new level
-    declared: bool  # whether the floor was given, not guessed
-    fixed: dict[int, float]  # window -> standard deviation of the difference of two window means
-    share: dict[int, float]  # window -> the same, as a share of the reading
-
-    def swing(self, window: int) -> float:
-        """What a difference of two windows may be by noise in proportion to the reading, as a share of it."""
-        return 0.0 if self.declared else min(SWING_SHARE, SIGMAS * self.share[window])
-
-    def of_mean(self, samples: int) -> float:
-        """The standard deviation of a mean over so many samples, correlation included."""
-        window = max((w for w in self.fixed if w <= samples), default=1)
-        white = self.sigma / math.sqrt(max(1, samples))
-        return max(white, min(self.sigma, self.fixed.get(window, 0.0) / math.sqrt(2)))
 
 
 @dataclass(frozen=True, slots=True)
@@ -112,14 +95,14 @@ def find_levels(
     if largest == 0:
         return [(int(at[0]), int(at[-1]) + 1, 0.0)]
     y = y / largest  # so that no sum overflows, and a thousandfold reading has the same levels
-    noise = _noise_of(y, None if tolerance is None else tolerance / largest, smallest / largest)
+    noise = noise_of(y, None if tolerance is None else tolerance / largest, smallest / largest)
     pieces = _segment(y, noise, min_samples=min_samples, min_dwell=min_dwell)
     return [(int(at[p.first]), int(at[p.stop - 1]) + 1, p.level * largest) for p in pieces]
 
 
-def _segment(y: Array, noise: _Noise, *, min_samples: int, min_dwell: int | None) -> list[_Piece]:
+def _segment(y: Array, noise: Noise, *, min_samples: int, min_dwell: int | None) -> list[_Piece]:
     """The whole chain, on finite samples."""
-    whole = _Piece(0, y.size, _median(y))
+    whole = _Piece(0, y.size, median(y))
     if np.ptp(y) <= max(noise.floor, 1e-12):
         return [whole]
     if _is_one_row_a_condition(y, noise):
@@ -134,97 +117,10 @@ def _segment(y: Array, noise: _Noise, *, min_samples: int, min_dwell: int | None
     return _without_fragments(_without_ramps(pieces, noise), noise, min_dwell)
 
 
-# --- noise ------------------------------------------------------------------------------------------------------
-
-
-def _noise_of(y: Array, tolerance: float | None, smallest: float) -> _Noise:
-    sigma, step = _sample_noise(y)
-    floor = tolerance
-    if floor is None:
-        low, high = _extent(y)
-        floor = max(SPAN_SHARE * (high - low), READING_SHARE * max(abs(low), abs(high)), 1.5 * step, smallest)
-    fixed: dict[int, float] = {}
-    share: dict[int, float] = {}
-    total = _running_sum(y)
-    for window in _windows(y.size):
-        difference, mean = _two_windows(total, window, sparse=True)
-        white = sigma * math.sqrt(2 / window)
-        fixed[window] = max(white, _normal_scale(difference))
-        near = np.abs(mean) + 0.02  # a fiftieth of full scale: at zero no share of the reading is defined
-        share[window] = _normal_scale(difference / near)
-    return _Noise(sigma, step, floor, tolerance is not None, fixed, share)
-
-
-def _sample_noise(y: Array) -> tuple[float, float]:
-    """Standard deviation of a sample, and the converter's step.
-
-    The lower quartile of the differences counts, so that up to half of them may be load steps.
-    """
-    if y.size < 3:
-        return 0.0, 0.0
-    blocks = _blocks(y)
-    differences = np.abs(np.concatenate([np.diff(block) for block in blocks]))
-    sigma = _normal_scale(differences) / math.sqrt(2)
-    values = np.unique(np.round(blocks[0], 9))
-    step = 0.0
-    if 1 < values.size < 0.25 * blocks[0].size:
-        gaps = np.diff(values)
-        step = float(np.min(gaps[gaps > 2e-9], initial=math.inf))
-        step = step if math.isfinite(step) else 0.0
-    return max(sigma, step / math.sqrt(12)), step
-
-
-def _extent(y: Array) -> tuple[float, float]:
-    """Lowest and highest value; of a long log, the few most extreme left out, which may be gross outliers."""
-    if y.size < 200:
-        return float(np.min(y)), float(np.max(y))
-    low, high = np.quantile(y[:: max(1, y.size // 100_000)], [0.005, 0.995])
-    return float(low), float(high)
-
-
-def _blocks(y: Array, size: int = 10_000, count: int = 40) -> list[Array]:
-    """The samples, or evenly spread stretches of a long log: differences stay those of neighbours."""
-    if y.size <= size * count:
-        return [y]
-    return [y[i : i + size] for i in np.linspace(0, y.size - size, count).astype(int).tolist()]
-
-
-def _normal_scale(differences: Array) -> float:
-    """Standard deviation from the lower quartile of magnitudes, as if they were normal."""
-    if not differences.size:
-        return 0.0
-    quarter = differences.size // 4
-    return float(np.partition(np.abs(differences), quarter)[quarter]) / QUARTER_NORMAL
-
-
-def _windows(samples: int) -> Iterator[int]:
-    return (w for w in WINDOWS if w == 1 or w <= samples // 6)
-
-
-def _running_sum(y: Array) -> Array:
-    total = np.empty(y.size + 1)
-    total[0] = 0
-    np.cumsum(y - y[0], out=total[1:])
-    return total
-
-
-def _two_windows(total: Array, window: int, *, sparse: bool = False) -> tuple[Array, Array]:
-    """Difference of the means after and before, and their own mean, at every stride; offset by the first sample."""
-    stride = max(1, window // 4)
-    if sparse:
-        stride *= max(1, total.size // (stride * 100_000))
-    before, middle, after = (
-        total[: total.size - 2 * window : stride],
-        total[window : total.size - window : stride],
-        total[2 * window :: stride],
-    )
-    return (after - 2 * middle + before) / window, (after - before) / (2 * window)
-
-
 # --- cuts -------------------------------------------------------------------------------------------------------
 
 
-def _is_one_row_a_condition(y: Array, noise: _Noise) -> bool:
+def _is_one_row_a_condition(y: Array, noise: Noise) -> bool:
     """Whether neighbouring rows mostly differ by more than any noise would: a log kept by hand."""
     if y.size >= MOST_ROWS:
         return False
@@ -244,15 +140,15 @@ def _is_one_row_a_condition(y: Array, noise: _Noise) -> bool:
 
 def _equal_runs(y: Array, floor: float) -> list[_Piece]:
     borders = [0, *(np.flatnonzero(np.abs(np.diff(y)) > floor) + 1).tolist(), y.size]
-    return [_Piece(first, stop, _median(y[first:stop])) for first, stop in pairwise(borders)]
+    return [_Piece(first, stop, median(y[first:stop])) for first, stop in pairwise(borders)]
 
 
-def _cuts(y: Array, noise: _Noise) -> npt.NDArray[np.intp]:
+def _cuts(y: Array, noise: Noise) -> npt.NDArray[np.intp]:
     """The borders between pieces, 0 and n included."""
     cut = np.zeros(y.size + 1, dtype=np.bool_)
-    total = _running_sum(y)
-    for window in _windows(y.size):
-        difference, mean = _two_windows(total, window)
+    total = running_sum(y)
+    for window in windows(y.size):
+        difference, mean = two_windows(total, window)
         np.abs(mean + y[0], out=mean)
         limit = np.maximum(SIGMAS * noise.fixed[window], noise.swing(window) * mean)
         np.maximum(limit, noise.floor * (1 + 1e-9), out=limit)
@@ -300,15 +196,6 @@ def _runs(mask: npt.NDArray[np.bool_]) -> list[Span]:
 # --- pieces -----------------------------------------------------------------------------------------------------
 
 
-def _median(y: Array) -> float:
-    """The median of finite samples, without the checks that make numpy's slow on short ones."""
-    ordered = np.sort(y if y.size <= SAMPLED else y[:: y.size // (SAMPLED // 2)])
-    middle = ordered.size // 2
-    if ordered.size % 2:
-        return float(ordered[middle])
-    return 0.5 * (float(ordered[middle - 1]) + float(ordered[middle]))
-
-
 def _pieces_between(y: Array, cuts: npt.NDArray[np.intp]) -> list[_Piece]:
     """The pieces, each with the median of its last 70 %: a step's overshoot lies in the rest."""
     pieces = []
@@ -317,7 +204,7 @@ def _pieces_between(y: Array, cuts: npt.NDArray[np.intp]) -> list[_Piece]:
             pieces.append(_Piece(first, stop, float(y[first])))
         else:
             settled = first + int(0.3 * (stop - first)) if stop - first >= 4 else first
-            pieces.append(_Piece(first, stop, _median(y[settled:stop])))
+            pieces.append(_Piece(first, stop, median(y[settled:stop])))
     return pieces
 
 
@@ -327,7 +214,7 @@ def _joined(one: _Piece, other: _Piece) -> _Piece:
     return _Piece(one.first, other.stop, level)
 
 
-def _merged(pieces: Sequence[_Piece], noise: _Noise) -> list[_Piece]:
+def _merged(pieces: Sequence[_Piece], noise: Noise) -> list[_Piece]:
     """Neighbours whose levels differ by no more than tolerance and noise, joined."""
     out: list[_Piece] = []
     for piece in pieces:
@@ -340,7 +227,7 @@ def _merged(pieces: Sequence[_Piece], noise: _Noise) -> list[_Piece]:
     return out
 
 
-def _rejoined(pieces: Sequence[_Piece], noise: _Noise) -> list[_Piece]:
+def _rejoined(pieces: Sequence[_Piece], noise: Noise) -> list[_Piece]:
     """Pieces of one level with only a few samples (gross outliers) between them, joined."""
     out: list[_Piece] = []
     for piece in pieces:
@@ -354,27 +241,28 @@ def _rejoined(pieces: Sequence[_Piece], noise: _Noise) -> list[_Piece]:
     return out
 
 
-def _trimmed(y: Array, piece: _Piece, noise: _Noise) -> _Piece:
+def _trimmed(y: Array, piece: _Piece, noise: Noise) -> _Piece:
     """The piece without the mostly deviating samples it begins with and those it ends with."""
     part = y[piece.first : piece.stop]
     band = max(SIGMAS * noise.sigma, noise.floor, noise.step, _swing_of(part, piece.level, noise))
-    off = np.flatnonzero(np.abs(part[: max(2, part.size // 2)] - piece.level) > band)
-    dense = np.flatnonzero(np.arange(1, off.size + 1) >= 0.3 * (off + 1))  # outliers further in are not dense
-    lead = int(off[dense[-1]]) + 1 if dense.size else 0
-    tail = part.size
-    while tail - 1 > lead and abs(part[tail - 1] - piece.level) > band:
-        tail -= 1
-    part = part[lead:tail]
-    level = _median(part) if part.size else piece.level
-    return _Piece(piece.first + lead, piece.first + tail, level)
+    off = np.flatnonzero(np.abs(part - piece.level) > band)
+    if not off.size:
+        return replace(piece, level=median(part))
+    early = off[: np.searchsorted(off, max(2, part.size // 2))]
+    dense = np.flatnonzero(np.arange(1, early.size + 1) >= 0.3 * (early + 1))  # outliers further in are not dense
+    lead = int(early[dense[-1]]) + 1 if dense.size else 0
+    at_end = int(np.count_nonzero(off[::-1] == np.arange(part.size - 1, part.size - 1 - off.size, -1)))
+    tail = max(lead + 1, part.size - at_end)
+    level = median(part[lead:tail]) if lead < part.size else piece.level
+    return _Piece(piece.first + lead, piece.first + min(tail, part.size), level)
 
 
-def _swing_of(part: Array, level: float, noise: _Noise) -> float:
+def _swing_of(part: Array, level: float, noise: Noise) -> float:
     """How far a piece swings about its level, where that is a small share of the reading."""
     if noise.declared:
         return 0.0
     later = part[part.size // 3 :: max(1, part.size // SAMPLED)]
-    return min(SWING_SHARE * abs(level), 4.0 * _median(np.abs(later - level)))
+    return min(SWING_SHARE * abs(level), 4.0 * median(np.abs(later - level)))
 
 
 def _drift(part: Array) -> float:
@@ -382,10 +270,10 @@ def _drift(part: Array) -> float:
     if part.size < 2:
         return 0.0
     third = max(1, part.size // 3)
-    return (_median(part[-third:]) - _median(part[:third])) * part.size / (part.size - third)
+    return (median(part[-third:]) - median(part[:third])) * part.size / (part.size - third)
 
 
-def _without_ramps(pieces: Sequence[_Piece], noise: _Noise) -> list[_Piece]:
+def _without_ramps(pieces: Sequence[_Piece], noise: Noise) -> list[_Piece]:
     """The pieces that are no part of a slow change from one level to the next."""
     keep = []
     for i, piece in enumerate(pieces):
@@ -395,7 +283,7 @@ def _without_ramps(pieces: Sequence[_Piece], noise: _Noise) -> list[_Piece]:
     return keep
 
 
-def _is_ramp(piece: _Piece, steps: Sequence[float], noise: _Noise) -> bool:
+def _is_ramp(piece: _Piece, steps: Sequence[float], noise: Noise) -> bool:
     """Whether a piece moves as its neighbours' levels do, and as fast: its drift then is about the step to them."""
     if abs(piece.drift) <= max(noise.floor, 2 * SIGMAS * noise.sigma / math.sqrt(max(1, piece.length // 3))):
         return False
@@ -403,7 +291,7 @@ def _is_ramp(piece: _Piece, steps: Sequence[float], noise: _Noise) -> bool:
     return len(along) == len(steps) and bool(steps) and abs(piece.drift) > RAMP_SHARE * min(map(abs, steps))
 
 
-def _without_fragments(pieces: list[_Piece], noise: _Noise, min_dwell: int | None) -> list[_Piece]:
+def _without_fragments(pieces: list[_Piece], noise: Noise, min_dwell: int | None) -> list[_Piece]:
     """The pieces long enough, or short but flat and cleanly entered and left."""
     if len(pieces) <= 2:
         return pieces
@@ -420,7 +308,7 @@ def _without_fragments(pieces: list[_Piece], noise: _Noise, min_dwell: int | Non
     return keep
 
 
-def _stands_alone(piece: _Piece, around: Sequence[_Piece | None], noise: _Noise, *, half: float) -> bool:
+def _stands_alone(piece: _Piece, around: Sequence[_Piece | None], noise: Noise, *, half: float) -> bool:
     """Whether a short piece is a level of its own: far from its neighbours, and at once, or flat and not so short."""
     if piece.length < 5:
         return False

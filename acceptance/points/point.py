@@ -14,10 +14,12 @@ from acceptance.errors import MeasurementError
 from acceptance.limitfile.limits import Limits
 from acceptance.points.dwells import Dwell
 from acceptance.points.instrument import Bench
-from acceptance.points.propagation import Source, Value, nominal, of_source
+from acceptance.points.propagation import Source, Value, expanded, nominal, of_source
 from acceptance.points.type_a import TypeA, type_a
 
 __all__ = ["Estimate", "Point", "Points", "measure_points"]
+
+_NO_LOAD = 0.002  # of rated current
 
 Floats = NDArray[np.float64]
 T = TypeVar("T")
@@ -137,6 +139,16 @@ class Point:
             return None
         return self.mean(key).mean / self.limits.ratings.outputs[output].current
 
+    def is_unloaded(self, output: str) -> bool:
+        """Whether an output's |I| is below its own uncertainty or 0.2 % of rated current, whichever is larger."""
+        fraction = self.load_fraction(output)
+        if fraction is None:
+            return False
+        key = channel_key("output_current", output)
+        error = expanded(self._corrected(key, self.mean(key).mean), self.limits.decision.confidence).expanded
+        bound = max(error / self.limits.ratings.outputs[output].current, _NO_LOAD)
+        return abs(fraction) <= bound + 1e-12
+
     def input_voltage(self) -> float | None:
         """Mean input voltage at the unit, or the one that is only stated; None where neither is there. [V]"""
         if self.has("input_voltage") and np.isfinite(self.samples("input_voltage")).any():
@@ -168,6 +180,9 @@ class Point:
         return self._keep(("efficiency", *outputs), lambda: self._efficiency(outputs))
 
     def _efficiency(self, outputs: Sequence[str]) -> Estimate:
+        if all(self.is_unloaded(output) for output in outputs):
+            msg = f"nothing was connected to the outputs, so that there is no efficiency ({self.where})"
+            raise MeasurementError(msg)
         rows = self._complete([*self._input_keys(), *(k for o in outputs for k in self._output_keys(o))])
         source = self._input_power(rows)
         sinks = [self._output_power(output, rows) for output in outputs]

@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+import math
+from itertools import pairwise
+
 import numpy as np
 import numpy.typing as npt
 
@@ -40,7 +43,7 @@ def settling_samples(x: Array) -> int:
     if n < 3:
         return 0
     y = x[at] / (np.max(np.abs(x[at])) or 1.0)  # huge readings must not overflow
-    lead = _leading_few(y) if n < FEW else max(_leading(y, size) for size in {max(1, n // 64), max(1, n // 24)})
+    lead = _leading_few(y) if n < FEW else _leading(y)
     lead = min(lead + lead // 2, n // 2)
     return int(at[lead]) if lead else 0
 
@@ -68,36 +71,49 @@ def _leading_few(y: Array) -> int:
     return int(np.argmin(far)) if not far.all() else far.size
 
 
-def _leading(y: Array, size: int) -> int:
-    """Samples in the leading blocks of `size` that are off the later half."""
+def _leading(y: Array) -> int:
+    """Samples in the leading blocks that are off the later half, for the worse of two sizes of block."""
     calm = _clipped(y)
-    means = _block_means(calm, size)
-    half = means.size // 2
+    drift = _steady_drift(y)
+    scatter = _deviation(calm[y.size // 2 :])
+    sizes = {max(1, y.size // 64), max(1, y.size // 24)}
+    return max(_leading_blocks(calm, size, scatter=scatter, drift=drift) for size in sizes)
+
+
+def _leading_blocks(calm: Array, size: int, *, scatter: float, drift: float) -> int:
+    """Samples in the leading blocks of `size` whose mean is off the later half's mean."""
+    count = calm.size // size
+    means = np.add.reduce(calm[: count * size].reshape(count, size), axis=1) / size
+    half = count // 2
     later = means[half:]
     # the second where bursts fall into step with the blocks, whose means then hardly scatter
-    scatter = max(float(np.std(later, ddof=1)), float(np.std(calm[y.size // 2 :])) / np.sqrt(size))
-    off = np.abs(means[:half] - np.mean(later)) > DEVIATIONS * scatter + _steady_drift(y) + 1e-12
-    settled = ~off & ~np.append(off[1:], False)  # one block may lie on the level while the rest swings about it
-    return size * (int(np.argmax(settled)) if settled.any() else half)
+    allowed = DEVIATIONS * max(_deviation(later), scatter / math.sqrt(size)) + drift + 1e-12
+    off = np.abs(means[:half] - np.add.reduce(later) / later.size) > allowed
+    settled = ~off
+    settled[:-1] &= ~off[1:]  # one block may lie on the level while the rest swings about it
+    return size * (int(settled.argmax()) if settled.any() else half)
+
+
+def _deviation(x: Array) -> float:
+    """Standard deviation; numpy's own takes ten times as long on a short array."""
+    off = x - np.add.reduce(x) / x.size
+    return math.sqrt(float(off @ off) / max(1, x.size - 1))
 
 
 def _clipped(y: Array) -> Array:
     """The samples, gross outliers brought to the edge of what the later half does."""
-    later = y[y.size // 2 :: max(1, y.size // MOST_SAMPLES)]
-    low, high = np.quantile(later, [0.02, 0.98])
+    later = np.sort(y[y.size // 2 :: max(1, y.size // MOST_SAMPLES)])
+    low, high = float(later[round(0.02 * (later.size - 1))]), float(later[round(0.98 * (later.size - 1))])
     widened = 0.5 * (high - low)
-    return np.clip(y, low - widened, high + widened) if widened > 0 else y
-
-
-def _block_means(y: Array, size: int) -> Array:
-    count = y.size // size
-    return np.asarray(y[: count * size].reshape(count, size).mean(axis=1))
+    return np.minimum(np.maximum(y, low - widened), high + widened) if widened > 0 else y
 
 
 def _steady_drift(y: Array) -> float:
     """How far a drift as fast at the end as at the start carries the first samples off the later half's mean."""
-    parts = np.array_split(y[:: max(1, y.size // MOST_SAMPLES)], 4)
-    first, second, third, last = (float(np.median(part)) for part in parts)
+    thinned = y[:: max(1, y.size // MOST_SAMPLES)]
+    borders = [i * thinned.size // 4 for i in range(5)]
+    # medians, near enough: neither bursts nor outliers count
+    first, second, third, last = (float(np.sort(thinned[a:b])[(b - a) // 2]) for a, b in pairwise(borders))
     early, late = second - first, last - third
     if early * late <= 0 or abs(early) > 2 * abs(late):
         return 0.0

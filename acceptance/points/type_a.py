@@ -82,7 +82,8 @@ def type_a(samples: NDArray[np.float64]) -> TypeA:
     freedom = max(1.0, n * (1 - phi) / (1 + phi) - 1) if phi > 0 else n - 1.0
     if n >= _ENOUGH:
         summed, window = _summed_time(samples)
-        if summed > 1.5 * time:
+        # the sum has a spread of its own, sqrt(2 (2 W + 1) / n): what lies within it is no wander
+        if summed > max(1.3, 1 + math.sqrt(2 * (2 * window + 1) / n)) * time:
             time, freedom = summed, max(1.0, n / (2 * window + 1))
     time = min(time, 0.8 * n)
     u = deviation * math.sqrt((n - 1) / (n - time) * time / n)

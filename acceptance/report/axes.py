@@ -49,6 +49,7 @@ def axis_for(
     *,
     most: int,
     padding: float = 0.06,
+    from_zero: bool = False,
 ) -> LinearAxis:
     """An axis that shows all the values, its ends on ticks or a little beyond them.
 
@@ -64,9 +65,13 @@ def axis_for(
         At most about so many steps.
     padding
         Share of the range that is left free at both ends.
+    from_zero
+        Whether an axis that begins near zero shows zero.
     """
     listed = list(values)
     low, high = _opened(min(listed), max(listed))
+    if from_zero and 0 < low < 0.35 * high:
+        low = 0.0
     free = padding * (high - low)
     # free room below nothing is a lie where nothing is below zero
     low, high = (0.0 if 0 <= low < free else low - free), (0.0 if -free < high <= 0 else high + free)

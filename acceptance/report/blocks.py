@@ -11,7 +11,7 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
 from acceptance.report.pen import Pen
-from acceptance.report.style import BODY, HEADING, RULE, SUBHEADING, WIDTH, Colour, Type
+from acceptance.report.style import BODY, HEADING, ROOM, RULE, SUBHEADING, WIDTH, Colour, Type
 from acceptance.report.wrap import Piece, Run, wrap_runs
 
 __all__ = ["Beside", "Block", "Panel", "Placed", "Rule", "Stack", "Text", "heading", "paginate", "subheading"]
@@ -102,7 +102,9 @@ def subheading(text: str, *, width: float = WIDTH, above: float = 9) -> Text:
 class Rule(Block):
     """A thin line across."""
 
-    def __init__(self, *, colour: Colour = RULE, thickness: float = 0.6, above: float = 6, width: float = WIDTH) -> None:
+    def __init__(
+        self, *, colour: Colour = RULE, thickness: float = 0.6, above: float = 6, width: float = WIDTH
+    ) -> None:
         self.height = thickness
         self.above = above
         self._colour = colour
@@ -129,6 +131,8 @@ class Stack(Block):
     def split(self, room: float) -> Halves:
         if self.height <= room:
             return self, None
+        if self._together and self.height <= ROOM:
+            return None, self
         used = 0.0
         for place, block in enumerate(self._blocks):
             gap = block.above if place else 0.0

@@ -9,8 +9,10 @@ Nothing that a verdict rests on is computed here. No string of the record is eve
 from __future__ import annotations
 
 import io
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 from pathlib import Path
+from typing import Any
 
 from acceptance.errors import RecordError, ReportError
 from acceptance.record import Record, write_whole
@@ -90,11 +92,32 @@ def _blocks(record: Record, template: Template) -> list[Block]:
 
 
 def _draw(pages: list[list[Placed]], record: Record, template: Template) -> bytes:
-    from reportlab.pdfgen.canvas import Canvas  # type: ignore[import-untyped]
+    from reportlab.pdfgen.canvas import Canvas
 
     font("regular")  # registered before the canvas asks for it by name
     target = io.BytesIO()
-    canvas = Canvas(
+    with _plain_streams():
+        _draw_on(Canvas, target, pages, record, template)
+    return target.getvalue()
+
+
+@contextmanager
+def _plain_streams() -> Iterator[None]:
+    """Streams as bytes while a report is drawn: as ASCII they are a quarter longer and cost a fifth of the time."""
+    from reportlab import rl_config
+
+    before = rl_config.useA85
+    rl_config.useA85 = 0
+    try:
+        yield
+    finally:
+        rl_config.useA85 = before
+
+
+def _draw_on(
+    canvas_type: Any, target: io.BytesIO, pages: list[list[Placed]], record: Record, template: Template
+) -> None:
+    canvas = canvas_type(
         target,
         pagesize=PAGE,
         pageCompression=1,
@@ -111,19 +134,18 @@ def _draw(pages: list[list[Placed]], record: Record, template: Template) -> byte
             placed.block.draw(pen, LEFT, TOP - placed.down)
         pen.end_page()
     canvas.save()
-    return target.getvalue()
 
 
-def _describe(canvas: object, record: Record, template: Template) -> None:
+def _describe(canvas: Any, record: Record, template: Template) -> None:
     """The document's own title, author, subject and time; the time is that of the decision."""
     unit = record.unit
-    canvas.setTitle(printable(f"{template.title} {record.report_number}: {unit.product}, serial {unit.serial}"))  # type: ignore[attr-defined]
-    canvas.setAuthor(printable(template.issuer.name))  # type: ignore[attr-defined]
-    canvas.setSubject(printable(f"{unit.product}, serial {unit.serial}: {record.verdict}; performance limits only"))  # type: ignore[attr-defined]
-    canvas.setCreator("acceptance")  # type: ignore[attr-defined]
+    canvas.setTitle(printable(f"{template.title} {record.report_number}: {unit.product}, serial {unit.serial}"))
+    canvas.setAuthor(printable(template.issuer.name))
+    canvas.setSubject(printable(f"{unit.product}, serial {unit.serial}: {record.verdict}; performance limits only"))
+    canvas.setCreator("acceptance")
     stamp = "".join(character for character in record.judged_at if character.isdigit())[:14]
     if len(stamp) == 14 and stamp.isascii():
-        canvas.setDateFormatter(lambda *_: f"D:{stamp}Z")  # type: ignore[attr-defined]
+        canvas.setDateFormatter(lambda *_: f"D:{stamp}Z")
 
 
 def _furnish(pen: Pen, record: Record, template: Template, page: str) -> None:
@@ -132,7 +154,12 @@ def _furnish(pen: Pen, record: Record, template: Template, page: str) -> None:
     half = WIDTH / 2
     high, low = PAGE[1] - 40.0, BOTTOM - 22.0
     number = fit(f"Report {record.report_number}", FURNITURE, half - 20)
-    pen.text(LEFT, high, fit(f"{template.issuer.name} · {unit.product} · serial {unit.serial}", FURNITURE, half + 60), FURNITURE)
+    pen.text(
+        LEFT,
+        high,
+        fit(f"{template.issuer.name} · {unit.product} · serial {unit.serial}", FURNITURE, half + 60),
+        FURNITURE,
+    )
     pen.text(LEFT + WIDTH, high, number, FURNITURE, align="right")
     pen.line([(LEFT, high - 6), (LEFT + WIDTH, high - 6)], RULE, 0.5)
     pen.line([(LEFT, low + 11), (LEFT + WIDTH, low + 11)], RULE, 0.5)

@@ -75,15 +75,20 @@ class Chart(Block):
         """The two axes of the plot whose chart begins at x and whose lower edge lies at `low`."""
         xs, ys = self._xs, self._ys
         figure = self._figure
-        vertical = axis_for(ys, scale_for(figure.y.unit, ys), (low, low + self._plot_height), most=6)
+        free = 0.13 if figure.limits else 0.07  # room for the limits' labels on the side that is not allowed
+        vertical = axis_for(ys, scale_for(figure.y.unit, ys), (low, low + self._plot_height), most=6, padding=free)
         room = max((string_width(label, _TICK.size) for label in vertical.labels), default=0.0) + 7
         most = max(2, int((self._width - room) / 34))
-        horizontal = axis_for(xs, scale_for(figure.x.unit, xs), (x + room, x + self._width - 8), most=min(most, 8))
+        horizontal = axis_for(
+            xs, scale_for(figure.x.unit, xs), (x + room, x + self._width - 8), most=min(most, 8), from_zero=True
+        )
         return horizontal, vertical
 
     def _bars_are_hidden(self) -> bool:
         """Whether there are error bars, and none reaches beyond its mark."""
-        bars = [u for s in self._series if s.kind == "points" for u in s.expanded_uncertainty if u is not None and u > 0]
+        bars = [
+            u for s in self._series if s.kind == "points" for u in s.expanded_uncertainty if u is not None and u > 0
+        ]
         if not bars:
             return False
         _, vertical = self._axes(0.0, 0.0)
@@ -102,6 +107,8 @@ class Chart(Block):
             _draw_series(pen, series, place, (horizontal, vertical))
         self._label_limits(pen, horizontal, vertical)
         middle = (horizontal.start + horizontal.end) / 2
+        if not any(series.x for series in self._series):
+            pen.text(middle, low + 0.75 * self._plot_height, "no points to draw", _LABEL, align="centre")
         title = fit(_axis_title(self._figure.x, self._xs), _LABEL, horizontal.end - horizontal.start)
         pen.text(middle, low - 19, title, _LABEL, align="centre")
         for line in self._notes:
@@ -164,7 +171,9 @@ def _ordinary(number: float) -> bool:
 
 def _axis_title(axis: Axis, numbers: Sequence[float]) -> str:
     symbol = scale_for(axis.unit, numbers).symbol
-    return f"{fold(axis.label)} ({symbol})" if symbol else fold(axis.label)
+    label = fold(axis.label)
+    label = label[:1].upper() + label[1:]
+    return f"{label} ({symbol})" if symbol else label
 
 
 def _legend(series: Sequence[Series], width: float) -> list[tuple[int, float, int]]:
@@ -217,7 +226,7 @@ def _draw_limit(pen: Pen, limit: LimitLine, horizontal: LinearAxis, vertical: Li
 def _limit_text(limit: LimitLine, axis: Axis) -> str:
     low, high = (limit.y, None) if limit.side == "min" else (None, limit.y)
     amount = limit_range(low, high, axis.unit)
-    label = fold(limit.label)
+    label = fold(limit.label.removesuffix(" min").removesuffix(" max"))  # the sign says it
     return label if amount in label else f"{label} {amount}".strip()
 
 
@@ -233,7 +242,7 @@ def _label_boxes(limit: LimitLine, text: str, horizontal: LinearAxis, vertical: 
     for low in tops:
         for left in lefts:
             inside = min(max(left, horizontal.start + 1), horizontal.end - wide)
-            if vertical.start + 1 <= low and low + 8 <= vertical.end + 8:
+            if vertical.start + 1 <= low and low + 8 <= vertical.end + 1:
                 boxes.append((inside, low, inside + wide, low + 8.0))
     return boxes or [(horizontal.end - wide, height + 1.5, horizontal.end, height + 9.5)]
 
@@ -278,7 +287,9 @@ def _draw_series(pen: Pen, series: Series, place: int, axes: tuple[LinearAxis, L
             _draw_mark(pen, place, points[0])
         return
     points = [(horizontal.place(x), vertical.place(y)) for x, y in zip(series.x, series.y, strict=True)]
-    if all(a < b for a, b in zip(series.x, series.x[1:], strict=False)):
+    apart = 0.01 * (horizontal.high - horizontal.low)
+    # points at one place, or going back, are different runs: a line would join what does not belong together
+    if all(b - a > apart for a, b in zip(series.x, series.x[1:], strict=False)):
         pen.line(points, colour, 0.7, dash=_DASHES[place % len(_DASHES)])
     _draw_bars(pen, series, points, vertical, colour)
     for point in points:
@@ -309,9 +320,16 @@ def _draw_mark(pen: Pen, place: int, centre: tuple[float, float]) -> None:
         case 1:
             pen.rectangle((x - r * 0.9, y - r * 0.9, r * 1.8, r * 1.8), fill=fill, stroke=colour, width=0.9)
         case 2:
-            pen.polygon([(x - 1.15 * r, y - r), (x + 1.15 * r, y - r), (x, y + 1.2 * r)], fill=fill, stroke=colour, width=0.9)
+            pen.polygon(
+                [(x - 1.15 * r, y - r), (x + 1.15 * r, y - r), (x, y + 1.2 * r)], fill=fill, stroke=colour, width=0.9
+            )
         case _:
-            pen.polygon([(x, y + 1.3 * r), (x + 1.3 * r, y), (x, y - 1.3 * r), (x - 1.3 * r, y)], fill=fill, stroke=colour, width=0.9)
+            pen.polygon(
+                [(x, y + 1.3 * r), (x + 1.3 * r, y), (x, y - 1.3 * r), (x - 1.3 * r, y)],
+                fill=fill,
+                stroke=colour,
+                width=0.9,
+            )
 
 
 def _draw_sample(pen: Pen, series: Series, place: int, left: tuple[float, float]) -> None:

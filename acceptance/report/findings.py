@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from acceptance.printing import DASH, printed, probability, with_uncertainty
+from acceptance.printing import DASH, printed, probability
 from acceptance.record import Alternative, DecisionRule, Finding, Record
 from acceptance.report.blocks import Block, Text, heading, subheading
 from acceptance.report.front import verdict_mark
@@ -14,13 +14,13 @@ from acceptance.report.wrap import Run, fold
 __all__ = ["findings", "limit_text"]
 
 _COLUMNS = (
-    Column("Finding", 148),
-    Column("Limit", 74),
-    Column("Value", 66, "right"),
-    Column("U", 58, "right"),
-    Column("Margin", 52, "right"),
-    Column("Conformity", 47, "right"),
-    Column("Verdict", WIDTH - 445),
+    Column("Finding", 138),
+    Column("Limit", 76),
+    Column("Value", 58, "right"),
+    Column("U", 50, "right"),
+    Column("Margin", 50, "right"),
+    Column("Conformity", 49, "right"),
+    Column("Verdict", WIDTH - 421),
 )
 
 
@@ -30,17 +30,21 @@ def findings(record: Record) -> list[Block]:
         return [heading("Findings"), Text("The record holds no findings.", SMALL, above=3)]
     blocks: list[Block] = [
         heading("Findings"),
-        Table(_COLUMNS, [_row(finding, record.decision) for finding in record.findings], above=2),
-        Text(_key(record), SMALL, above=4),
+        Text(_key(record), SMALL, above=1, keep_next=True),
+        Table(_COLUMNS, [_row(finding, record) for finding in record.findings], above=3),
     ]
-    remarks = [Row([Cell([Run(finding.name, CELL_BOLD)]), Cell(lines)]) for finding in record.findings if (lines := _remarks(finding, record.decision))]
+    remarks = [
+        Row([Cell([Run(finding.name, CELL_BOLD)]), Cell(lines)])
+        for finding in record.findings
+        if (lines := _remarks(finding, record.decision))
+    ]
     if remarks:
         blocks.append(subheading("Remarks to the findings"))
         blocks.append(Table([Column("", 120), Column("", WIDTH - 120)], remarks, head=False, above=1))
     return blocks
 
 
-def _row(finding: Finding, decision: DecisionRule) -> Row:
+def _row(finding: Finding, record: Record) -> Row:
     texts = printed(
         finding.value,
         finding.expanded_uncertainty,
@@ -51,8 +55,9 @@ def _row(finding: Finding, decision: DecisionRule) -> Row:
     )
     factor = f"k = {finding.coverage_factor:.2f}" if finding.coverage_factor is not None else ""
     kind = finding.characteristic.replace("_", " ")
-    output = f", output {finding.output}" if finding.output and finding.output not in finding.condition else ""
-    below = f"{kind}: {finding.condition}{output}" if finding.condition else f"{kind}{output}"
+    several = len(record.ratings.outputs) > 1 and finding.output not in finding.condition
+    output = f"output {finding.output}" if several and finding.output else ""
+    below = ": ".join(part for part in (kind, ", ".join(part for part in (finding.condition, output) if part)) if part)
     colour = FINDING_COLOURS[finding.verdict]
     return Row(
         [
@@ -61,7 +66,7 @@ def _row(finding: Finding, decision: DecisionRule) -> Row:
             fold(texts.with_unit(texts.value)),
             Cell([Run(texts.with_unit(texts.expanded), CELL), *([Run(factor, CELL_MUTED)] if factor else [])]),
             texts.with_unit(texts.margin),
-            probability(finding.conformity_probability, required=decision.required_probability),
+            probability(finding.conformity_probability, required=record.decision.required_probability),
             Cell([Run(finding.verdict, Type(CELL.size, CELL.leading, "semibold", colour))], verdict_mark(finding)),
         ],
         tinted=finding.verdict != "pass",
@@ -70,7 +75,7 @@ def _row(finding: Finding, decision: DecisionRule) -> Row:
 
 def limit_text(finding: Finding) -> str:
     """What the finding had to meet, in the unit its value is printed in."""
-    numbers = finding.value if isinstance(finding.value, float) else None
+    numbers = finding.value if isinstance(finding.value, (int, float)) else None
     texts = printed(numbers, finding.expanded_uncertainty, finding.unit, low=finding.min, high=finding.max)
     low, high = texts.with_unit(texts.low), texts.with_unit(texts.high)
     if texts.low != DASH and texts.high != DASH:
@@ -104,13 +109,29 @@ def _remarks(finding: Finding, decision: DecisionRule) -> list[list[Run]]:
     numeric = isinstance(finding.value, (int, float))
     if numeric and finding.expanded_uncertainty is None:
         say("Uncertainty", "uncertainty not stated: an instrument that enters this value has no stated accuracy")
-    for alternative in finding.others:
-        say("Other dwell that met the condition", _alternative(alternative, finding, decision))
+    if finding.others:
+        said = "; ".join(_alternatives(finding, decision))
+        say(
+            "Other dwells that met the condition" if len(finding.others) > 1 else "Other dwell that met the condition",
+            said,
+        )
     for deviation in finding.deviations:
         say("Deviation", deviation.text)
     if finding.note.strip():
         say("Note of the limits file", finding.note)
     return found
+
+
+def _alternatives(finding: Finding, decision: DecisionRule) -> list[str]:
+    """What each other dwell gave; the file is named where it changes."""
+    texts = []
+    before = ""
+    for other in finding.others:
+        file, comma, place = other.where.partition(", ")
+        text = _alternative(other, finding, decision)
+        texts.append(text.removeprefix(f"{file}, ") if comma and file == before else text)
+        before = file if comma and place else ""
+    return texts
 
 
 def _alternative(other: Alternative, finding: Finding, decision: DecisionRule) -> str:
@@ -125,6 +146,3 @@ def _alternative(other: Alternative, finding: Finding, decision: DecisionRule) -
     if other.conformity_probability is not None:
         parts.append(f"conformity {probability(other.conformity_probability, required=decision.required_probability)},")
     return " ".join([*parts, other.verdict])
-
-
-_ = with_uncertainty

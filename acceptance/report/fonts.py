@@ -48,8 +48,8 @@ def font(weight: Weight) -> Any:
     ReportError
         If its file is not there or is no font.
     """
-    from reportlab.pdfbase import pdfmetrics  # type: ignore[import-untyped]
-    from reportlab.pdfbase.ttfonts import TTFError, TTFont  # type: ignore[import-untyped]
+    from reportlab.pdfbase import pdfmetrics
+    from reportlab.pdfbase.ttfonts import TTFError, TTFont
 
     path = _folder() / _FILES[weight]
     try:

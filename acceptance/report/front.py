@@ -4,10 +4,10 @@ from __future__ import annotations
 
 from collections import Counter
 
-from acceptance.printing import probability, quantity
 from acceptance.printing import duration as printed_duration
-from acceptance.record import Finding, Hazard, Ratings, Record
-from acceptance.report.blocks import Beside, Block, Panel, Rule, Stack, Text, heading
+from acceptance.printing import probability, quantity
+from acceptance.record import Finding, FindingVerdict, Hazard, Ratings, Record
+from acceptance.report.blocks import Beside, Block, Panel, Rule, Stack, Text
 from acceptance.report.fonts import string_width
 from acceptance.report.marks import FINDING_COLOURS, UNIT_COLOURS, UNIT_WORDS, finding_mark, unit_mark, warning_triangle
 from acceptance.report.pen import Pen
@@ -28,14 +28,14 @@ from acceptance.report.style import (
     WIDTH,
     Type,
 )
-from acceptance.report.table import Cell, Column, Row, Table
+from acceptance.report.table import Cell, Column, Mark, Row, Table
 from acceptance.report.template import Cautions, Template
-from acceptance.report.wrap import Run, fold, wrap
+from acceptance.report.wrap import Run, fold
 
 __all__ = ["SCOPE", "cautions", "front", "verdict_mark"]
 
 SCOPE = "Performance limits only; no safety approval."
-_ORDER = ("pass", "conditional pass", "conditional fail", "fail", "not judged")
+_ORDER: tuple[FindingVerdict, ...] = ("pass", "conditional pass", "conditional fail", "fail", "not judged")
 
 
 def front(record: Record, template: Template) -> list[Block]:
@@ -177,24 +177,29 @@ def _deciding(record: Record) -> list[Block]:
     deciding = [finding for finding in record.findings if finding.verdict != "pass"]
     if not deciding:
         return []
-    deciding.sort(key=lambda finding: ("fail", "not judged", "conditional fail", "conditional pass").index(finding.verdict))
+    deciding.sort(
+        key=lambda finding: ("fail", "not judged", "conditional fail", "conditional pass").index(finding.verdict)
+    )
     rows = [
-        Row([_named(finding), Cell([Run(fold(finding.reason) or "No reason is given in the record.", CELL)])])
+        Row([Cell([Run(finding.name, CELL_BOLD)], verdict_mark(finding)), _word(finding), _reason(finding)])
         for finding in deciding
     ]
     title = {"accepted": "Not plainly passed", "rejected": "Why it was rejected", "undecided": "Why it is undecided"}
     return [
         Text(title[record.verdict], BODY_BOLD, above=9, keep_next=True),
-        Table([Column("", 158), Column("", WIDTH - 158)], rows, head=False, above=2),
+        Table([Column("", 118), Column("", 78), Column("", WIDTH - 196)], rows, head=False, above=2),
     ]
 
 
-def _named(finding: Finding) -> Cell:
-    word = Run(finding.verdict, Type(CELL.size, CELL.leading, "semibold", FINDING_COLOURS[finding.verdict]))
-    return Cell([Run(finding.name, CELL_BOLD), word], verdict_mark(finding))
+def _word(finding: Finding) -> Cell:
+    return Cell([Run(finding.verdict, Type(CELL.size, CELL.leading, "semibold", FINDING_COLOURS[finding.verdict]))])
 
 
-def verdict_mark(finding: Finding):  # type: ignore[no-untyped-def]
+def _reason(finding: Finding) -> str:
+    return fold(finding.reason) or "No reason is given in the record."
+
+
+def verdict_mark(finding: Finding) -> Mark:
     """What draws the finding's mark at a place in a table."""
 
     def mark(pen: Pen, centre: tuple[float, float]) -> None:
@@ -222,7 +227,15 @@ def cautions(record: Record, template: Template) -> list[Block]:
     opening = Beside(
         [
             (0.0, _Triangle()),
-            (36.0, Stack([Text("Electrical safety", _CAUTION_TITLE), Text(words.introduction, SMALL, width=inner - 36, above=1)])),
+            (
+                36.0,
+                Stack(
+                    [
+                        Text("Electrical safety", _CAUTION_TITLE),
+                        Text(words.introduction, SMALL, width=inner - 36, above=1),
+                    ]
+                ),
+            ),
         ]
     )
     specific = [_specific(hazard, words, inner) for hazard in record.hazards]
@@ -247,14 +260,13 @@ def _specific(hazard: Hazard, words: Cautions, width: float) -> Block:
 
 
 def _caution(title: str, text: str, width: float) -> Text:
-    runs = [Run(f"{fold(title)}.  ", _CAUTION_BOLD), Run(fold(text), _CAUTION)]
+    runs = [Run(f"{fold(title).rstrip(chr(46))}.  ", _CAUTION_BOLD), Run(fold(text), _CAUTION)]
     return Text(runs, _CAUTION, width=width, above=3)
 
 
 def _basis(hazards: list[Hazard], width: float) -> Text:
     """Why each hazard is taken to be there, in the words of the record."""
     texts = [f"{hazard.hazard}: {fold(hazard.basis)}" for hazard in hazards if hazard.basis.strip()]
-    return Text(f"Taken to be present: {'; '.join(texts) or ', '.join(h.hazard for h in hazards)}.", SMALL, width=width, above=5)
-
-
-_ = (heading, wrap)
+    return Text(
+        f"Taken to be present: {'; '.join(texts) or ', '.join(h.hazard for h in hazards)}.", SMALL, width=width, above=5
+    )

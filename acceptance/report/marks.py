@@ -45,7 +45,11 @@ def unit_mark(pen: Pen, verdict: UnitVerdict, centre: Place, radius: float) -> N
 
 def _tick(pen: Pen, centre: Place, size: float, colour: Colour) -> None:
     x, y = centre
-    points = [(x - 0.80 * size, y - 0.05 * size), (x - 0.20 * size, y - 0.65 * size), (x + 0.85 * size, y + 0.65 * size)]
+    points = [
+        (x - 0.80 * size, y - 0.05 * size),
+        (x - 0.20 * size, y - 0.65 * size),
+        (x + 0.85 * size, y + 0.65 * size),
+    ]
     pen.line(points, colour, size * 0.38)
 
 
@@ -57,7 +61,16 @@ def _cross(pen: Pen, centre: Place, size: float, colour: Colour) -> None:
 
 def _question(pen: Pen, centre: Place, size: float, colour: Colour) -> None:
     x, y = centre
-    hook = [(-0.42, 0.45), (-0.30, 0.78), (0.0, 0.92), (0.30, 0.78), (0.42, 0.48), (0.30, 0.20), (0.0, 0.0), (0.0, -0.28)]
+    hook = [
+        (-0.42, 0.45),
+        (-0.30, 0.78),
+        (0.0, 0.92),
+        (0.30, 0.78),
+        (0.42, 0.48),
+        (0.30, 0.20),
+        (0.0, 0.0),
+        (0.0, -0.28),
+    ]
     pen.line([(x + a * size, y + b * size) for a, b in hook], colour, size * 0.34)
     pen.circle((x, y - 0.80 * size), size * 0.21, fill=colour)
 
@@ -67,9 +80,16 @@ def warning_triangle(pen: Pen, centre: Place, size: float) -> None:
     x, y = centre
     half, height = size / 2, size * 0.88
     low = y - height / 2
-    pen.polygon([(x - half, low), (x + half, low), (x, low + height)], fill=(1.0, 0.80, 0.10), stroke=INK, width=size * 0.075)
     pen.polygon(
-        [(x - 0.055 * size, low + 0.62 * height), (x + 0.055 * size, low + 0.62 * height), (x + 0.03 * size, low + 0.27 * height), (x - 0.03 * size, low + 0.27 * height)],
+        [(x - half, low), (x + half, low), (x, low + height)], fill=(1.0, 0.80, 0.10), stroke=INK, width=size * 0.075
+    )
+    pen.polygon(
+        [
+            (x - 0.055 * size, low + 0.62 * height),
+            (x + 0.055 * size, low + 0.62 * height),
+            (x + 0.03 * size, low + 0.27 * height),
+            (x - 0.03 * size, low + 0.27 * height),
+        ],
         fill=INK,
         stroke=INK,
         width=size * 0.02,

@@ -9,7 +9,7 @@ from acceptance.printing import DASH, count, duration, printed, quantity, scale_
 from acceptance.record import Point, Reading, Record
 from acceptance.report.blocks import Beside, Block, Text, heading
 from acceptance.report.charts import Chart
-from acceptance.report.style import CELL_MUTED, SMALL, WIDTH
+from acceptance.report.style import CELL, CELL_MUTED, COLUMN, SMALL, WIDTH
 from acceptance.report.table import Cell, Column, Row, Table, natural_width
 from acceptance.report.wrap import Run, fold
 
@@ -41,18 +41,24 @@ def points(record: Record) -> list[Block]:
     """Every dwell: where it lies, and the mean reading of each channel with twice its standard uncertainty."""
     if not record.points:
         return []
-    blocks: list[Block] = [heading("Dwells"), _places(record.points)]
     columns = [*_loads(record.points), *_channels(record.points), *_efficiency(record.points)]
-    blocks += _reading_tables(record.points, columns)
     note = (
         "n: samples in the dwell; effective: as many independent samples as its least telling channel has; settling: "
         "samples left out before it. Readings: mean ± expanded uncertainty, k = 2 (efficiency: as judged); "
         "without ± the instrument's accuracy is not stated."
     )
-    return [*blocks, Text(note, SMALL, above=4)]
+    found_by = list(dict.fromkeys(fold(point.found_by.replace("_", " ")) for point in record.points))
+    if len(found_by) == 1 and found_by[0]:
+        note += f" Dwells found by: {found_by[0]}."
+    return [
+        heading("Dwells"),
+        Text(note, SMALL, above=1, keep_next=True),
+        _places(record.points, told=len(found_by) > 1),
+        *_reading_tables(record.points, columns),
+    ]
 
 
-def _places(listed: Sequence[Point]) -> Table:
+def _places(listed: Sequence[Point], *, told: bool) -> Table:
     columns = [
         Column("No.", 28, "right"),
         Column("Where in the log", WIDTH - 28 - 66 - 60 - 60 - 44 - 50 - 46),
@@ -67,9 +73,14 @@ def _places(listed: Sequence[Point]) -> Table:
         Row(
             [
                 str(point.index + 1),
-                Cell([Run(fold(point.where), columns_style), *([Run(fold(point.found_by), CELL_MUTED)] if point.found_by else [])]),
+                Cell(
+                    [
+                        Run(fold(point.where), CELL),
+                        *([Run(fold(point.found_by.replace("_", " ")), CELL_MUTED)] if told else []),
+                    ]
+                ),
                 fold(point.stage),
-                DASH if point.starts is None else quantity(point.starts, "s", digits=6) if abs(point.starts) >= 1 else f"{point.starts:.3g} s",
+                quantity(point.starts, "s", digits=6),
                 duration(point.duration),
                 count(point.readings),
                 _effective(point),
@@ -78,14 +89,13 @@ def _places(listed: Sequence[Point]) -> Table:
         )
         for point in listed
     ]
-    return Table(columns, rows, above=2)
-
-
-from acceptance.report.style import CELL as columns_style  # noqa: E402
+    return Table(columns, rows, above=3)
 
 
 def _effective(point: Point) -> str:
-    known = [reading.effective_readings for reading in point.channels.values() if reading.effective_readings is not None]
+    known = [
+        reading.effective_readings for reading in point.channels.values() if reading.effective_readings is not None
+    ]
     return f"{min(known):.3g}" if known else DASH
 
 
@@ -98,7 +108,10 @@ def _loads(listed: Sequence[Point]) -> list[Readings]:
     found = []
     for name in names:
         fractions = [point.load_fractions.get(name) for point in listed]
-        texts = [DASH if share is None else f"{share * 100:.1f}".replace("-0.0", "0.0").replace("-", "−") for share in fractions]
+        texts = [
+            DASH if share is None else f"{share * 100:.1f}".replace("-0.0", "0.0").replace("-", "−")
+            for share in fractions
+        ]
         found.append(("load\n%" if single or not name else f"load {name}\n%", texts))
     return found
 
@@ -114,6 +127,12 @@ def _channels(listed: Sequence[Point]) -> list[Readings]:
     return found
 
 
+def _title(channel: str) -> str:
+    """A channel's name over its column, the output or the probe on a line of its own."""
+    quantity_name, _, of = channel.partition(" ")
+    return f"{quantity_name.replace('_', ' ')}\n{of}" if of else quantity_name.replace("_", " ")
+
+
 def _one_unit(name: str, readings: Sequence[Reading | None], unit: str) -> Readings:
     values = [reading.value for reading in readings if reading is not None]
     scale = scale_for(unit, values, per_cent=False)
@@ -124,7 +143,7 @@ def _one_unit(name: str, readings: Sequence[Reading | None], unit: str) -> Readi
             continue
         u = reading.standard_uncertainty
         texts.append(scale.pair(reading.value, None if u is None else 2 * u))
-    return f"{name.replace('_', ' ')}\n{scale.symbol}" if scale.symbol else name.replace("_", " "), texts
+    return f"{_title(name)}\n{scale.symbol}" if scale.symbol else _title(name), texts
 
 
 def _own_units(name: str, readings: Sequence[Reading | None]) -> Readings:
@@ -136,7 +155,7 @@ def _own_units(name: str, readings: Sequence[Reading | None]) -> Readings:
         u = reading.standard_uncertainty
         found = printed(reading.value, None if u is None else 2 * u, reading.unit, per_cent=False)
         texts.append(found.with_unit(found.value if u is None else f"{found.value} ± {found.expanded}"))
-    return name.replace("_", " "), texts
+    return _title(name), texts
 
 
 def _efficiency(listed: Sequence[Point]) -> list[Readings]:
@@ -150,10 +169,15 @@ def _efficiency(listed: Sequence[Point]) -> list[Readings]:
     return [("efficiency\n%", texts)]
 
 
+def _word_width(title: str) -> float:
+    """Width that no word of a column's title needs to be broken in, as far as that is sensible."""
+    return min(natural_width(title.split(), COLUMN), 90.0)
+
+
 def _reading_tables(listed: Sequence[Point], columns: Sequence[Readings]) -> list[Table]:
     """The columns in as many tables as they need, each with the number of the dwell before it."""
     first = 28.0
-    widths = [min(max(natural_width(texts), 52.0), WIDTH - first) for _, texts in columns]
+    widths = [min(max(natural_width(texts), _word_width(title), 46.0), WIDTH - first) for title, texts in columns]
     places: list[int] = []
     used, table = first, 0
     for width in widths:

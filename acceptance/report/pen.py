@@ -28,6 +28,7 @@ class Pen:
 
     def __init__(self, canvas: Any) -> None:
         self._canvas = canvas
+        self._begun: set[str] = set()  # weights that the document knows
         self._strings: dict[tuple[str, str], list[tuple[str, str]]] = {}
         self._begin()
 
@@ -70,6 +71,12 @@ class Pen:
         if known is None:
             loaded = font(style.weight)
             document = self._canvas._doc  # a font's subsets belong to the document, and only this names it
+            if text.isascii() and style.weight in self._begun:
+                # the first subset holds ASCII at its own codes
+                known = [(loaded.getSubsetInternalName(0, document), text.translate(_ESCAPE))]
+                self._strings[key] = known
+                return known
+            self._begun.add(style.weight)
             known = [
                 (loaded.getSubsetInternalName(subset, document), part.decode("latin-1").translate(_ESCAPE))
                 for subset, part in loaded.splitString(text, document)
@@ -79,7 +86,9 @@ class Pen:
 
     # -- paths
 
-    def line(self, points: Sequence[tuple[float, float]], colour: Colour, width: float, *, dash: Sequence[float] = ()) -> None:
+    def line(
+        self, points: Sequence[tuple[float, float]], colour: Colour, width: float, *, dash: Sequence[float] = ()
+    ) -> None:
         """A line through the points."""
         if len(points) < 2:
             return

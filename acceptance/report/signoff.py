@@ -11,7 +11,11 @@ __all__ = ["NOT_SIGNED", "sign_off"]
 
 NOT_SIGNED = "Not signed off"
 
-_ROLES = (("Tested", "tested the unit"), ("Reviewed", "checked data and decision"), ("Approved", "releases this report"))
+_ROLES = (
+    ("Tested", "tested the unit"),
+    ("Reviewed", "checked data and decision"),
+    ("Approved", "releases this report"),
+)
 _GAP = 14.0
 _BOX = (WIDTH - 2 * _GAP) / 3
 
@@ -35,9 +39,9 @@ def sign_off(report_number: str) -> list[Block]:
 
 _STATE = f"{NOT_SIGNED}. A report without all three signatures is a draft, whatever its verdict."
 _USE = (
-    "The results relate only to the unit tested, in the state it was in and under the conditions given. The report may be "
-    "passed on whole; parts of it only with the issuer's written consent. It says whether performance limits are met; it is "
-    "no statement on electrical safety, and no approval to put the unit into use."
+    "The results relate only to the unit tested, in the state it was in and under the conditions given. The report may "
+    "be passed on whole; parts of it only with the issuer's written consent. It says whether performance limits are "
+    "met; it is no statement on electrical safety, and no approval to put the unit into use."
 )
 
 

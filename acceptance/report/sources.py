@@ -1,10 +1,11 @@
-"""What the decision rests on: instruments, evidence with its hashes, doubts about the data, and what cannot be printed."""
+"""What the decision rests on: instruments, evidence with its hashes, doubts about the data, unprintable texts."""
 
 from __future__ import annotations
 
 import json
 from collections.abc import Iterator
 from dataclasses import fields, is_dataclass
+from functools import lru_cache
 
 from acceptance.printing import count
 from acceptance.record import Health, Record
@@ -27,12 +28,12 @@ def instruments(record: Record) -> list[Block]:
     blocks: list[Block] = [heading("Instruments")]
     if record.instruments:
         columns = [
-            Column("Channel", 92),
-            Column("Device", 92),
-            Column("Accuracy", WIDTH - 92 - 92 - 70 - 66 - 74),
-            Column("Range, resolution", 70),
-            Column("Due", 66),
-            Column("State", 74),
+            Column("Channel", 84),
+            Column("Device", 84),
+            Column("Accuracy", WIDTH - 374),
+            Column("Range, resolution", 72),
+            Column("Due", 54),
+            Column("State", 80),
         ]
         rows = [
             Row(
@@ -86,7 +87,9 @@ def evidence(record: Record) -> list[Block]:
         _file(item.file, f"{count(item.bytes)} bytes, {count(item.rows)} rows", item.sha256) for item in record.evidence
     ]
     rows.append(_file(limits.file, "limits file", limits.sha256))
-    rows.append(_file("Requirements", "as read from the limits file, without wording and layout", limits.requirements_sha256))
+    rows.append(
+        _file("Requirements", "as read from the limits file, without wording and layout", limits.requirements_sha256)
+    )
     if limits.bench_file or limits.bench_sha256:
         rows.append(_file(limits.bench_file, "bench file", limits.bench_sha256))
     columns = [Column("File", 140), Column("SHA-256", WIDTH - 140)]
@@ -138,13 +141,15 @@ def _doubt(doubt: Health) -> Row:
     if place:
         lines.append([Run(place, CELL_MUTED)])
     effect = Run("keeps findings from being judged", Type(CELL.size, CELL.leading, "semibold", RED))
-    return Row([Cell(lines), fold(doubt.remedy) or "–", Cell([effect if doubt.bars else Run("none on the verdicts", CELL)])])
+    return Row(
+        [Cell(lines), fold(doubt.remedy) or "–", Cell([effect if doubt.bars else Run("none on the verdicts", CELL)])]
+    )
 
 
 def _unseen(texts: list[str]) -> list[Block]:
     note = (
-        f"Some characters cannot be printed; a box ({REPLACEMENT}) stands in the place of each. The record holds them; these "
-        "are the texts they stand in, as the record's notation writes them."
+        f"Some characters cannot be printed; a box ({REPLACEMENT}) stands in the place of each. The record holds them; "
+        "these are the texts they stand in, as the record's notation writes them."
     )
     rows = [Row([text, json.dumps(text, ensure_ascii=True)]) for text in texts]
     columns = [Column("As printed", 170), Column("In the record", WIDTH - 170)]
@@ -153,21 +158,36 @@ def _unseen(texts: list[str]) -> list[Block]:
 
 def unprintable(record: Record) -> list[str]:
     """The texts of the record that hold a character the report cannot show, each once, in order."""
-    found = dict.fromkeys(text for text in _texts(record) if not is_printable(text) and not is_printable(fold(text)))
-    return list(found)
+    # names are drawn as they are, so that two of them never look alike; prose is folded to one line first
+    names = {
+        record.unit.product,
+        record.unit.revision,
+        record.unit.serial,
+        record.limits.file,
+        record.limits.bench_file,
+    }
+    names |= {finding.name for finding in record.findings} | {item.file for item in record.evidence}
+    shown = ((text, text if text in names else fold(text)) for text in _texts(record))
+    return list(dict.fromkeys(text for text, drawn in shown if not is_printable(drawn)))
 
 
 def _texts(thing: object) -> Iterator[str]:
     """Every text within a record; rows of numbers are passed over."""
     if isinstance(thing, str):
         yield thing
-    elif is_dataclass(thing):
-        for each in fields(thing):
-            yield from _texts(getattr(thing, each.name))
+    elif is_dataclass(thing) and not isinstance(thing, type):
+        for name in _field_names(type(thing)):
+            yield from _texts(getattr(thing, name))
     elif isinstance(thing, dict):
         for key, value in thing.items():
             yield from _texts(key)
             yield from _texts(value)
-    elif isinstance(thing, list) and thing and not isinstance(thing[0], (int, float)):
+    elif isinstance(thing, list) and thing and not (thing[0] is None or isinstance(thing[0], (int, float))):
         for item in thing:
             yield from _texts(item)
+
+
+@lru_cache(maxsize=64)
+def _field_names(kind: type) -> tuple[str, ...]:
+    # the class's own fields: the instances met are all dataclasses
+    return tuple(each.name for each in fields(kind))

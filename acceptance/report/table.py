@@ -12,7 +12,7 @@ from acceptance.report.pen import Pen
 from acceptance.report.style import ACCENT, CELL, COLUMN, PALE, RULE, Type
 from acceptance.report.wrap import Piece, Run, wrap, wrap_runs
 
-__all__ = ["Cell", "Column", "Row", "Table", "natural_width"]
+__all__ = ["Cell", "Column", "Mark", "Row", "Table", "natural_width"]
 
 PAD = 4.0  # between a column's edge and its text
 _ROW_PAD = 2.4  # above and below a row's lines
@@ -126,7 +126,7 @@ class Table(Block):
         if not self._rows:
             return self.height
         first = self._row_height(self._rows[0])
-        if len(self._rows) > 1 and self._rows[0].span:
+        if len(self._rows) > 1:
             first += self._row_height(self._rows[1])
         return self._head_height + min(first, _WHOLE)
 
@@ -138,6 +138,8 @@ class Table(Block):
         while place < len(self._rows) and used + self._row_height(self._rows[place]) <= room:
             used += self._row_height(self._rows[place])
             place += 1
+        if place == len(self._rows) - 1 and place > 2:
+            place -= 1  # no last row alone on the next page
         head, tail = self._rows[:place], self._rows[place:]
         if tail and self._row_height(tail[0]) > _WHOLE:
             upper, lower = self._break(tail[0], room - used)
@@ -166,10 +168,12 @@ class Table(Block):
     # -- drawing
 
     def draw(self, pen: Pen, x: float, y: float) -> None:
-        if self._head:
-            y = self._draw_head(pen, x, y)
+        low = self._draw_head(pen, x, y) if self._head else y
+        below = low
         for row in self._rows:
-            y = self._draw_row(pen, row, x, y)
+            below = self._draw_row(pen, row, x, below)
+        if self._head:  # after the rows, whose ground would cover half of it
+            pen.line([(x, low), (x + self._width, low)], ACCENT, 0.9)
 
     def _draw_head(self, pen: Pen, x: float, y: float) -> float:
         low = y - self._head_height
@@ -183,7 +187,6 @@ class Table(Block):
                     pen.text(left + PAD, baseline, line, COLUMN)
                 baseline -= COLUMN.leading
             left += column.width
-        pen.line([(x, low), (x + self._width, low)], ACCENT, 0.9)
         return low
 
     def _draw_row(self, pen: Pen, row: _Laid, x: float, y: float) -> float:

@@ -18,8 +18,17 @@ from acceptance.errors import Fault, ReportError
 __all__ = ["HAZARDS", "OPTIONAL", "SECTIONS", "Caution", "Cautions", "Issuer", "Template", "load_template"]
 
 SECTIONS = (
-    "cautions", "findings", "figures", "points", "method", "budgets", "instruments", "evidence", "doubts", "sign_off",
-)  # fmt: skip
+    "cautions",
+    "findings",
+    "figures",
+    "points",
+    "method",
+    "budgets",
+    "instruments",
+    "evidence",
+    "doubts",
+    "sign_off",
+)
 OPTIONAL = frozenset({"figures", "points", "budgets", "instruments"})
 HAZARDS = ("mains", "stored charge", "output above 60 V", "high power output", "hot parts")
 
@@ -314,7 +323,9 @@ def _tree(path: Path, event: Any, events: Iterator[Any], depth: int) -> _Node:
             if not isinstance(key.content, str):
                 raise _fault(path, key.line, key.column, "a key is no text", "expected text")
             if key.content in entries:
-                raise _fault(path, key.line, key.column, f'the key "{key.content}" stands there twice', "expected it once")
+                raise _fault(
+                    path, key.line, key.column, f'the key "{key.content}" stands there twice', "expected it once"
+                )
             entries[key.content] = _tree(path, next(events), events, depth + 1)
         return _Node(entries, line, column)
     raise _fault(path, line, column, "an alias (*name) is not taken here", "write the text out")

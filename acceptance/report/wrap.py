@@ -29,9 +29,16 @@ class Piece:
     style: Type
 
 
+_UNITS = r"(?:%|°C|ppm|[pnµmkM]?(?:V|VA|A|W|s|Hz|Ω|F|ohm)|K|min|h|bit)"
+_APART = re.compile(rf"(?<=\d) (?={_UNITS}(?!\w))|(?<=[±≥≤<>]) (?=\d)")
+
+
 def fold(text: str) -> str:
-    """Prose on one line: line ends, tabs and repeated spaces become one space. Other controls stay, to be seen."""
-    return re.sub(r"[ \t\r\n]+", " ", text).strip(" ")
+    """Prose on one line: line ends, tabs and repeated spaces become one space. Other controls stay, to be seen.
+
+    A number and its unit stay together.
+    """
+    return _APART.sub("\N{NO-BREAK SPACE}", re.sub(r"[ \t\r\n]+", " ", text).strip(" "))
 
 
 def wrap(text: str, style: Type, width: float) -> list[str]:
@@ -39,7 +46,7 @@ def wrap(text: str, style: Type, width: float) -> list[str]:
     text = printable(text)
     if string_width(text, style.size, style.weight) <= width:
         return [text]
-    return ["".join(piece.text for piece in line) for line in wrap_runs([Run(text, style)], width)]
+    return ["".join(piece.text for piece in line).rstrip(" ") for line in wrap_runs([Run(text, style)], width)]
 
 
 def wrap_runs(runs: Sequence[Run], width: float) -> list[list[Piece]]:

@@ -34,7 +34,7 @@ def b203() -> LogFile:
     loads = (20.0, 12.0, 10.0, 9.6, 9.4, 9.2, 8.5, 7.4, 6.0, 4.5, 3.4, 2.2, 1.2, 0.6, 0.1, 10.0)
     samples = run_overload(BENCH_SUPPLY, BENCH_2, BENCH_SUPPLY_LIMITER, loads=loads, seconds=5.0, rate=4.0, seed=20302)
     steady = [
-        Column("time", "Date and time"),
+        Column("time", "Timestamp"),
         Column("load_setting main", "I set [A]", decimals=2),
         Column("input_voltage", "Vin [V]", decimals=1),
         Column("input_power", "Pin [W]", decimals=3),
@@ -84,10 +84,10 @@ def b204() -> LogFile:
     columns = [
         Column("time", "Time (s)"),
         Column("load_setting main", "Load setting (A)", decimals=2),
-        Column("input_voltage", "V in (V)", decimals=1),
-        Column("input_power", "P in (W)", decimals=3),
-        Column("output_voltage main", "V out (V)", decimals=4),
-        Column("output_current main", "I out (A)", decimals=4),
+        Column("input_voltage", "Vin (V)", decimals=1),
+        Column("input_power", "Pin (W)", decimals=3),
+        Column("output_voltage main", "Vout (V)", decimals=4),
+        Column("output_current main", "Iout (A)", decimals=4),
         Column("ripple main", "Ripple (mV)", scale=1e3, decimals=2),
     ]
     notes = ("serial\tB-204", "date\t2026-06-03", "operator\tM. F.")

@@ -102,6 +102,11 @@ def mains_hum(rng: np.random.Generator, setting: Array) -> Array:
     return hum + rng.normal(0, NOISE, setting.size)
 
 
+def noise_of_the_reading(rng: np.random.Generator, setting: Array) -> Array:
+    """White noise of 0.5 % of the reading, on the usual 2 mA."""
+    return rng.normal(0, 1, setting.size) * (NOISE + 0.005 * setting)
+
+
 KINDS: dict[str, Kind] = {
     "clean": Kind(),
     "coarse converter": Kind(adc_step=0.010),
@@ -120,6 +125,8 @@ KINDS: dict[str, Kind] = {
     "correlated 0.98": Kind(disturb=autoregressive(0.98)),
     "random walk": Kind(disturb=random_walk),
     "hum": Kind(disturb=mains_hum),
+    "noise of the reading": Kind(disturb=noise_of_the_reading),
+    "no noise": Kind(noise=0.0),
 }
 
 

@@ -274,6 +274,14 @@ def test_find_dwells_leaves_out_the_ramp_of_a_setting():
     assert spans(find_dwells(log).dwells) == [(0, 100), (120, 220)]
 
 
+def test_find_dwells_takes_a_setting_read_back_with_noise():
+    """A setting that jitters in its last digit is held all the same."""
+    rng = np.random.default_rng(23)
+    log = bench_log(load_setting=sweep(rng, [0.0, 1.0, 5.0], 200), output_current=sweep(rng, [0.0, 1.0, 5.0], 200))
+
+    assert spans(find_dwells(log).dwells) == [(0, 200), (200, 400), (400, 600)]
+
+
 def test_find_dwells_leaves_out_a_sample_that_runs_ahead_of_the_setting():
     """The load took the next setting a sample before the logger noted it."""
     current = sweep(np.random.default_rng(6), [0.0, 1.0], 100)

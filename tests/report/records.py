@@ -50,7 +50,13 @@ def output_voltage(load: float, rated: float = 24.0) -> float:
 
 def input_power(load: float, rated: float = 120.0) -> float:
     """Fixed loss, loss with current, and loss with its square."""
-    return rated * load * output_voltage(load) / 24 + 0.15 + 0.045 * rated * load + 0.035 * rated * load**2 + 1.1 * (load > 0)
+    return (
+        rated * load * output_voltage(load) / 24
+        + 0.15
+        + 0.045 * rated * load
+        + 0.035 * rated * load**2
+        + 1.1 * (load > 0)
+    )
 
 
 def efficiency(load: float) -> float:
@@ -131,22 +137,75 @@ def steady_findings() -> list[Finding]:
             points=[AtDwell(n, f"{LOADS[n] * 100:.0f} %") for n in (2, 3, 4, 5)],
         ),
         Finding(
-            "standby", "no_load_power", "load 0 %, input 230 V", 0.148, "W", 0.058, 1.96, None, None, 0.21, 0.062, 0.982,
-            "pass", "", 0.0296, "", "A-17.csv, lines 31 to 90", "", "mean P over the whole no-load stretch, 74 s",
-            [AtDwell(0, "no load")], [], [BudgetLine("input power, PM-1: accuracy", "B", 0.0292, 0.97, None)],
+            "standby",
+            "no_load_power",
+            "load 0 %, input 230 V",
+            0.148,
+            "W",
+            0.058,
+            1.96,
+            None,
+            None,
+            0.21,
+            0.062,
+            0.982,
+            "pass",
+            "",
+            0.0296,
+            "",
+            "A-17.csv, lines 31 to 90",
+            "",
+            "mean P over the whole no-load stretch, 74 s",
+            [AtDwell(0, "no load")],
+            [],
+            [BudgetLine("input power, PM-1: accuracy", "B", 0.0292, 0.97, None)],
         ),
         Finding(
-            "loadreg", "load_regulation", "load 0 % to 100 %, input 230 V", 0.00303, "", 0.00012, 1.97, 240.0, None, 0.01,
-            0.00697, 1.0, "pass", "", 0.00006, "main", "A-17.csv, lines 31 to 465", "",
-            "(largest V − smallest V) / V at full load", [AtDwell(n, f"{LOADS[n] * 100:.0f} %") for n in range(6)],
+            "loadreg",
+            "load_regulation",
+            "load 0 % to 100 %, input 230 V",
+            0.00303,
+            "",
+            0.00012,
+            1.97,
+            240.0,
+            None,
+            0.01,
+            0.00697,
+            1.0,
+            "pass",
+            "",
+            0.00006,
+            "main",
+            "A-17.csv, lines 31 to 465",
+            "",
+            "(largest V − smallest V) / V at full load",
+            [AtDwell(n, f"{LOADS[n] * 100:.0f} %") for n in range(6)],
         ),
         Finding(
-            "band", "output_voltage", "load any, input any", 23.9376, "V", 0.0096, 1.98, 118.0, 23.52, 24.48, 0.4176, 1.0,
-            "pass", "", 0.0048, "main", "A-17.csv, lines 406 to 465", "", "mean V of the dwell farthest from rated",
+            "band",
+            "output_voltage",
+            "load any, input any",
+            23.9376,
+            "V",
+            0.0096,
+            1.98,
+            118.0,
+            23.52,
+            24.48,
+            0.4176,
+            1.0,
+            "pass",
+            "",
+            0.0048,
+            "main",
+            "A-17.csv, lines 406 to 465",
+            "",
+            "mean V of the dwell farthest from rated",
             [AtDwell(5, "load 100 %")],
             [Alternative("load 50 %, lines 256 to 315", 23.9736, 0.0096, 0.4536, 1.0, "pass")],
         ),
-    ]  # fmt: skip
+    ]
 
 
 def figures() -> list[Figure]:
@@ -176,15 +235,28 @@ def instruments() -> list[InstrumentUsed]:
     return [
         InstrumentUsed("input_power", "PM-1", "0815-3", "0.1 % reading + 0.05 W", "", "10 mW", "2027-03-01", "in date"),
         InstrumentUsed(
-            "output_voltage", "DMM-7", "M7-2217", "0.05 % reading + 0.02 % range", "60 V", "1 mV", "2027-03-01", "in date"
+            "output_voltage",
+            "DMM-7",
+            "M7-2217",
+            "0.05 % reading + 0.02 % range",
+            "60 V",
+            "1 mV",
+            "2027-03-01",
+            "in date",
         ),
         InstrumentUsed(
-            "output_current", "L-2", "", "shunt 1 ohm ± 0.1 %, 50 ppm/K, 5 K/W; 16 bit over ± 6.144 V, offset 0.4 mV",
-            "", "", "2026-12-15", "in date",
+            "output_current",
+            "L-2",
+            "",
+            "shunt 1 ohm ± 0.1 %, 50 ppm/K, 5 K/W; 16 bit over ± 6.144 V, offset 0.4 mV",
+            "",
+            "",
+            "2026-12-15",
+            "in date",
         ),
         InstrumentUsed("temperature case", "TC-4", "", "1.5 K", "", "", None, "no due date stated"),
         InstrumentUsed("input_voltage", None, "", "", "", "", None, "uncertainty not stated"),
-    ]  # fmt: skip
+    ]
 
 
 def typical() -> Record:
@@ -207,7 +279,9 @@ def typical() -> Record:
         made_by={"acceptance": "0.1.0", "python": "3.11.7", "numpy": "2.3.1"},
         ratings=Ratings("ac", 230.0, [207.0, 253.0], 50.0, [Output("main", 24.0, 5.0)], 40.0, "I"),
         decision=DecisionRule("guarded", 0.95, 0.975, None, None),
-        test=TestFacts("2026-11-28", ["steady"], 465, "CC", None, 5.0, [22.6, 23.4], "file name", {"input_voltage": 230.0}),
+        test=TestFacts(
+            "2026-11-28", ["steady"], 465, "CC", None, 5.0, [22.6, 23.4], "file name", {"input_voltage": 230.0}
+        ),
         hazards=[
             Hazard("mains", "rated input 230 V a.c."),
             Hazard("stored charge", "a.c. input with no bleeder stated"),
@@ -222,28 +296,99 @@ def every_verdict() -> Record:
     reason = "inside the limit, but not shown to conform: probability 94.1 %, needed 97.5 %"
     findings = [
         base.findings[0],
-        finding("eff-25", 0.25, 0.8875, "fail", reason=reason, conformity_probability=0.941, margin=efficiency(0.25) - 0.8875),
-        finding("eff-10", 0.10, 0.80, "conditional pass", reason="on the limit's good side; not shown", conformity_probability=0.71),
-        finding("eff-100", 1.0, 0.93, "conditional fail", reason="on the limit's bad side; not shown", conformity_probability=0.31),
         finding(
-            "eff-75-low-line", 0.75, 0.88, "not judged", value=None, expanded_uncertainty=None, coverage_factor=None,
-            degrees_of_freedom=None, margin=None, conformity_probability=None, standard_uncertainty=None, budget=[], points=[],
+            "eff-25",
+            0.25,
+            0.8875,
+            "fail",
+            reason=reason,
+            conformity_probability=0.941,
+            margin=efficiency(0.25) - 0.8875,
+        ),
+        finding(
+            "eff-10",
+            0.10,
+            0.80,
+            "conditional pass",
+            reason="on the limit's good side; not shown",
+            conformity_probability=0.71,
+        ),
+        finding(
+            "eff-100",
+            1.0,
+            0.93,
+            "conditional fail",
+            reason="on the limit's bad side; not shown",
+            conformity_probability=0.31,
+        ),
+        finding(
+            "eff-75-low-line",
+            0.75,
+            0.88,
+            "not judged",
+            value=None,
+            expanded_uncertainty=None,
+            coverage_factor=None,
+            degrees_of_freedom=None,
+            margin=None,
+            conformity_probability=None,
+            standard_uncertainty=None,
+            budget=[],
+            points=[],
             condition="load 75 %, input 207 V",
             reason="no dwell meets input 207 V; the nearest is lines 331 to 390 with 229.9 V. Record a sweep at 207 V",
         ),
         Finding(
-            "calibration.PM-1", "calibration", "", None, "", None, None, None, None, None, None, None, "not judged",
+            "calibration.PM-1",
+            "calibration",
+            "",
+            None,
+            "",
+            None,
+            None,
+            None,
+            None,
+            None,
+            None,
+            None,
+            "not judged",
             "PM-1 was due on 2026-10-01, and the log's test date is 2026-11-28; have it calibrated and test again",
         ),
         Finding(
-            "ocp.behaviour", "overcurrent", "input any", "constant current", "", None, None, None, None, None, None, None,
-            "pass", "", deviations=[Deviation("The load was stepped in CR mode; the sweep took 4.1 s per step instead of 2 s.")],
+            "ocp.behaviour",
+            "overcurrent",
+            "input any",
+            "constant current",
+            "",
+            None,
+            None,
+            None,
+            None,
+            None,
+            None,
+            None,
+            "pass",
+            "",
+            deviations=[Deviation("The load was stepped in CR mode; the sweep took 4.1 s per step instead of 2 s.")],
         ),
         Finding(
-            "ripple", "ripple", "load 100 %, input 230 V", 0.0962, "V", None, None, None, None, 0.120, 0.0238, None, "pass", "",
+            "ripple",
+            "ripple",
+            "load 100 %, input 230 V",
+            0.0962,
+            "V",
+            None,
+            None,
+            None,
+            None,
+            0.120,
+            0.0238,
+            None,
+            "pass",
+            "",
             output="main",
         ),
-    ]  # fmt: skip
+    ]
     return replace(
         base,
         verdict="rejected",
@@ -251,12 +396,20 @@ def every_verdict() -> Record:
         findings=findings,
         health=[
             Health(
-                "frozen channel", "input_voltage has the identical value in all of 465 samples", False, ["input_voltage"],
-                "A-17.csv, column 2", "check the meter's hold key, or declare the input voltage as stated",
+                "frozen channel",
+                "input_voltage has the identical value in all of 465 samples",
+                False,
+                ["input_voltage"],
+                "A-17.csv, column 2",
+                "check the meter's hold key, or declare the input voltage as stated",
             ),
             Health(
-                "impossible efficiency", "efficiency above 1 + U at 10 % load", True, ["input_power", "output_current"],
-                "A-17.csv, lines 106 to 165", "check the current's scale and the power meter's range",
+                "impossible efficiency",
+                "efficiency above 1 + U at 10 % load",
+                True,
+                ["input_power", "output_current"],
+                "A-17.csv, lines 106 to 165",
+                "check the current's scale and the power meter's range",
             ),
         ],
         hazards=[
@@ -266,19 +419,24 @@ def every_verdict() -> Record:
             Hazard("high power output", "10 A short-circuit current at 24 V"),
             Hazard("hot parts", "temperature case reached 49 °C"),
         ],
-    )  # fmt: skip
+    )
 
 
 def several_outputs(count: int = 3) -> Record:
     """A supply of several outputs: wide tables, figures with several series."""
     base = typical()
-    rails = [Output(f"rail {n + 1}", volts, 2.0 + n) for n, volts in zip(range(count), (5.0, 12.0, 24.0, -12.0, 3.3, 48.0), strict=False)]
+    rails = [
+        Output(f"rail {n + 1}", volts, 2.0 + n)
+        for n, volts in zip(range(count), (5.0, 12.0, 24.0, -12.0, 3.3, 48.0), strict=False)
+    ]
     listed = []
     for each in base.points:
         load = each.load_fractions["main"]
         channels = {name: each.channels[name] for name in ("input_voltage", "input_power")}
         for rail in rails:
-            channels[f"output_voltage {rail.name}"] = reading(output_voltage(load, rail.voltage), "V", 0.0002 * abs(rail.voltage))
+            channels[f"output_voltage {rail.name}"] = reading(
+                output_voltage(load, rail.voltage), "V", 0.0002 * abs(rail.voltage)
+            )
             channels[f"output_current {rail.name}"] = reading(rail.current * load, "A", 0.0006 + 0.001 * load)
             channels[f"ripple {rail.name}"] = reading(0.012 + 0.03 * load, "V", None, 1)
         listed.append(replace(each, channels=channels, load_fractions={rail.name: load for rail in rails}))
@@ -288,12 +446,16 @@ def several_outputs(count: int = 3) -> Record:
         Axis("Load", ""),
         Axis("Deviation", ""),
         [
-            Series(rail.name, list(LOADS), [output_voltage(load * (1 + n / 4), 1.0) - 1 for load in LOADS], [0.0004] * 6)
+            Series(
+                rail.name, list(LOADS), [output_voltage(load * (1 + n / 4), 1.0) - 1 for load in LOADS], [0.0004] * 6
+            )
             for n, rail in enumerate(rails)
         ],
         [LimitLine("band", -0.02, "min"), LimitLine("band", 0.02, "max")],
     )
-    return replace(base, points=listed, figures=[curve, base.figures[0], waveform()], ratings=replace(base.ratings, outputs=rails))
+    return replace(
+        base, points=listed, figures=[curve, base.figures[0], waveform()], ratings=replace(base.ratings, outputs=rails)
+    )
 
 
 def waveform(samples: int = 4000) -> Figure:
@@ -302,13 +464,17 @@ def waveform(samples: int = 4000) -> Figure:
     rise = [27.0 * (1 - 2.718281828 ** (-t / 1500)) + 0.2 * ((n * 7919) % 13 / 13 - 0.5) for n, t in enumerate(times)]
     rise[samples // 2] = 33.0
     return Figure(
-        "temperature", "Temperature rise of the case", Axis("Time", "s"), Axis("Rise over ambient", "K"),
+        "temperature",
+        "Temperature rise of the case",
+        Axis("Time", "s"),
+        Axis("Rise over ambient", "K"),
         [
             Series("case", times, rise, [None] * samples, "line"),
             Series("case, mean of the last dwell", [6900.0], [26.8], [1.5]),
         ],
-        [LimitLine("rise-case", 35.0, "max")], "Ambient read beside the unit, 0.3 m away.",
-    )  # fmt: skip
+        [LimitLine("rise-case", 35.0, "max")],
+        "Ambient read beside the unit, 0.3 m away.",
+    )
 
 
 NASTY = {
@@ -328,10 +494,20 @@ def nasty() -> Record:
     long_serial = "S" * 140 + "-0123456789" * 15
     hostile = " | ".join(NASTY.values())
     findings = [
-        replace(each, name=f"{each.name} {hostile}", condition=hostile, note=hostile, reason=hostile, where=hostile, formula=hostile)
+        replace(
+            each,
+            name=f"{each.name} {hostile}",
+            condition=hostile,
+            note=hostile,
+            reason=hostile,
+            where=hostile,
+            formula=hostile,
+        )
         for each in base.findings
     ]
-    named = [replace(figure, title=hostile, caption=hostile, x=replace(figure.x, label=hostile)) for figure in base.figures]
+    named = [
+        replace(figure, title=hostile, caption=hostile, x=replace(figure.x, label=hostile)) for figure in base.figures
+    ]
     named = [
         replace(
             figure,
@@ -363,7 +539,60 @@ def empty() -> Record:
     """Nothing in it but what must be."""
     base = typical()
     return replace(
-        base, unit=Unit("X", None, "1"), verdict="undecided", joint_conformity_probability=None, findings=[], points=[], figures=[], instruments=[], health=[],
-        notes={}, evidence=[], limits=LimitsUsed("l.yaml", sha("l"), sha("r")), made_by={}, hazards=[],
-        ratings=Ratings("dc", 48.0, None, None, [], None, None), test=TestFacts(None, [], 0, None, None, None, None, "the file's name", {}),
-    )  # fmt: skip
+        base,
+        unit=Unit("X", None, "1"),
+        verdict="undecided",
+        joint_conformity_probability=None,
+        findings=[],
+        points=[],
+        figures=[],
+        instruments=[],
+        health=[],
+        notes={},
+        evidence=[],
+        limits=LimitsUsed("l.yaml", sha("l"), sha("r")),
+        made_by={},
+        hazards=[],
+        ratings=Ratings("dc", 48.0, None, None, [], None, None),
+        test=TestFacts(None, [], 0, None, None, None, None, "the file's name", {}),
+    )
+
+
+def degenerate() -> Record:
+    """Figures that charts trip over."""
+    volts, share = Axis("Output voltage", "V"), Axis("Load", "")
+
+    def one(
+        name: str, xs: list[float], ys: list[float], bars: list[float | None] | None = None, **more: object
+    ) -> Figure:
+        series = [Series("main", xs, ys, bars or [None] * len(xs))]
+        return replace(Figure(name, name, share, volts, series), **more)  # type: ignore[arg-type]
+
+    listed = [
+        one("one point", [0.5], [24.0]),
+        one("one point with its limit on it", [0.5], [24.0], [0.01], limits=[LimitLine("band", 24.0, "min")]),
+        one("equal values", [0.0, 0.5, 1.0], [5.0, 5.0, 5.0], [0.002] * 3),
+        one("equal places", [0.5, 0.5, 0.5], [5.0, 5.1, 5.2]),
+        one("all zero", [0.0, 0.0], [0.0, 0.0]),
+        one("tiny", [0.0, 0.5, 1.0], [1e-9, 3e-9, 2e-9], [1e-10] * 3),
+        one("huge", [0.0, 0.5, 1.0], [1e6, 3e6, 2.2e6]),
+        one("tiny to huge", [1e-9, 1.0, 1e6], [1e-9, 1.0, 1e6]),
+        one("narrow", [0.0, 0.5, 1.0], [24.000001, 24.000002, 24.0000015]),
+        one("narrower than a float tells", [0.0, 1.0], [24.0, 24.0 + 4e-15]),
+        one("negative", [-1.0, 0.0, 1.0], [-12.1, -12.0, -11.9], limits=[LimitLine("band", -12.24, "min")]),
+        one("no points", [], [], limits=[LimitLine("band", 23.5, "min")]),
+        one("not finite", [0.0, 0.5, float("nan")], [float("inf"), 24.0, 24.0]),
+        one("bar wider than the value", [0.0, 1.0], [0.1, 0.2], [5.0, 4.0]),
+        Figure("no series", "no series", share, volts, []),
+        replace(waveform(20_000), name="long", title="long"),
+        Figure(
+            "many series",
+            "many series",
+            share,
+            volts,
+            [Series(f"output {n}", [0.0, 0.5, 1.0], [n, n + 0.5, n + 0.2], [0.1] * 3) for n in range(8)],
+            [LimitLine(f"limit {n}", 4.0 + n / 8, "max") for n in range(4)],
+        ),
+        one("far limit", [0.0, 1.0], [0.02, 0.03], limits=[LimitLine("ripple", 120.0, "max")]),
+    ]
+    return replace(typical(), figures=listed)

@@ -1,0 +1,365 @@
+"""Health: each fault built into a log is found where it was put, and good logs of many kinds raise no bar."""
+
+from __future__ import annotations
+
+import numpy as np
+import pandas as pd
+import pytest
+
+from acceptance.bench.health import check_health
+from acceptance.bench.log import BenchLog, Channel, Doubt
+
+RATED = {"main": (12.0, 3.0)}
+LEVELS = (0.0, 0.3, 0.75, 1.5, 2.25, 3.0)
+
+
+def log_of(columns, *, stage="steady", table=None, assumed=(), stated=None, doubts=()):
+    size = len(next(iter(columns.values())))
+    frame = pd.DataFrame({key: np.asarray(values, float) for key, values in columns.items()})
+    frame["stage"] = pd.Categorical([stage] * size if isinstance(stage, str) else list(stage))
+    frame["table"] = np.zeros(size, int) if table is None else table
+    frame["line"] = np.arange(2, size + 2)
+    channels = []
+    for key in columns:
+        quantity, _, qualifier = key.partition(" ")
+        origin = "assumed" if key in assumed else "heading"
+        channels.append(Channel(key, quantity, qualifier, key, "V", origin, 1.0, 0.0, "", "A.csv"))
+    names = tuple(f"table {n}" for n in range(int(frame["table"].max()) + 1))
+    return BenchLog("A", frame, tuple(channels), (), names, stated=stated or {}, doubts=tuple(doubts))
+
+
+def sweep(rows=2400, seed=1, *, current_step=1e-4, noise=2e-3, ac=True, dwell=None):
+    """A realistic sweep: levels in turn, noise on everything, each reading rounded to its meter's step."""
+    generator = np.random.default_rng(seed)
+    dwell = dwell or rows // len(LEVELS)
+    setting = np.resize(np.repeat(LEVELS, dwell), rows)
+
+    def rounded(values, step):
+        return np.round(np.round(values / step) * step, 9)
+
+    current = setting + generator.normal(0, noise, rows)
+    voltage = 12.03 - 0.02 * current + generator.normal(0, 1.5e-3, rows)
+    power = voltage * current + 0.15 + 0.6 * current + 0.15 * current**2 + generator.normal(0, 2e-3, rows)
+    volts = 230 + generator.normal(0, 0.2, rows)
+    time = np.arange(rows) * 0.1
+    return {
+        "time": time,
+        "load_setting main": setting,
+        "input_voltage": rounded(volts, 0.01),
+        "input_current": rounded(power / volts / (0.6 if ac else 1.0), 1e-4),
+        "input_power": rounded(power, 1e-3),
+        "output_voltage main": rounded(voltage, 1e-4),
+        "output_current main": rounded(current, current_step),
+        "temperature case": rounded(23 + 18 * (1 - np.exp(-time / 30)) + generator.normal(0, 0.03, rows), 0.01),
+        "ripple main": rounded(0.022 + 0.004 * current + generator.normal(0, 5e-4, rows), 1e-5),
+    }
+
+
+def found(log, **options):
+    return check_health(log, supply="ac", rated_input_voltage=230.0, rated=RATED, **options)
+
+
+def kinds(log):
+    return {doubt.kind: doubt for doubt in found(log)}
+
+
+# --- good data raise no bar -----------------------------------------------------------------------------------------
+
+
+def manual():
+    """One row a condition, read off by a person."""
+    return {
+        "time": [0, 60, 180, 200, 420, 1000],
+        "output_current main": [0.0, 0.3, 0.75, 1.5, 2.25, 3.0],
+        "output_voltage main": [12.03, 12.03, 12.02, 12.01, 12.01, 12.0],
+        "input_power": [0.2, 4.0, 10.0, 20.0, 31.0, 42.0],
+        "input_voltage": [230.0] * 6,
+    }
+
+
+def noiseless():
+    columns = sweep()
+    return columns | {
+        "output_current main": columns["load_setting main"],
+        "output_voltage main": 12.03 - 0.02 * columns["load_setting main"],
+        "input_power": 0.2 + 14 * columns["load_setting main"],
+    }
+
+
+def zero_at_no_load():
+    columns = sweep()
+    columns["output_current main"] = np.where(columns["load_setting main"] == 0, 0.0, columns["output_current main"])
+    return columns
+
+
+def quiet_at_no_load():
+    """Voltage and power without noise at no load, with noise elsewhere."""
+    columns = sweep()
+    empty = columns["load_setting main"] == 0
+    columns["output_voltage main"] = np.where(empty, 12.0412, columns["output_voltage main"])
+    columns["input_power"] = np.where(empty, 0.151, columns["input_power"])
+    columns["input_current"] = np.where(empty, 0.0012, columns["input_current"])
+    return columns
+
+
+def bursts_at_no_load():
+    """A supply that sleeps between bursts."""
+    columns = sweep(6000)
+    empty = columns["load_setting main"] == 0
+    burst = (np.arange(6000) % 100) < 12
+    generator = np.random.default_rng(3)
+    asleep = np.where(burst, 0.6 + generator.normal(0, 0.02, 6000).round(3), 0.101)
+    columns["input_power"] = np.where(empty, asleep, columns["input_power"])
+    return columns
+
+
+def mains_at_coarse_resolution():
+    columns = sweep()
+    return columns | {"input_voltage": np.round(230 + np.random.default_rng(4).normal(0, 0.03, 2400), 1)}
+
+
+def soak():
+    """Six hours at one load, temperatures settled to their last digit."""
+    columns = sweep(21600, dwell=21600)
+    columns["time"] = np.arange(21600.0)
+    settled = np.round(23 + 18 * (1 - np.exp(-np.arange(21600) / 1500)), 1)
+    return columns | {"temperature case": settled}
+
+
+def limiter():
+    """An overcurrent ramp in small steps into a limiter whose current has a meter's noise."""
+    generator = np.random.default_rng(5)
+    asked = np.repeat(np.linspace(2.5, 4.5, 200), 5)
+    current = np.minimum(asked, 3.6) + generator.normal(0, 1e-3, 1000)
+    volts = np.where(asked <= 3.6, 12.0, 12.0 * np.maximum(0, 1 - (asked - 3.6)))
+    return {
+        "time": np.arange(1000) * 0.1,
+        "output_current main": current.round(4),
+        "output_voltage main": (volts + generator.normal(0, 1e-3, 1000)).round(4),
+        "input_power": (volts * current * 1.2 + 0.2).round(3),
+    }
+
+
+def latched_off():
+    """An output that is off, with its meter's offset standing still."""
+    columns = limiter()
+    off = np.arange(1000) > 500
+    columns["output_voltage main"] = np.where(off, 0.0021, columns["output_voltage main"])
+    columns["output_current main"] = np.where(off, 0.0, columns["output_current main"])
+    columns["input_power"] = np.where(off, 0.312, columns["input_power"])
+    return columns
+
+
+GOOD = {
+    "realistic": sweep,
+    "another seed": lambda: sweep(seed=99),
+    "coarse converter of 10 mA": lambda: sweep(current_step=1e-2),
+    "coarse converter of 2 mA": lambda: sweep(current_step=2e-3),
+    "coarse converter of 0.5 mA": lambda: sweep(current_step=5e-4),
+    "steps of three samples": lambda: sweep(dwell=3),
+    "short": lambda: sweep(18, dwell=3),
+    "manual": manual,
+    "no noise": noiseless,
+    "zero at no load": zero_at_no_load,
+    "quiet at no load": quiet_at_no_load,
+    "bursts at no load": bursts_at_no_load,
+    "mains at 0.1 V": mains_at_coarse_resolution,
+    "long soak": soak,
+    "limiter": limiter,
+    "latched off": latched_off,
+}
+
+
+@pytest.mark.parametrize("kind", GOOD)
+def test_good_log_raises_no_doubt(kind):
+    """A false bar is as bad as a miss."""
+    stage = "overcurrent" if kind in ("limiter", "latched off") else "steady"
+
+    assert found(log_of(GOOD[kind](), stage=stage)) == ()
+
+
+@pytest.mark.parametrize("seed", range(20))
+@pytest.mark.parametrize("step", [1e-4, 7e-4, 1e-3, 2e-3, 4e-3])
+def test_good_logs_of_any_resolution_raise_no_bar(seed, step):
+    """Noise of twenty to half a step of the converter."""
+    assert found(log_of(sweep(1200, seed, current_step=step))) == ()
+
+
+# --- time -----------------------------------------------------------------------------------------------------------
+
+
+def test_gap_is_cut_after_its_last_sample():
+    """The span ends with the last sample before the gap."""
+    columns = sweep()
+    columns["time"][700:] += 30
+
+    (doubt,) = found(log_of(columns))
+
+    assert (doubt.kind, doubt.bars, doubt.spans) == ("gap", False, ((699, 700),))
+    assert "table 0:701" in doubt.text
+
+
+def test_time_running_backwards_bars_its_table_alone():
+    """Every channel, and no sample of another table."""
+    columns = sweep()
+    columns["time"] = np.concatenate([columns["time"][:1200], columns["time"][:1200]])
+    columns["time"][600:] -= 5
+    table = np.repeat([0, 1], 1200)
+
+    doubts = found(log_of(columns, table=table))
+
+    (doubt,) = doubts
+    assert (doubt.kind, doubt.bars, doubt.spans) == ("backward time", True, ((0, 1200),))
+    assert set(doubt.channels) == set(columns)
+
+
+def test_time_that_begins_anew_in_a_new_table_is_no_fault():
+    """A restarted logger."""
+    columns = sweep()
+    columns["time"] = np.tile(np.arange(1200) * 0.1, 2)
+
+    assert found(log_of(columns, table=np.repeat([0, 1], 1200))) == ()
+
+
+def test_repeated_times():
+    """Few: a doubt. A coarse clock: a doubt. A clock that stands: what needs time is barred."""
+    few, coarse, stuck = sweep(), sweep(), sweep()
+    few["time"][50] = few["time"][49]
+    coarse["time"] = np.floor(coarse["time"])
+    stuck["time"][500:900] = stuck["time"][500]
+
+    assert not kinds(log_of(few))["repeated time"].bars
+    assert not kinds(log_of(coarse))["repeated time"].bars
+    assert "steps of 1 s" in kinds(log_of(coarse))["repeated time"].text
+    barred = kinds(log_of(stuck))["repeated time"]
+    assert (barred.bars, barred.channels, barred.spans) == (True, ("time",), ((500, 900),))
+
+
+# --- converters -----------------------------------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize("ceiling", [2.8, 2.2501])
+def test_clipped_converter_is_barred_where_it_clips(ceiling):
+    """The current cannot read more than the ceiling."""
+    columns = sweep()
+    columns["output_current main"] = np.minimum(columns["output_current main"], ceiling)
+    clipped = np.flatnonzero(columns["output_current main"] == ceiling)
+
+    doubt = kinds(log_of(columns))["clipped"]
+
+    assert doubt.bars
+    assert doubt.channels == ("output_current main",)
+    barred = np.concatenate([np.arange(a, b) for a, b in doubt.spans])
+    assert set(barred) <= set(clipped)
+    assert len(barred) > 0.5 * len(clipped)
+
+
+def test_clipped_limiter_is_barred():
+    """A saturated converter would pass for a perfect limiter."""
+    columns = limiter()
+    columns["output_current main"] = np.minimum(columns["output_current main"], 3.5)
+
+    assert kinds(log_of(columns, stage="overcurrent"))["clipped"].bars
+
+
+@pytest.mark.parametrize("key", ["output_voltage main", "input_power", "output_current main", "input_voltage"])
+@pytest.mark.parametrize("span", [(900, 1000), (1500, 1700), (1100, 1300)])
+def test_frozen_reading_is_barred_where_it_stands(key, span):
+    """Amid a dwell, and across a change of the load."""
+    columns = sweep()
+    columns[key][span[0] : span[1]] = columns[key][span[0]]
+
+    doubt = kinds(log_of(columns))["frozen"]
+
+    assert (doubt.bars, doubt.channels) == (True, (key,))
+    assert doubt.spans[0][0] <= span[0] + 1
+    assert doubt.spans[0][1] >= span[1] - 1
+    assert sum(b - a for a, b in doubt.spans) <= span[1] - span[0] + 2
+
+
+# --- columns and units ----------------------------------------------------------------------------------------------
+
+
+def test_ac_input_without_power_is_barred():
+    """Volts times amperes is no power; a power factor would do, and a d.c. input needs neither."""
+    columns = sweep()
+    del columns["input_power"]
+    log = log_of(columns)
+
+    doubt = kinds(log)["no input power"]
+    assert (doubt.bars, doubt.channels) == (True, ("input_power", "input_current"))
+    assert "wattmeter" in doubt.remedy
+    assert not check_health(log, supply="dc")
+    assert "no input power" not in kinds(log_of(columns | {"power_factor": np.full(2400, 0.6)}))
+
+
+def test_swapped_output_columns_are_barred():
+    """Volts where the amperes should be."""
+    columns = sweep()
+    columns["output_voltage main"], columns["output_current main"] = (
+        columns["output_current main"],
+        columns["output_voltage main"],
+    )
+
+    doubt = kinds(log_of(columns))["swapped"]
+    assert doubt.bars
+    assert set(doubt.channels) == {"output_voltage main", "output_current main"}
+
+
+def test_swapped_ends_are_barred():
+    """The input's volts under the output's heading."""
+    columns = sweep()
+    columns["input_voltage"], columns["output_voltage main"] = columns["output_voltage main"], columns["input_voltage"]
+
+    assert any(d.kind == "swapped" and d.bars and "input_voltage" in d.channels for d in found(log_of(columns)))
+
+
+def test_more_power_out_than_in_is_barred():
+    """In nearly every sample; the outputs stay, since their voltage is the rated one."""
+    columns = sweep()
+    columns["input_power"] = columns["input_power"] / 1000
+
+    doubt = kinds(log_of(columns))["swapped"]
+    assert doubt.bars
+    assert "input_power" in doubt.channels
+    assert "output_voltage main" not in doubt.channels
+
+
+@pytest.mark.parametrize("factor", [1e-3, 0.1, 10.0, 100.0, 1000.0])
+@pytest.mark.parametrize("assumed", [True, False])
+def test_reading_ten_times_off_the_rating(factor, assumed):
+    """A bar only where the unit was assumed."""
+    for key in ("output_voltage main", "input_voltage"):
+        columns = sweep()
+        columns[key] = columns[key] * factor
+
+        doubts = [d for d in found(log_of(columns, assumed=(key,) if assumed else ())) if d.kind == "scale"]
+
+        assert [(d.channels, d.bars) for d in doubts] == [((key,), assumed)]
+
+
+def test_current_in_milliamperes_is_a_doubt():
+    """A thousandfold of the rating."""
+    columns = sweep()
+    columns["output_current main"] = columns["output_current main"] * 1000
+
+    assert any(d.kind == "scale" and d.channels == ("output_current main",) for d in found(log_of(columns)))
+
+
+def test_missing_readings_are_said_once():
+    """Not again where the reader has said so; and not for a table without the channel."""
+    columns = sweep()
+    columns["input_power"][10:20] = np.nan
+    columns["ripple main"][1200:] = np.nan
+    table = np.repeat([0, 1], 1200)
+    columns["time"] = np.tile(np.arange(1200) * 0.1, 2)
+
+    doubts = [d for d in found(log_of(columns, table=table)) if d.kind == "missing"]
+    assert [(d.channels, d.bars) for d in doubts] == [(("input_power",), False)]
+    told = log_of(columns, table=table, doubts=[Doubt("missing", "", channels=("input_power",))])
+    assert not [d for d in found(told) if d.kind == "missing"]
+
+
+def test_ratings_unknown_is_no_fault():
+    """`inspect` without a limits file."""
+    assert check_health(log_of(sweep())) == ()

@@ -1,0 +1,466 @@
+"""The report as a whole: what it says, where it says it, and that nothing a record holds can break it."""
+
+from __future__ import annotations
+
+import io
+import re
+from collections.abc import Iterator
+from dataclasses import replace
+
+import pytest
+import report_records as records
+from pypdf import PdfReader
+
+from acceptance.errors import ReportError
+from acceptance.record import BudgetLine, Hazard, Record
+from acceptance.report.build import report_pdf, write_report
+from acceptance.report.fonts import string_width
+from acceptance.report.method import decision_text
+from acceptance.report.pen import Pen
+from acceptance.report.sources import hash_in_fours, unprintable
+from acceptance.report.style import LEFT, PAGE, WIDTH, Type
+
+EVERY = ["typical", "every_verdict", "several_outputs", "nasty", "many_findings", "empty", "degenerate"]
+
+
+def make(name: str) -> Record:
+    made: Record = getattr(records, name)()
+    return made
+
+
+def reader(record: Record) -> PdfReader:
+    return PdfReader(io.BytesIO(report_pdf(record)))
+
+
+def text_of(record: Record) -> str:
+    """The text of all pages, its spaces as one."""
+    return " ".join(" ".join(page.extract_text() for page in reader(record).pages).split())
+
+
+def bare(text: str) -> str:
+    return re.sub(r"\s+", "", text)
+
+
+@pytest.fixture
+def drawn(monkeypatch: pytest.MonkeyPatch) -> list[list[tuple[float, float, float, str, Type]]]:
+    """Every string as it is drawn, page by page: left, right, baseline, text, look."""
+    pages: list[list[tuple[float, float, float, str, Type]]] = [[]]
+    draw, end = Pen.text, Pen.end_page
+
+    def text(self: Pen, x: float, y: float, text: str, style: Type, *, align: str = "left") -> None:
+        wide = string_width(text, style.size, style.weight)
+        left = x - {"left": 0.0, "right": wide, "centre": wide / 2}[align]
+        seen = string_width(text.rstrip(" "), style.size, style.weight)
+        pages[-1].append((left, left + seen, y, text, style))
+        draw(self, x, y, text, style, align=align)  # type: ignore[arg-type]
+
+    def end_page(self: Pen) -> None:
+        pages.append([])
+        end(self)
+
+    monkeypatch.setattr(Pen, "text", text)
+    monkeypatch.setattr(Pen, "end_page", end_page)
+    return pages
+
+
+# -- what it says
+
+
+def test_report_states_who_what_when_and_against_what():
+    """Issuer, product, revision, serial, dates, files, hashes, number."""
+    record = make("typical")
+
+    text = text_of(record)
+
+    for part in (
+        "Tarnbeck Bench Works",
+        "Acceptance test report",
+        "Bench rail 24, revision C serial A-17",
+        "2026-11-28",
+        "2026-11-30, 14:05 UTC",
+        "bench_rail_24.yaml",
+        "bench_2.yaml",
+        record.report_number,
+        "ACCEPTED",
+        "Performance limits only; no safety approval.",
+        "5 findings: 5 pass.",
+        "Probability that the unit meets all its limits together: 98.2 %.",
+        "230 V a.c. (207 V to 253 V), 50 Hz, class I",
+    ):
+        assert part in text
+
+
+def test_report_prints_values_limits_and_uncertainties():
+    """The findings table carries the record's numbers."""
+    text = text_of(make("typical"))
+
+    assert "eff-50 efficiency: load 50 %, input 230 V" in text
+    for part in ("≥ 88 %", "92.30 %", "0.36 %", "k = 1.98", "+4.30 %", "> 99.9 %", "≤ 210 mW", "148 mW", "58 mW"):
+        assert part in text
+    assert "23.52 V to 24.48 V" in text
+    assert "23.9376 V" in text
+
+
+def test_report_gives_the_whole_hash_of_every_file():
+    """SHA-256 in fours, none cut off."""
+    record = make("typical")
+
+    text = text_of(record)
+
+    limits = record.limits
+    for digest in (record.evidence[0].sha256, limits.sha256, limits.requirements_sha256, limits.bench_sha256):
+        assert hash_in_fours(digest) in text
+
+
+@pytest.mark.parametrize("name", ["typical", "every_verdict"])
+def test_report_loses_no_text_of_the_record(name):
+    """Every text the record holds stands in the report, whatever lines it was broken into."""
+    record = make(name)
+    drawn_text = bare(text_of(record))
+
+    wanted = [record.unit.serial, record.report_number, *record.notes.values(), *record.made_by.values()]
+    for finding in record.findings:
+        wanted += [finding.name, finding.condition, finding.reason, finding.note, finding.where, finding.formula]
+        wanted += [finding.characteristic.replace("_", " "), finding.verdict]
+        wanted += [line.source.replace("_", " ") for line in finding.budget] + [other.where for other in finding.others]
+        wanted += [deviation.text for deviation in finding.deviations]
+    for used in record.instruments:
+        wanted += [
+            used.device or "",
+            used.serial,
+            used.accuracy,
+            used.meter_range,
+            used.resolution,
+            used.due or "",
+            used.state,
+        ]
+    for doubt in record.health:
+        wanted += [doubt.kind, doubt.text, doubt.where, doubt.remedy]
+    wanted += [point.where for point in record.points] + [hazard.basis for hazard in record.hazards]
+    wanted += [figure.title for figure in record.figures]
+    for text in wanted:
+        assert bare(text) in drawn_text
+
+
+@pytest.mark.parametrize(
+    ("verdict", "word"), [("accepted", "ACCEPTED"), ("rejected", "REJECTED"), ("undecided", "UNDECIDED")]
+)
+def test_report_prints_each_verdict_in_words(verdict, word):
+    """The verdict's word stands on the first page, and no other one does."""
+    first = reader(replace(make("typical"), verdict=verdict)).pages[0].extract_text()
+
+    assert word in first
+    assert len(set(re.findall("ACCEPTED|REJECTED|UNDECIDED", first))) == 1
+
+
+def test_report_puts_the_deciding_reasons_on_the_first_page():
+    """Whoever reads a rejection sees why before anything else."""
+    record = make("every_verdict")
+
+    first = bare(reader(record).pages[0].extract_text())
+
+    for finding in record.findings:
+        if finding.verdict in ("fail", "not judged"):
+            assert bare(finding.name) in first
+            assert bare(finding.reason) in first
+
+
+def test_report_shows_every_kind_of_finding():
+    """Words for all five verdicts, a text as a value, and a value without uncertainty."""
+    text = text_of(make("every_verdict"))
+
+    for part in ("conditional pass", "conditional fail", "not judged", "constant current", "uncertainty not stated"):
+        assert part in text
+    assert "8 findings: 3 pass, 1 conditional pass, 1 conditional fail, 1 fail, 2 not judged." in text
+    assert "is not stated: not every finding has one" in text
+
+
+def test_report_names_cautions_of_the_hazards_only():
+    """The cautions follow the record's hazards; the general ones always stand."""
+    without = text_of(replace(make("typical"), hazards=[]))
+    with_mains = text_of(replace(make("typical"), hazards=[Hazard("mains", "230 V a.c.")]))
+
+    assert "Mains voltage." not in without
+    assert "Mains voltage." in with_mains
+    assert "Hot parts." not in with_mains
+    for text in (without, with_mains):
+        assert "Only qualified persons" in text
+        assert "Local codes" in text
+
+
+def test_report_gives_a_waiting_time_only_where_it_is_known():
+    """Without capacitance and bleeder the unit counts as charged until measured."""
+    unknown = text_of(replace(make("typical"), hazards=[Hazard("stored charge", "a.c. input")]))
+    known = text_of(replace(make("typical"), hazards=[Hazard("stored charge", "470 µF, 150 kohm", 128.0)]))
+
+    assert "Treat the unit as charged until it has been measured below 60 V" in unknown
+    assert "after 2 min 8 s" in known
+
+
+@pytest.mark.parametrize(
+    ("rule", "confidence", "required", "parts"),
+    [
+        ("simple", 0.95, None, ["up to 50 %"]),
+        ("guarded", 0.95, 0.975, ["at least 97.5 %", "at most 2.5 %"]),
+        ("guarded", 0.99, 0.995, ["at least 99.5 %", "at most 0.5 %"]),
+        ("conditional", 0.90, 0.95, ["at least 95 %", "at most 5 %", "undecided"]),
+    ],
+)
+def test_decision_text_states_the_risk_of_the_rule(rule, confidence, required, parts):
+    """The risk follows from the record's rule and confidence."""
+    decision = replace(make("typical").decision, rule=rule, confidence=confidence, required_probability=required)
+
+    for part in parts:
+        assert part in decision_text(decision)
+
+
+def test_budget_counts_the_sources_that_hardly_matter():
+    """Large ones first, each with its share; the small ones as a number, with the largest of their contributions."""
+    record = make("typical")
+    lines = [
+        BudgetLine("converter", "B", 2e-6, 0.0001, None),
+        BudgetLine("shunt", "B", 9e-5, 0.20, None),
+        BudgetLine("meter", "B", 1.8e-4, 0.80, 2.5e6),
+        BudgetLine("leads", "B", 4e-6, 0.0004, None),
+    ]
+
+    text = text_of(replace(record, findings=[replace(record.findings[0], budget=lines)]))
+
+    assert (
+        "meter B 0.018 % 80.0 % > 10 000 shunt B 0.0090 % 20.0 % ∞ 2 further sources ≤ 0.00040 % < 0.1 % each" in text
+    )
+
+
+def test_report_ends_with_sign_off_on_one_page():
+    """Three roles, what the results relate to, and the end mark, together."""
+    for name in ("typical", "every_verdict", "many_findings"):
+        last = " ".join(reader(make(name)).pages[-1].extract_text().split())
+        for part in ("Tested", "Reviewed", "Approved", "Signature", "Not signed off", "relate only to the unit tested"):
+            assert part in last
+        assert "End of report 7C1E-04B9-E2D5" in last
+
+
+def test_report_of_several_outputs_prints_every_channel():
+    """Wide tables are split; each channel's heading and last reading are there."""
+    record = records.several_outputs(6)
+
+    text = bare(text_of(record))
+
+    for output in record.ratings.outputs:
+        assert bare(f"output voltage {output.name}") in text
+    for name, reading in record.points[-1].channels.items():
+        if name.startswith("output_voltage"):
+            assert f"{reading.value}".replace("-", "−")[:5] in text
+
+
+def test_report_of_an_empty_record_says_so():
+    """No findings, no points, no figures: still a whole report."""
+    text = text_of(make("empty"))
+
+    assert "The record holds no findings." in text
+    assert "None are recorded." in text
+    assert "UNDECIDED" in text
+    assert "Figures" not in text
+
+
+# -- how it is made
+
+
+@pytest.mark.parametrize("name", EVERY)
+def test_every_page_has_its_number_and_the_report_number(name):
+    """Page x of y, report number, and the state of sign-off on each."""
+    record = make(name)
+    pages = reader(record).pages
+
+    for number, page in enumerate(pages, start=1):
+        text = " ".join(page.extract_text().split())
+        assert f"page {number} of {len(pages)}" in text
+        assert text.count(f"Report {record.report_number}") >= 2
+        assert "Not signed off" in text
+        assert "Tarnbeck Bench Works" in text
+
+
+@pytest.mark.parametrize("name", EVERY)
+def test_nothing_is_drawn_outside_the_text_area(name, drawn):
+    """No string is clipped by an edge or runs out of its page."""
+    report_pdf(make(name))
+
+    for page in drawn:
+        for left, right, baseline, text, _ in page:
+            assert left >= LEFT - 0.5, text
+            assert right <= LEFT + WIDTH + 0.5, text
+            assert 30 <= baseline <= PAGE[1] - 36, text
+
+
+@pytest.mark.parametrize("name", ["typical", "every_verdict", "several_outputs", "nasty", "many_findings", "empty"])
+def test_no_two_strings_overlap(name, drawn):
+    """Lines keep their distance, cells stay in their columns."""
+    record = make(name)
+    if name == "nasty":  # labels of a hundred characters in a chart may cover one another
+        record = replace(record, figures=[])
+
+    report_pdf(record)
+
+    for page in drawn:
+        for (left, right, low, text, style), (left2, right2, low2, text2, _) in _pairs(page):
+            beside = right <= left2 + 0.3 or right2 <= left + 0.3
+            apart = abs(low - low2) >= 0.7 * style.size
+            assert beside or apart or not text.strip() or not text2.strip(), (text, text2)
+
+
+def _pairs(page: list) -> Iterator[tuple[tuple, tuple]]:
+    """Pairs of strings that are near enough in height to touch."""
+    ordered = sorted(page, key=lambda item: item[2])
+    for place, one in enumerate(ordered):
+        for other in ordered[place + 1 :]:
+            if other[2] - one[2] > 14:
+                break
+            yield one, other
+
+
+@pytest.mark.parametrize("name", ["typical", "nasty", "empty"])
+def test_all_fonts_are_embedded(name):
+    """A reader's machine needs no font of ours, and none of its own is used."""
+    found = set()
+    for page in reader(make(name)).pages:
+        for entry in page["/Resources"]["/Font"].values():
+            font = entry.get_object()
+            found.add(str(font["/BaseFont"]))
+            assert "/FontFile2" in font["/FontDescriptor"].get_object()
+
+    assert found
+    assert all("SourceSansPro" in name for name in found)
+
+
+def test_report_is_the_same_for_the_same_record():
+    """Byte for byte; and another time of judging shows."""
+    record = make("every_verdict")
+
+    assert report_pdf(record) == report_pdf(make("every_verdict"))
+    assert report_pdf(record) != report_pdf(replace(record, judged_at="2026-12-01T08:00:00Z"))
+
+
+def test_report_describes_itself():
+    """Title, author, subject, language and the time of the decision."""
+    made = reader(make("typical"))
+    info = made.metadata
+
+    assert info is not None
+    assert info.title == "Acceptance test report 7C1E-04B9-E2D5: Bench rail 24, serial A-17"
+    assert info.author == "Tarnbeck Bench Works"
+    assert "accepted" in str(info.subject)
+    assert info.get("/CreationDate") == "D:20261130140509Z"
+    assert made.trailer["/Root"]["/Lang"] == "en-GB"
+
+
+# -- what a record may hold
+
+
+@pytest.mark.parametrize(
+    "text", ['<img src="x">', "<para>", "&", "&amp;", "]]>", "=1+1", "(((", "\\", "a\\)b", "</b>", "%s {0}"]
+)
+def test_texts_are_drawn_as_they_are(text):
+    """Markup of any kind is nothing but text, in the serial and everywhere else."""
+    record = make("typical")
+    hostile = replace(
+        record,
+        unit=replace(record.unit, serial=text),
+        findings=[replace(record.findings[0], name=text, verdict="fail", reason=f"because {text}")],
+        notes={"note": text},
+    )
+
+    drawn_text = text_of(hostile)
+
+    assert f"serial {text}" in drawn_text
+    assert f"because {text}" in drawn_text
+
+
+@pytest.mark.parametrize(
+    ("text", "shown"),
+    [
+        ("a\x00b", "a■b"),
+        ("line\nbreak", "line■break"),
+        ("\u202eABC", "■ABC"),
+        ("電源-17", "■■-17"),
+        ("\N{FIRE} 9", "■ 9"),
+        ("zero\u200bwidth", "zero■width"),
+        ("\ud800", "■"),
+    ],
+)
+def test_what_cannot_be_printed_is_replaced_and_listed(text, shown):
+    """A box for each such character, and the record's own notation near the end."""
+    record = make("typical")
+    odd = replace(record, unit=replace(record.unit, serial=text))
+
+    drawn_text = text_of(odd)
+
+    assert f"serial {shown}" in drawn_text
+    assert "Some characters cannot be printed" in drawn_text
+    assert unprintable(odd) == [text]
+    escaped = text.encode("utf-16-be", "surrogatepass").hex()
+    assert f"\\u{escaped[:4]}" in drawn_text or text[0].isascii()
+
+
+def test_printable_letters_beyond_ascii_are_kept():
+    """Accents, Greek, Cyrillic, signs; a decomposed accent is composed."""
+    record = make("typical")
+    named = replace(record, notes={"operator": "Žofia Ő. Δη → Яков ½ µΩ", "place": "Cafe\u0301"})
+
+    text = text_of(named)
+
+    assert "Žofia Ő. Δη → Яков ½ µΩ" in text
+    assert "Café" in text
+    assert "Some characters cannot be printed" not in text
+
+
+def test_a_serial_without_spaces_is_wrapped_whole():
+    """300 characters, each of them on the page."""
+    serial = "".join(f"{n:03d}" for n in range(100))
+    record = make("typical")
+
+    first = reader(replace(record, unit=replace(record.unit, serial=serial))).pages[0].extract_text()
+
+    assert serial in bare(first)
+
+
+def test_a_reason_longer_than_a_page_goes_on():
+    """Thousands of words: pages are added, none is lost, and the end mark still comes last."""
+    words = " ".join(f"w{n:05d}" for n in range(4000))
+    record = make("every_verdict")
+    findings = [replace(record.findings[0], verdict="fail", reason=words)]
+
+    text = text_of(replace(record, findings=findings))
+
+    for n in range(0, 4000, 97):
+        assert text.count(f"w{n:05d}") == 2  # on the front and beneath the table
+
+
+def test_two_hundred_findings_are_all_there():
+    """Each once in the table, with the head repeated on its pages."""
+    record = make("many_findings")
+
+    pages = [" ".join(page.extract_text().split()) for page in reader(record).pages]
+
+    text = " ".join(pages)
+    for finding in record.findings:
+        assert finding.name in text
+    assert sum("Finding Limit Value U Margin Conformity Verdict" in page for page in pages) > 5
+
+
+# -- as a file
+
+
+def test_write_report_writes_the_whole_file(tmp_path):
+    """The path comes back, folders are made, nothing else is left."""
+    path = write_report(make("typical"), tmp_path / "out" / "A-17.report.pdf")
+
+    assert path.read_bytes() == report_pdf(make("typical"))
+    assert [each.name for each in path.parent.iterdir()] == ["A-17.report.pdf"]
+
+
+def test_write_report_says_where_it_cannot_write(tmp_path):
+    """A file where the folder should be."""
+    (tmp_path / "out").write_text("in the way")
+
+    with pytest.raises(ReportError, match="cannot be written"):
+        write_report(make("typical"), tmp_path / "out" / "A-17.report.pdf")
