@@ -105,7 +105,7 @@ def _one(log: BenchLog, dwell: Dwell, number: int, keys: Sequence[str]) -> Dwell
 
 def log_block(log: BenchLog) -> str:
     """A `log:` block for a limits or bench file: what was assumed, said, and what was not understood, asked."""
-    told = [_choice(channel) for channel in log.channels if channel.unit_from == "assumed"]
+    told = [_choice(channel) for channel in log.channels if channel.unit_from == "assumed" and channel.unit]
     there = {channel.quantity for channel in log.channels} | set(log.stated)
     missing = [quantity for quantity in _WANTED if quantity not in there]
     left_out = dict.fromkeys(one.what for one in log.ignored if one.what.startswith("column"))

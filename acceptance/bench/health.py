@@ -7,23 +7,18 @@ coarse converter, a quiet dwell and a zero current stand still for good reasons.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from collections.abc import Iterator, Mapping
 
 import numpy as np
 from numpy.typing import NDArray
 
 from acceptance.bench.log import BenchLog, Doubt, Span
+from acceptance.bench.standstill import Trace, Values, clipped, frozen, place_of, runs_of, words_of
 
 __all__ = ["check_health"]
 
-Values = NDArray[np.float64]
-
 _GAP_STEPS = 5.0  # a gap is a step this many times the median step
 _COARSE_SHARE = 0.01  # repeated times beyond this share are no accident
-_FROZEN_RUN = 50  # samples
-_CLIPPED_RUN = 5
-_NOISE_STEPS = 3.0  # second differences (2.4 sigma) of this many resolution steps: then a run of equals is no chance
 _LISTED = 200  # spans kept of one doubt without a bar
 
 _ANALOGUE = ("input_voltage", "input_current", "input_power", "output_voltage", "output_current", "ripple")
@@ -60,10 +55,10 @@ def check_health(
     for key in log.samples.columns:
         quantity = key.partition(" ")[0]
         if quantity in _ANALOGUE:
-            channel = _Channel(log, key, _values(log, key), _driver(log, key))
-            doubts += _clipped(channel, tables)
+            channel = Trace(log, key, _values(log, key), _driver(log, key))
+            doubts += clipped(channel, tables)
             if quantity in _PLACED:
-                doubts += _frozen(channel, tables)
+                doubts += frozen(channel, tables)
     doubts += _missing(log)
     doubts += _no_input_power(log, supply)
     doubts += _swapped(log, rated, rated_input_voltage)
@@ -83,15 +78,6 @@ def _tables(log: BenchLog) -> Iterator[Span]:
 
 def _values(log: BenchLog, key: str) -> Values:
     return log.samples[key].to_numpy(np.float64)
-
-
-def _where(log: BenchLog, row: int) -> str:
-    name, first, _ = log.rows_of((row, row + 1))
-    return f"{name}:{first}"
-
-
-def _words(key: str) -> str:
-    return key.replace("_", " ")
 
 
 def _quantity_keys(log: BenchLog) -> tuple[str, ...]:
@@ -121,7 +107,7 @@ def _clock_doubts(log: BenchLog, table: Span) -> Iterator[Doubt]:
     if back.size:
         row = table[0] + int(back[0])
         count = "once" if back.size == 1 else f"{back.size} times"
-        text = f"time runs backwards {count}, first after {_where(log, row)} by {-step[back[0]]:.6g} s"
+        text = f"time runs backwards {count}, first after {place_of(log, row)} by {-step[back[0]]:.6g} s"
         remedy = "write each run of the logger into a file of its own"
         channels = (*_quantity_keys(log), "time")
         yield Doubt("backward time", text, bars=True, channels=channels, spans=(table,), remedy=remedy)
@@ -138,8 +124,8 @@ def _repeated(log: BenchLog, table: Span, step: Values) -> Iterator[Doubt]:
     same = np.flatnonzero(step == 0)
     if not same.size:
         return
-    first, last = _runs(step == 0)
-    where = _where(log, table[0] + int(first[0]))
+    first, last = runs_of(step == 0)
+    where = place_of(log, table[0] + int(first[0]))
     text = f"{same.size} samples carry the time of the one before, first after {where}"
     lengths = np.diff(np.flatnonzero(np.concatenate(([True], step != 0, [True]))))
     typical = float(np.median(lengths))
@@ -167,179 +153,11 @@ def _gaps(log: BenchLog, table: Span, step: Values) -> Iterator[Doubt]:
     if not rows.size:
         return
     longest = rows[np.argmax(step[rows])]
-    where = _where(log, table[0] + int(longest))
+    where = place_of(log, table[0] + int(longest))
     gaps = "1 gap" if rows.size == 1 else f"{rows.size} gaps"
     text = f"{gaps} in the time; the longest, {step[longest]:.6g} s at steps of {median:.6g} s, is after {where}"
     spans = tuple((table[0] + int(row), table[0] + int(row) + 1) for row in rows)
     yield Doubt("gap", text, channels=("time",), spans=spans, remedy="dwells end at a gap")
-
-
-def _runs(mask: NDArray[np.bool_]) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
-    """First and last + 1 of every stretch of True."""
-    edges = np.flatnonzero(np.diff(np.concatenate(([False], mask, [False])).view(np.int8)))
-    return edges[::2], edges[1::2]
-
-
-# --- readings that stand still --------------------------------------------------------------------------------------
-
-
-@dataclass(frozen=True, slots=True)
-class _Channel:
-    log: BenchLog
-    key: str
-    values: Values
-    driver: Values | None  # the load, where another channel tells it
-
-
-def _resolution(values: Values) -> float:
-    """The smallest step between two readings; 0 where all are equal."""
-    sample = values[np.isfinite(values)]
-    if sample.size > 20_000:
-        sample = sample[:20_000]
-    levels = np.unique(sample)
-    if levels.size < 2:
-        return 0.0
-    steps = np.diff(levels)
-    # converting units leaves equal readings a rounding apart
-    steps = steps[steps > 1e-9 * max(abs(levels[0]), abs(levels[-1]))]
-    return float(steps.min()) if steps.size else 0.0
-
-
-def _noise(values: Values, mask: NDArray[np.bool_]) -> tuple[float, int]:
-    """Median second difference over three marked neighbours, and how many there are; a ramp has none."""
-    if values.size < 3:
-        return 0.0, 0
-    whole = mask[:-2] & mask[1:-1] & mask[2:]
-    second = np.abs(values[:-2] - 2 * values[1:-1] + values[2:])[whole]
-    second = second[np.isfinite(second)]
-    return (float(np.median(second)), second.size) if second.size else (0.0, 0)
-
-
-def _clipped(channel: _Channel, tables: Sequence[Span]) -> Iterator[Doubt]:
-    """A converter at the end of its range: the extreme reading stands still where others of its size move.
-
-    Zero is no rail: a current is 0.000 at no load. A quiet voltage at no load is none either.
-    """
-    values = channel.values
-    finite = np.isfinite(values)
-    if values.size < 2 * _CLIPPED_RUN or not finite.any():
-        return
-    top, bottom = (
-        float(np.max(values, where=finite, initial=-np.inf)),
-        float(np.min(values, where=finite, initial=np.inf)),
-    )
-    if top == bottom:
-        return
-    for rail in (top, bottom):
-        if abs(rail) <= 0.02 * max(abs(top), abs(bottom)):
-            continue
-        at_rail = values == rail
-        if np.count_nonzero(at_rail) < max(_CLIPPED_RUN, 0.01 * values.size):
-            continue
-        spans = _clipped_spans(channel, at_rail, tables)
-        if spans:
-            count = sum(b - a for a, b in spans)
-            where = f"{count} samples, first at {_where(channel.log, spans[0][0])}"
-            extreme = "largest" if rail == top else "smallest"
-            text = f"{_words(channel.key)} stands at its {extreme} value {rail:.6g} in {where}"
-            text += ", while its other readings vary: clipped"
-            remedy = "measure again in a higher range"
-            yield Doubt("clipped", text, bars=True, channels=(channel.key,), spans=spans, remedy=remedy)
-
-
-def _clipped_spans(channel: _Channel, at_rail: NDArray[np.bool_], tables: Sequence[Span]) -> tuple[Span, ...]:
-    need = max(_CLIPPED_RUN, 0.01 * at_rail.size)
-    step = _resolution(channel.values)
-    found: list[Span] = []
-    for a, b in tables:
-        values, mask = channel.values[a:b], at_rail[a:b]
-        noise, count = _noise(values, ~mask)
-        if (
-            count < 20
-            or step == 0
-            or noise < _NOISE_STEPS * step
-            or noise > 0.2 * abs(values[mask][0] if mask.any() else 1.0)
-        ):
-            continue
-        first, last = _runs(mask)
-        long = last - first >= need
-        if not long.any() or not _is_loaded(channel, a, first[long], last[long]):
-            continue
-        piled = last - first >= _CLIPPED_RUN
-        found += [(a + int(i), a + int(j)) for i, j in zip(first[piled], last[piled], strict=True)]
-    return tuple(found)
-
-
-def _is_loaded(channel: _Channel, start: int, first: NDArray[np.intp], last: NDArray[np.intp]) -> bool:
-    """Whether the unit carried a load there; at no load a reading may be quiet for good reason."""
-    if channel.driver is None:
-        return True
-    top = float(np.nanmax(np.abs(channel.driver), initial=0.0))
-    loads = [np.nanmedian(np.abs(channel.driver[start + i : start + j])) for i, j in zip(first, last, strict=True)]
-    return top == 0 or max(loads) >= 0.1 * top
-
-
-def _frozen(channel: _Channel, tables: Sequence[Span]) -> Iterator[Doubt]:
-    """A reading that stops moving amid readings of its own level that move, or while the load changes."""
-    values = channel.values
-    if values.size < 2 * _FROZEN_RUN:
-        return
-    half = _FROZEN_RUN // 2
-    if not (values[:-half:half] == values[half::half]).any():  # no long run without two such equals
-        return
-    step = _resolution(values)
-    scale = float(np.nanmax(np.abs(values), initial=0.0))
-    found: list[Span] = []
-    for a, b in tables:
-        part = values[a:b]
-        first, last = _runs(part[1:] == part[:-1])
-        long = last - first >= _FROZEN_RUN - 1
-        runs = [(int(i), int(j) + 1) for i, j in zip(first[long], last[long], strict=True)]
-        runs = [run for run in runs if abs(part[run[0]]) > 0.01 * scale]
-        if not runs or step == 0 or len(runs) > 8:  # so many are the unit's manner, such as bursts at no load
-            continue
-        still = np.zeros(part.size, bool)
-        for i, j in runs:
-            still[i:j] = True
-        driver = None if channel.driver is None else channel.driver[a:b]
-        found += [(a + i, a + j) for i, j in runs if _stopped(part, (i, j), still, driver, step)]
-    if found:
-        begin, end = found[0]
-        text = f"{_words(channel.key)} stands still at {values[begin]:.6g} for {end - begin} samples"
-        text += f" from {_where(channel.log, begin)}, while its other readings vary: frozen"
-        remedy = "look to the instrument and its logger, and measure again"
-        yield Doubt("frozen", text, bars=True, channels=(channel.key,), spans=tuple(found), remedy=remedy)
-
-
-def _stopped(part: Values, run: Span, still: NDArray[np.bool_], driver: Values | None, step: float) -> bool:
-    """Whether this run cannot be a quiet dwell: readings of its level have noise, and it does not end with the load."""
-    level = part[run[0]]
-    near = ~still & (np.abs(part - level) <= max(0.02 * abs(level), 20 * step))
-    noise, count = _noise(part, near)
-    if count < 20 or noise < _NOISE_STEPS * step:
-        return False
-    if driver is None:
-        return False
-    span = float(np.nanmax(driver, initial=-np.inf) - np.nanmin(driver, initial=np.inf))
-    inside = driver[run[0] : run[1]]
-    if not span > 0 or not np.isfinite(inside).all():
-        return False
-    edge = max(3, len(inside) // 20)
-    core = inside[edge:-edge] if len(inside) > 4 * edge else inside
-    if float(core.max() - core.min()) > 0.05 * span:
-        return True  # the load changed, and the reading did not
-    load = float(np.median(inside))
-    return any(
-        _noisy_neighbours(part, driver, rows, load, 0.02 * span, step)
-        for rows in ((max(0, run[0] - 24), run[0]), (run[1], min(part.size, run[1] + 24)))
-    )
-
-
-def _noisy_neighbours(part: Values, driver: Values, rows: Span, load: float, within: float, step: float) -> bool:
-    """Whether the samples beside a run, at the same load, have noise: then the run began amid a dwell."""
-    values, loads = part[rows[0] : rows[1]], driver[rows[0] : rows[1]]
-    noise, count = _noise(values, np.abs(loads - load) <= within)
-    return count >= 8 and noise >= _NOISE_STEPS * step
 
 
 # --- what is missing, and columns that cannot be what they say --------------------------------------------------------
@@ -359,7 +177,7 @@ def _missing(log: BenchLog) -> Iterator[Doubt]:
         logged = np.unique(table[~empty])
         rows = np.flatnonzero(empty & np.isin(table, logged))
         if rows.size:
-            text = f"{rows.size} readings of {_words(key)} missing, first at {_where(log, int(rows[0]))}"
+            text = f"{rows.size} readings of {words_of(key)} missing, first at {place_of(log, int(rows[0]))}"
             yield Doubt("missing", text, channels=(key,))
 
 
@@ -406,7 +224,9 @@ def _swapped(
         if abs(volts - amperes) > 0.3 * max(volts, amperes) and _mostly(
             (np.abs(i - volts) < 0.1 * volts) & (np.abs(v - volts) > 0.2 * volts) & (np.abs(v) < 1.5 * amperes)
         ):
-            text = f"{_words(voltage)} reads like a current, and {_words(current)} like the rated {volts:g} V: swapped"
+            text = (
+                f"{words_of(voltage)} reads like a current, and {words_of(current)} like the rated {volts:g} V: swapped"
+            )
             remedy = "say which column is which under log: columns:"
             yield Doubt("swapped", text, bars=True, channels=(voltage, current), remedy=remedy)
         elif rated_input_voltage is not None and "input_voltage" in log.samples:
@@ -425,7 +245,7 @@ def _ends_swapped(
         return
     v_in, v_out = _values(log, "input_voltage")[steady], _values(log, voltage)[steady]
     if _mostly(np.abs(v_in - volts) < 0.1 * volts) and _mostly(np.abs(v_out - rated_input) < 0.2 * rated_input):
-        text = f"input voltage reads like the rated {volts:g} V output, and {_words(voltage)} like the input: swapped"
+        text = f"input voltage reads like the rated {volts:g} V output, and {words_of(voltage)} like the input: swapped"
         remedy = "say which column is which under log: columns:"
         yield Doubt("swapped", text, bars=True, channels=("input_voltage", voltage), remedy=remedy)
 
@@ -500,7 +320,7 @@ def _scale_doubt(log: BenchLog, key: str, value: float, rating: float, symbol: s
     """A bar only where the unit was assumed: a written unit is the log's own word, and the unit may be faulty."""
     assumed = any(channel.key == key and channel.unit_from == "assumed" for channel in log.channels)
     rating_text = f"rated {rating:g} {symbol}".strip() if symbol else "at most 1"
-    text = f"{_words(key)} reads {value:.4g} {symbol}".rstrip() + f" against {rating_text}"
+    text = f"{words_of(key)} reads {value:.4g} {symbol}".rstrip() + f" against {rating_text}"
     text += ", and its unit was assumed" if assumed else ""
     return Doubt(
         "scale", text, bars=assumed, channels=(key,), remedy="write the unit into the heading or under log: columns:"

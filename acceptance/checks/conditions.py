@@ -13,7 +13,7 @@ from acceptance.points.point import Point, Points
 
 ANY: Literal["any"] = "any"
 
-__all__ = ["Condition", "condition_of", "load_tolerance", "matching", "missing_dwell"]
+__all__ = ["Condition", "condition_of", "load_tolerance", "matching", "missing_dwell", "share"]
 
 _LOAD_TOLERANCE = 0.02  # of rated current; half of it at 10 % and below
 _INPUT_TOLERANCE = 0.01  # of the input voltage
@@ -149,11 +149,16 @@ def describe(point: Point) -> str:
     words = []
     for output in point.limits.outputs:
         fraction = point.load_fraction(output)
-        told = "unknown" if fraction is None else f"{100 * fraction:.1f} %"
+        told = "unknown" if fraction is None else share(fraction)
         words.append(f"load {output} {told}" if several else f"load {told}")
     voltage = point.input_voltage()
     words.append("input unknown" if voltage is None else f"input {voltage:.4g} V")
     return ", ".join(words)
+
+
+def share(fraction: float) -> str:
+    """A measured load in per cent; what rounds to zero has no sign."""
+    return f"{round(100 * fraction, 1) + 0.0:.1f} %"
 
 
 def _distance(point: Point, condition: Condition) -> float:

@@ -15,6 +15,7 @@ from acceptance.checks.conditions import (
     meets_load,
     missing_dwell,
     output_of,
+    share,
 )
 from acceptance.checks.figures import voltage_figures
 from acceptance.checks.outcome import Candidate, CheckResult, Outcome, Used
@@ -131,7 +132,7 @@ def _is_between(point: Point, output: str, span: tuple[float, float]) -> bool:
 
 
 def _load_role(point: Point, output: str) -> str:
-    return f"load {100 * (point.load_fraction(output) or 0.0):.1f} %"
+    return f"load {share(point.load_fraction(output) or 0.0)}"
 
 
 def _input_role(point: Point, output: str) -> str:

@@ -287,13 +287,28 @@ def _draw_series(pen: Pen, series: Series, place: int, axes: tuple[LinearAxis, L
             _draw_mark(pen, place, points[0])
         return
     points = [(horizontal.place(x), vertical.place(y)) for x, y in zip(series.x, series.y, strict=True)]
-    apart = 0.01 * (horizontal.high - horizontal.low)
-    # points at one place, or going back, are different runs: a line would join what does not belong together
-    if all(b - a > apart for a, b in zip(series.x, series.x[1:], strict=False)):
-        pen.line(points, colour, 0.7, dash=_DASHES[place % len(_DASHES)])
+    pen.line(_curve(points, axes), colour, 0.7, dash=_DASHES[place % len(_DASHES)])
     _draw_bars(pen, series, points, vertical, colour)
     for point in points:
         _draw_mark(pen, place, point)
+
+
+def _curve(points: Sequence[tuple[float, float]], axes: tuple[LinearAxis, LinearAxis]) -> list[tuple[float, float]]:
+    """The line that leads the eye from mark to mark; none where marks at one place lie far apart.
+
+    Repeated readings at one place are led through in their middle; marks that differ there belong to different
+    conditions, which a line must not join.
+    """
+    near, alike = 0.012 * abs(axes[0].end - axes[0].start), 0.08 * abs(axes[1].end - axes[1].start)
+    groups: list[list[tuple[float, float]]] = []
+    for point in sorted(points):
+        if groups and point[0] - groups[-1][0][0] <= near:
+            groups[-1].append(point)
+        else:
+            groups.append([point])
+    if any(max(y for _, y in group) - min(y for _, y in group) > alike for group in groups):
+        return []
+    return [(sum(x for x, _ in group) / len(group), sum(y for _, y in group) / len(group)) for group in groups]
 
 
 def _draw_bars(

@@ -73,12 +73,7 @@ def _places(listed: Sequence[Point], *, told: bool) -> Table:
         Row(
             [
                 str(point.index + 1),
-                Cell(
-                    [
-                        Run(fold(point.where), CELL),
-                        *([Run(fold(point.found_by.replace("_", " ")), CELL_MUTED)] if told else []),
-                    ]
-                ),
+                _place(point, told=told),
                 fold(point.stage),
                 quantity(point.starts, "s", digits=6),
                 duration(point.duration),
@@ -90,6 +85,11 @@ def _places(listed: Sequence[Point], *, told: bool) -> Table:
         for point in listed
     ]
     return Table(columns, rows, above=3)
+
+
+def _place(point: Point, *, told: bool) -> Cell:
+    found_by = fold(point.found_by.replace("_", " "))
+    return Cell([Run(fold(point.where), CELL), *([Run(found_by, CELL_MUTED)] if told and found_by else [])])
 
 
 def _effective(point: Point) -> str:

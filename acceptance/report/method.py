@@ -5,7 +5,7 @@ from __future__ import annotations
 from acceptance.printing import MINUS, quantity, with_uncertainty
 from acceptance.record import BudgetLine, DecisionRule, Finding, Record
 from acceptance.report.blocks import Block, Text, heading, subheading
-from acceptance.report.style import BODY, BODY_BOLD, CELL, CELL_BOLD, CELL_MUTED, SMALL, WIDTH
+from acceptance.report.style import BODY, BODY_BOLD, CELL, CELL_BOLD, CELL_MUTED, SMALL, WIDTH, Type
 from acceptance.report.table import Cell, Column, Row, Table
 from acceptance.report.wrap import Run, fold
 
@@ -130,7 +130,8 @@ def _formed(finding: Finding) -> Row:
 # -- budgets
 
 
-_SMALL_SHARE = 0.001  # of the variance; sources below it are counted, and kept in the record
+_COMPACT = Type(7.8, 9.4)
+_SMALL_SHARE = 0.01  # of the variance; sources below it are counted, and kept in the record
 
 
 def budgets(record: Record) -> list[Block]:
@@ -149,9 +150,13 @@ def budgets(record: Record) -> list[Block]:
     note = (
         "Contribution: standard uncertainty it brings to the value. Type A: from the scatter of samples; B: from what "
         "is known of the instrument. ν: degrees of freedom, ∞ where none are given. A negative share is a correlation "
-        "that takes uncertainty away. Sources of less than 0.1 % of the variance are counted; the record holds them."
+        "that takes uncertainty away. Sources of less than 1 % of the variance are counted; the record holds them."
     )
-    return [heading("Uncertainty budgets"), Text(note, SMALL, above=1, keep_next=True), Table(columns, rows, above=3)]
+    return [
+        heading("Uncertainty budgets"),
+        Text(note, SMALL, above=1, keep_next=True),
+        Table(columns, rows, above=3, style=_COMPACT),
+    ]
 
 
 def _group(finding: Finding) -> Row:
@@ -168,7 +173,7 @@ def _lines(finding: Finding) -> list[Row]:
     rows = [_line(line, finding.unit) for line in shown]
     if len(shown) < len(ordered):
         most = max(small, key=lambda line: abs(line.contribution))
-        texts = [f"{len(small)} further sources", "", f"≤ {_contribution(most, finding.unit)}", "< 0.1 % each", ""]
+        texts = [f"{len(small)} further sources", "", f"≤ {_contribution(most, finding.unit)}", "< 1 % each", ""]
         rows.append(Row([Cell([Run(text, CELL_MUTED)]) for text in texts]))
     return rows
 

@@ -175,7 +175,6 @@ def junk(folder: Path) -> dict[str, Path]:
         "binary.csv": bytes(range(256)) * 40,
         "prose.csv": b"Dear customer,\n\nwe have looked at your supply and found it in order.\n",
         "cut.xlsx": b"PK\x03\x04" + b"\x00" * 400,
-        "not.xlsx": b"Vin,Pin\n1,2\n",
         "heads.csv": b"Vin,Pin,Vout,Iout\n",
         "nan.csv": b"Vin,Pin,Vout,Iout\n" + b"NaN,NaN,NaN,NaN\n" * 20,
         "wide.csv": b",".join(b"c%d" % i for i in range(100_000)) + b"\n" + b",".join([b"1"] * 100_000) + b"\n",

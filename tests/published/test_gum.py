@@ -13,8 +13,8 @@ from acceptance.points.instrument import Bench, converter_step_uncertainty, rect
 from acceptance.points.propagation import (
     Source,
     budget,
-    coverage_factor,
     covariance,
+    coverage_factor,
     effective_degrees_of_freedom,
     expanded,
     nominal,

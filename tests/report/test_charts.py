@@ -14,7 +14,7 @@ from acceptance.record import Axis, Figure, LimitLine, Series
 from acceptance.report.axes import axis_for, decimate, nice_step
 from acceptance.report.charts import Chart
 from acceptance.report.pen import Pen
-from acceptance.report.style import RED
+from acceptance.report.style import ACCENT, RED
 
 PLAIN = Scale(0, "V")
 
@@ -185,3 +185,20 @@ def test_points_that_are_no_numbers_are_counted_not_hidden(lines):
     Chart(Figure("f", "f", Axis("x", "A"), Axis("y", "V"), series), 240.0).draw(Pen(None), 0.0, 700.0)
 
     assert any(text.startswith("2 points of the record") for _, _, text in lines.texts)
+
+
+def test_curve_joins_repeats_and_not_what_differs(lines):
+    """A repeated place is led through in the middle; two conditions at one place are not joined."""
+
+    def curve(ys: list[float]) -> list[tuple[float, float]]:
+        lines.strokes.clear()
+        lines.circles.clear()
+        series = [Series("a", [1.0, 0.0, 0.5, 1.0], ys, [None] * 4)]
+        Chart(Figure("f", "f", Axis("x", "A"), Axis("y", "V"), series), 240.0).draw(Pen(None), 0.0, 700.0)
+        return [points for points, colour in lines.strokes if colour == ACCENT][0]
+
+    joined = curve([3.00, 1.0, 2.0, 3.02])
+    assert [x for x, _ in joined] == sorted(x for x, _ in joined)
+    assert len(joined) == 3
+    assert joined[-1][1] == pytest.approx((lines.circles[0][1] + lines.circles[3][1]) / 2)
+    assert curve([3.0, 1.0, 2.0, 1.5]) == []

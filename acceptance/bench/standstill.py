@@ -1,0 +1,201 @@
+"""Readings that stand still where they are known to move: a clipped converter, a frozen instrument.
+
+A coarse converter, a quiet dwell and a zero current stand still for good reasons, so both checks first ask
+for noise: at the reading's own level, and beside the run itself at the same load.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from acceptance.bench.log import BenchLog, Doubt, Span
+
+__all__ = ["Trace", "Values", "clipped", "frozen", "place_of", "runs_of", "words_of"]
+
+Values = NDArray[np.float64]
+
+_FROZEN_RUN = 50  # samples
+_CLIPPED_RUN = 5
+_NOISE_STEPS = 3.0  # second differences (2.4 sigma) of this many resolution steps: then a run of equals is no chance
+
+
+def place_of(log: BenchLog, row: int) -> str:
+    """Table and line of a sample."""
+    name, first, _ = log.rows_of((row, row + 1))
+    return f"{name}:{first}"
+
+
+def words_of(key: str) -> str:
+    """A channel's key in words."""
+    return key.replace("_", " ")
+
+
+def runs_of(mask: NDArray[np.bool_]) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
+    """First and last + 1 of every stretch of True."""
+    edges = np.flatnonzero(np.diff(np.concatenate(([False], mask, [False])).view(np.int8)))
+    return edges[::2], edges[1::2]
+
+
+@dataclass(frozen=True, slots=True)
+class Trace:
+    """One channel of a log, with what tells that its load changed."""
+
+    log: BenchLog
+    key: str
+    values: Values
+    driver: Values | None  # the load, where another channel tells it
+
+
+def _resolution(values: Values) -> float:
+    """The smallest step between two readings; 0 where all are equal."""
+    sample = values[np.isfinite(values)]
+    if sample.size > 20_000:
+        sample = sample[:20_000]
+    levels = np.unique(sample)
+    if levels.size < 2:
+        return 0.0
+    steps = np.diff(levels)
+    # converting units leaves equal readings a rounding apart
+    steps = steps[steps > 1e-9 * max(abs(levels[0]), abs(levels[-1]))]
+    return float(steps.min()) if steps.size else 0.0
+
+
+def _noise(values: Values, mask: NDArray[np.bool_]) -> tuple[float, int]:
+    """Median second difference over three marked neighbours, and how many there are; a ramp has none."""
+    if values.size < 3:
+        return 0.0, 0
+    whole = mask[:-2] & mask[1:-1] & mask[2:]
+    second = np.abs(values[:-2] - 2 * values[1:-1] + values[2:])[whole]
+    second = second[np.isfinite(second)]
+    return (float(np.median(second)), second.size) if second.size else (0.0, 0)
+
+
+def clipped(channel: Trace, tables: Sequence[Span]) -> Iterator[Doubt]:
+    """A converter at the end of its range: the extreme reading stands still where others of its size move.
+
+    Zero is no rail: a current is 0.000 at no load. A quiet voltage at no load is none either.
+    """
+    values = channel.values
+    finite = np.isfinite(values)
+    if values.size < 2 * _CLIPPED_RUN or not finite.any():
+        return
+    top, bottom = (
+        float(np.max(values, where=finite, initial=-np.inf)),
+        float(np.min(values, where=finite, initial=np.inf)),
+    )
+    if top == bottom:
+        return
+    for rail in (top, bottom):
+        if abs(rail) <= 0.02 * max(abs(top), abs(bottom)):
+            continue
+        at_rail = values == rail
+        if np.count_nonzero(at_rail) < max(_CLIPPED_RUN, 0.01 * values.size):
+            continue
+        spans = _clipped_spans(channel, at_rail, tables)
+        if spans:
+            count = sum(b - a for a, b in spans)
+            where = f"{count} samples, first at {place_of(channel.log, spans[0][0])}"
+            extreme = "largest" if rail == top else "smallest"
+            text = f"{words_of(channel.key)} stands at its {extreme} value {rail:.6g} in {where}"
+            text += ", while its other readings vary: clipped"
+            remedy = "measure again in a higher range"
+            yield Doubt("clipped", text, bars=True, channels=(channel.key,), spans=spans, remedy=remedy)
+
+
+def _clipped_spans(channel: Trace, at_rail: NDArray[np.bool_], tables: Sequence[Span]) -> tuple[Span, ...]:
+    need = max(_CLIPPED_RUN, 0.01 * at_rail.size)
+    step = _resolution(channel.values)
+    found: list[Span] = []
+    for a, b in tables:
+        values, mask = channel.values[a:b], at_rail[a:b]
+        noise, count = _noise(values, ~mask)
+        if (
+            count < 20
+            or step == 0
+            or noise < _NOISE_STEPS * step
+            or noise > 0.2 * abs(values[mask][0] if mask.any() else 1.0)
+        ):
+            continue
+        first, last = runs_of(mask)
+        long = last - first >= need
+        if not long.any() or not _is_loaded(channel, a, first[long], last[long]):
+            continue
+        piled = last - first >= _CLIPPED_RUN
+        found += [(a + int(i), a + int(j)) for i, j in zip(first[piled], last[piled], strict=True)]
+    return tuple(found)
+
+
+def _is_loaded(channel: Trace, start: int, first: NDArray[np.intp], last: NDArray[np.intp]) -> bool:
+    """Whether the unit carried a load there; at no load a reading may be quiet for good reason."""
+    if channel.driver is None:
+        return True
+    top = float(np.nanmax(np.abs(channel.driver), initial=0.0))
+    loads = [np.nanmedian(np.abs(channel.driver[start + i : start + j])) for i, j in zip(first, last, strict=True)]
+    return top == 0 or max(loads) >= 0.1 * top
+
+
+def frozen(channel: Trace, tables: Sequence[Span]) -> Iterator[Doubt]:
+    """A reading that stops moving amid readings of its own level that move, or while the load changes."""
+    values = channel.values
+    if values.size < 2 * _FROZEN_RUN:
+        return
+    half = _FROZEN_RUN // 2
+    if not (values[:-half:half] == values[half::half]).any():  # no long run without two such equals
+        return
+    step = _resolution(values)
+    scale = float(np.nanmax(np.abs(values), initial=0.0))
+    found: list[Span] = []
+    for a, b in tables:
+        part = values[a:b]
+        first, last = runs_of(part[1:] == part[:-1])
+        long = last - first >= _FROZEN_RUN - 1
+        runs = [(int(i), int(j) + 1) for i, j in zip(first[long], last[long], strict=True)]
+        runs = [run for run in runs if abs(part[run[0]]) > 0.01 * scale]
+        if not runs or step == 0 or len(runs) > 8:  # so many are the unit's manner, such as bursts at no load
+            continue
+        still = np.zeros(part.size, bool)
+        for i, j in runs:
+            still[i:j] = True
+        driver = None if channel.driver is None else channel.driver[a:b]
+        found += [(a + i, a + j) for i, j in runs if _stopped(part, (i, j), still, driver, step)]
+    if found:
+        begin, end = found[0]
+        text = f"{words_of(channel.key)} stands still at {values[begin]:.6g} for {end - begin} samples"
+        text += f" from {place_of(channel.log, begin)}, while its other readings vary: frozen"
+        remedy = "look to the instrument and its logger, and measure again"
+        yield Doubt("frozen", text, bars=True, channels=(channel.key,), spans=tuple(found), remedy=remedy)
+
+
+def _stopped(part: Values, run: Span, still: NDArray[np.bool_], driver: Values | None, step: float) -> bool:
+    """Whether this run cannot be a quiet dwell: readings of its level have noise, and it does not end with the load."""
+    level = part[run[0]]
+    near = ~still & (np.abs(part - level) <= max(0.02 * abs(level), 20 * step))
+    noise, count = _noise(part, near)
+    if count < 20 or noise < _NOISE_STEPS * step:
+        return False
+    if driver is None:
+        return False
+    span = float(np.nanmax(driver, initial=-np.inf) - np.nanmin(driver, initial=np.inf))
+    inside = driver[run[0] : run[1]]
+    if not span > 0 or not np.isfinite(inside).all():
+        return False
+    edge = max(3, len(inside) // 20)
+    core = inside[edge:-edge] if len(inside) > 4 * edge else inside
+    if float(core.max() - core.min()) > 0.05 * span:
+        return True  # the load changed, and the reading did not
+    load = float(np.median(inside))
+    return any(
+        _noisy_neighbours(part, driver, rows, load, 0.02 * span, step)
+        for rows in ((max(0, run[0] - 24), run[0]), (run[1], min(part.size, run[1] + 24)))
+    )
+
+
+def _noisy_neighbours(part: Values, driver: Values, rows: Span, load: float, within: float, step: float) -> bool:
+    """Whether the samples beside a run, at the same load, have noise: then the run began amid a dwell."""
+    values, loads = part[rows[0] : rows[1]], driver[rows[0] : rows[1]]
+    noise, count = _noise(values, np.abs(loads - load) <= within)
+    return count >= 8 and noise >= _NOISE_STEPS * step
