@@ -281,4 +281,5 @@ def _root(correlation: NDArray[np.float64]) -> NDArray[np.float64]:
     """A matrix whose square is the correlation, also where findings are one and the same value."""
     eigenvalues, vectors = np.linalg.eigh(correlation)
     # below zero only by rounding: a correlation matrix has none
-    return vectors * np.sqrt(np.clip(eigenvalues, 0.0, None))
+    root: NDArray[np.float64] = vectors * np.sqrt(np.clip(eigenvalues, 0.0, None))
+    return root

@@ -46,7 +46,7 @@ _STAMP = re.compile(
 class Times:
     """When each row was taken."""
 
-    seconds: NDArray[np.float64]  # from the first row that has a time; NaN where a cell is empty
+    seconds: NDArray[np.float64]  # as logged, or from the first row that has a clock; NaN where a cell is empty
     day: date | None = None  # of the first row, where dates are written
     started_at: datetime | None = None
     kind: str = "seconds"  # "seconds", "clock", "date and time"
@@ -387,6 +387,9 @@ def _past_midnight(seconds: NDArray[np.float64]) -> tuple[NDArray[np.float64], t
 
 
 def _from_first(seconds: NDArray[np.float64], kind: str, *, doubts: tuple[tuple[str, str], ...] = ()) -> Times:
+    """Clocks from the first row; plain seconds as they were logged, since they count from something that matters."""
+    if kind == "seconds":
+        return Times(seconds, kind=kind, doubts=doubts)
     known = np.flatnonzero(np.isfinite(seconds))
     start = seconds[known[0]] if known.size else 0.0
     return Times(seconds - start, kind=kind, doubts=doubts)

@@ -19,7 +19,8 @@ __all__ = ["Heading", "Vocabulary", "resolve_unit", "shown"]
 # Names and the trade's abbreviations, joints left out. Every word here has one meaning on a bench.
 _NAMES: dict[str, str] = {
     "time": "time t timestamp datetime clock elapsed elapsedtime timeelapsed testtime relativetime seconds zeit "
-    "zeitstempel uhrzeit date datum heure timeutc",
+    "zeitstempel uhrzeit date datum heure timeutc dateandtime datetimeutc date/time date&time dateheure datumuhrzeit "
+    "datumundzeit",
     "input_voltage": "inputvoltage voltagein voltageinput vinput uinput vin uin vi mainsvoltage "
     "eingangsspannung uein tensionentree tensiondentree tensiond'entrée tensiondentrée tensionentrée",
     "input_current": "inputcurrent currentin currentinput iinput iin eingangsstrom iein courantentree courantdentree "
@@ -76,7 +77,7 @@ _PEAK_TO_PEAK = re.compile(r"([mun\u00b5\u03bc]?V|mv|v|uv)[ _]?(pp|PP|p-p|pk-pk|
 _BRACKETS = re.compile(r"[(\[{]([^()\[\]{}]*)[)\]}]")
 _JOINT = re.compile(r"[\s_.\-]+")
 _FORMAT = re.compile(r"(?=.*[:\-/.])[hHmMsSyYdDTfF:./\-\s0]+|HH?MM?SS?|hms|local|utc|UTC", re.ASCII)
-_SINGLE_IN = re.compile(r"[A-Za-z]\s+in\s+\S+", re.ASCII)
+_SINGLE_IN = re.compile(r"[A-Za-z]\s+in\s+[^\s(\[{/]\S*", re.ASCII)
 _CONTROL = re.compile(r"[\x00-\x1f\x7f-\x9f\u2028\u2029\ud800-\udfff]+")
 
 

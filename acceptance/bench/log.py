@@ -116,7 +116,8 @@ class BenchLog:
     `samples` has one row a sample, index 0 to n - 1, and these columns:
 
     - one float64 column a channel (NaN where a cell was empty or not a number, and `doubts` says so);
-      `time` in seconds from the first sample of its file (absent where no time was logged);
+      `time` in seconds, as logged where that was seconds, else from the first sample of its table (absent where no
+      time was logged);
     - `stage`: categorical text, `steady` where the log tells nothing else;
     - `load_mode` (or `load_mode main`), where logged: categorical text;
     - `table`: int, which table (file, or sheet of a workbook) the sample came from, 0 upwards, index into `tables`;

@@ -294,7 +294,8 @@ def _leave_out(row: Row, layout: Layout, source: Source, name: str) -> None:
     if not is_comment and (numeric or (len(texts) * 2 > len(layout.columns) and len(texts) > 2)):
         index = under[0] if under else layout.numbers[0]
         heading = layout.columns[index].text
-        found = f'"{shown(cells[index], 30)}" under "{shown(heading)}" is not a number'
+        cell = cells[index] if index < len(cells) else ""  # a line may be shorter than the headings
+        found = f'"{shown(cell, 30)}" under "{shown(heading)}" is not a number'
         raise LogError(source.file, found, "expected a reading, or an empty cell", line=line, column=index + 1)
     pair = note_of(texts)
     if pair:

@@ -14,6 +14,7 @@ from acceptance.cli.shared import bench_option, existing, harmless, limits_optio
 if TYPE_CHECKING:
     from rich.console import Console
 
+    from acceptance.bench.log import Evidence
     from acceptance.inspection import DwellShown, Inspection
 
 __all__ = ["inspect"]
@@ -58,7 +59,7 @@ def _print_json(seen: Inspection) -> None:
         "stages": [str(stage) for stage in log.samples["stage"].unique()],
         "stages_from": log.stages_from,
         "samples": len(log.samples),
-        "files": [{**asdict(one), "started_at": one.started_at.isoformat() if one.started_at else None} for one in log.evidence],
+        "files": [_plain(one) for one in log.evidence],
         "columns": [asdict(channel) for channel in log.channels],
         "notes": log.notes,
         "stated": log.stated,
@@ -66,8 +67,12 @@ def _print_json(seen: Inspection) -> None:
         "dwells": [asdict(dwell) for dwell in seen.dwells],
         "doubts": [asdict(doubt) for doubt in seen.doubts],
         "log_block": seen.block,
-    }  # fmt: skip
+    }
     click.echo(json.dumps(told, ensure_ascii=False, indent=1))
+
+
+def _plain(one: Evidence) -> dict[str, Any]:
+    return {**asdict(one), "started_at": one.started_at.isoformat() if one.started_at else None}
 
 
 def _print_words(seen: Inspection) -> None:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import re
 from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass, field
-from typing import Literal
+from typing import Literal, TypeVar
 
 from acceptance.bench.log import OUTPUT_QUANTITIES, QUANTITIES, channel_key
 from acceptance.errors import MeasurementError
@@ -17,6 +17,8 @@ from acceptance.limitfile.yamltree import Path
 from acceptance.units import KINDS, UNITS, find_unit, parse_quantity, quoted
 
 __all__ = ["BenchPart", "bench_part"]
+
+V = TypeVar("V")
 
 _NUMBERS = {name: kind for name, kind in QUANTITIES.items() if kind not in ("text", "any") and name != "time"}
 _PROBED = frozenset({"temperature", "winding_resistance"})
@@ -45,9 +47,15 @@ class BenchPart:
             load_mode=self.load_mode if other.load_mode is None else other.load_mode,
             settle=self.settle if other.settle is None else other.settle,
             min_dwell=self.min_dwell if other.min_dwell is None else other.min_dwell,
-            meters={**self.meters, **other.meters},
-            leads={**self.leads, **other.leads},
+            meters=_put_over(self.meters, other.meters),
+            leads=_put_over(self.leads, other.leads),
         )
+
+
+def _put_over(mine: Mapping[str, V], other: Mapping[str, V]) -> dict[str, V]:
+    """Another file's entries over mine; one for a quantity as a whole also replaces mine for its outputs and probes."""
+    kept = {name: entry for name, entry in mine.items() if name.partition(" ")[0] not in other}
+    return {**kept, **other}
 
 
 def bench_part(source: Source, model: BenchFile, outputs: Sequence[str]) -> BenchPart:
@@ -73,6 +81,8 @@ def _channel(
     key = str(path[-1])
     quantity, _, qualifier = key.partition(" ")
     qualifier = qualifier.strip()
+    if quantity in _PROBED:
+        qualifier = qualifier.lower()  # as the reader names probes
     if quantity not in quantities:
         found = f"{quoted(key)} is no quantity that can stand here"
         source.refuse(path, found, unknown(quantity, sorted(quantities)), key=True)
@@ -121,7 +131,7 @@ def _columns(
             found = f"the heading {quoted(choice.heading)} stands for {headings[choice.heading]} already"
             source.refuse((*path, "heading"), found, "expected one quantity for each heading")
         headings.setdefault(choice.heading, name)
-        made[channel_key(quantity, qualifier)] = (choice.heading, choice.unit)
+        made[channel_key(quantity, qualifier or default)] = (choice.heading, choice.unit)
     return made
 
 

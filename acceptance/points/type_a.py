@@ -64,7 +64,7 @@ def type_a(samples: NDArray[np.float64]) -> TypeA:
 
     References
     ----------
-    JCGM 100:2008, 4.2.3 and 4.2.7 note (correlated observations). The sum with its window of several times itself: the customary
+    JCGM 100:2008, 4.2.3 and 4.2.7 note (correlated observations). The sum cut at several times itself: the customary
     rule for the integrated autocorrelation time in simulation; common practice, no source.
     """
     n = int(samples.size)
@@ -95,8 +95,8 @@ def _first_order(samples: NDArray[np.float64]) -> float:
     n = samples.size
     r = float(autocorrelation(samples, 1)[1])
     # E[r] = phi - (1 + 4 phi) / n. Taking off all of it makes u too large on the whole, since tau bends upwards in phi;
-    # half of the constant part and three quarters of the other is what covers best (tests/test_simulation.py).
-    phi = (n * r + 0.5) / (n - 3) if n > 8 else r + (1 + 4 * r) / n
+    # a quarter of the constant part and three quarters of the other is what covers best (tests/test_simulation.py).
+    phi = (n * r + 0.25) / (n - 3) if n > 8 else r + (1 + 4 * r) / n
     return min(max(phi, 0.0), 0.99)
 
 

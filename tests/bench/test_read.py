@@ -84,7 +84,7 @@ def test_files_of_one_unit_become_one_log(tmp_path):
 
     assert log.samples["output_voltage"].tolist() == [12, 12, 11, 10]
     np.testing.assert_array_equal(log.samples["output_current"], [1, 2, np.nan, np.nan])
-    assert log.samples["time"].tolist() == [0, 1, 0, 1]
+    assert log.samples["time"].tolist() == [0, 1, 5, 6]  # seconds stay as they were logged
     assert log.samples["stage"].tolist() == ["steady"] * 2 + ["overcurrent"] * 2
     assert log.samples["table"].tolist() == [0, 0, 1, 1]
     assert (log.serial, log.serial_from, log.stages_from) == ("A-17", "file name", "file name")

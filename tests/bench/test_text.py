@@ -85,7 +85,7 @@ def test_headings_that_come_again_begin_a_new_table(read_text_log):
     log = read_text_log("t,Vout\n5,1.5\n6,1.6\nt,Vout\n0,1.7\n\n1,1.8\n")
 
     assert log.samples["table"].tolist() == [0, 0, 1, 1]
-    assert log.samples["time"].tolist() == [0, 1, 0, 1]
+    assert log.samples["time"].tolist() == [5, 6, 0, 1]
     assert log.samples["line"].tolist() == [2, 3, 5, 7]
     assert any(item.what == "line 4" for item in log.ignored)
 
@@ -235,7 +235,7 @@ def test_text_is_only_text(read_text_log):
     ("cells", "seconds", "day"),
     [
         (["0", "0.5"], [0, 0.5], None),
-        (["10", ""], [0, np.nan], None),
+        (["10", ""], [10, np.nan], None),
         (["23:59:59.5", "00:00:00.5"], [0, 1], None),
         (["12:30", "12:31"], [0, 60], None),
         (["25:00:00", "25:00:10"], [0, 10], None),
@@ -255,7 +255,7 @@ def test_text_is_only_text(read_text_log):
     ],
 )  # fmt: skip
 def test_times(read_text_log, cells, seconds, day):
-    """Seconds from the first sample, and the day where it is certain."""
+    """Seconds as logged, clocks from the first sample, and the day where it is certain."""
     log = read_text_log("time;Vout\n" + "".join(f"{cell};{row}\n" for row, cell in enumerate(cells)))
 
     np.testing.assert_allclose(log.samples["time"], seconds, atol=1e-6)
@@ -264,10 +264,10 @@ def test_times(read_text_log, cells, seconds, day):
 
 @pytest.mark.parametrize(("unit", "factor"), [("ms", 1e-3), ("s", 1.0), ("min", 60.0), ("h", 3600.0)])
 def test_time_in_any_unit(read_text_log, unit, factor):
-    """A factor to seconds, from the first sample."""
+    """A factor to seconds, and nothing taken off."""
     log = read_text_log(f"Time ({unit}),Vout\n10,1\n12,1\n")
 
-    assert log.samples["time"].tolist() == pytest.approx([0, 2 * factor])
+    assert log.samples["time"].tolist() == pytest.approx([10 * factor, 12 * factor])
 
 
 def test_date_and_clock_in_two_columns_are_joined(read_text_log):

@@ -29,7 +29,7 @@ def test_load_limits_accepts_the_quick_comparison(data):
 
     assert [r.name for r in limits.requirements] == ["eff-10", "eff-100", "loadreg", "rise-case", "ripple"]
     assert limits.columns["temperature case"] == ("t_case", None)
-    assert limits.columns["ripple"] == ("ripple_mv", "mV")
+    assert limits.columns["ripple main"] == ("ripple_mv", "mV")
 
 
 def test_scalars_stay_as_written(limits):
@@ -126,7 +126,7 @@ def test_bench_file_stands_before_the_limits_file(data, limits):
     assert both.meters["output_voltage"].meter_range is None
     assert both.meters["input_power"] == limits.meters["input_power"]
     assert both.meters["winding_resistance"].device == "R-1"
-    assert both.columns["ripple"] == ("Vpp", None)
+    assert both.columns["ripple main"] == ("Vpp", None)
     assert both.columns["output_voltage"] == ("U2 [V]", None)
     assert (both.load_mode, both.settle, both.min_dwell) == ("CV", 0.0, 5.0)
     assert both.leads["output aux"] == Wiring(0.008, None)

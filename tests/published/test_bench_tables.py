@@ -17,7 +17,7 @@ from tests.published.digits import printed
 # --- converter ------------------------------------------------------------------------------------------------------
 
 # Full scale (+-) and step of a 16-bit converter, as in a maker's data sheet (common practice, no public source);
-# u = step / sqrt(12), JCGM 100:2008, F.2.2.1, calculated. In V, uV, uV; and the step on 1 ohm, 0.1 ohm, 10 mohm in mA.
+# u = step / sqrt(12), JCGM 100:2008, F.2.2.1, calculated. In V, uV, uV; the step on 1 ohm, 0.1 ohm, 10 mohm in mA.
 CONVERTER = [
     ("6.144", "187.5", "54.13", ("0.1875", "1.875", "18.75")),
     ("4.096", "125", "36.08", ("0.125", "1.25", "12.5")),
