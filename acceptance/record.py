@@ -19,10 +19,14 @@ import re
 import tempfile
 from collections.abc import Mapping, Sequence
 from dataclasses import asdict, dataclass, field, replace
+from functools import cache
 from pathlib import Path
-from typing import Any, Literal
+from typing import TYPE_CHECKING, Any, Literal
 
 from acceptance.errors import RecordError
+
+if TYPE_CHECKING:
+    from pydantic import TypeAdapter
 
 __all__ = [
     "VERSION",
@@ -345,22 +349,43 @@ class Record:
 
 
 def record_text(record: Record) -> str:
-    """The record as JSON, the same for the same record. No NaN ever stands in it."""
-    return json.dumps(asdict(record), ensure_ascii=False, indent=1, allow_nan=False) + "\n"
+    """The record as JSON, the same for the same record.
+
+    Raises
+    ------
+    RecordError
+        If a number in it is not finite: JSON has no such numbers, and a decision never rests on one.
+    """
+    try:
+        return json.dumps(asdict(record), ensure_ascii=False, indent=1, allow_nan=False) + "\n"
+    except ValueError:
+        msg = f"a number in the record of {record.unit.serial} is not finite; nothing was written"
+        raise RecordError(msg) from None
+
+
+_DEVICE = re.compile(r"(?i)(con|prn|aux|nul|com[\d\u00b9\u00b2\u00b3]|lpt[\d\u00b9\u00b2\u00b3])(\..*)?")
 
 
 def safe_stem(serial: str) -> str:
     """A file name's stem for a serial: unsafe characters escaped, so that no serial leaves the folder.
 
-    Letters, digits, dot, dash and underscore stay; everything else becomes its code point as %XX. Names that mean
+    Letters, digits, dot, dash and underscore stay; everything else becomes %XX, byte by byte. Names that mean
     something to a file system, and very long ones, get the first digits of their hash.
     """
-    stem = re.sub(r"[^\w.\-]", lambda found: "".join(f"%{byte:02X}" for byte in found.group().encode()), serial)
-    reserved = re.fullmatch(r"(?i)(con|prn|aux|nul|com\d|lpt\d)(\..*)?|\.+|", stem) is not None
-    if reserved or len(stem.encode()) > 120 or stem.startswith(".") or stem.endswith("."):
-        digest = hashlib.sha256(serial.encode()).hexdigest()[:8]
-        stem = f"{stem.strip('.')[:60] or 'unit'}-{digest}"
+    stem = re.sub(r"[^\w.\-]", lambda found: _escaped(found.group()), serial)
+    odd = _DEVICE.fullmatch(stem) is not None or stem.startswith(".") or stem.endswith(".") or not stem
+    if odd or len(stem.encode()) > 120:
+        kept = stem.strip(".").replace(".", "%2E").encode()[:60].decode(errors="ignore")
+        stem = f"{kept or 'unit'}-{_short_hash(serial)}"
     return stem
+
+
+def _escaped(text: str) -> str:
+    return "".join(f"%{byte:02X}" for byte in text.encode(errors="surrogatepass"))
+
+
+def _short_hash(serial: str) -> str:
+    return hashlib.sha256(serial.encode(errors="surrogatepass")).hexdigest()[:8]
 
 
 def write_record(record: Record, folder: Path) -> Path:
@@ -384,23 +409,19 @@ def write_record(record: Record, folder: Path) -> Path:
         if kept is None:
             break
         number += 1
-    write_whole(path, text.encode())
+    # a character that is none (from a name in another encoding) stands as its JSON escape
+    write_whole(path, text.encode(errors="backslashreplace"))
     return path
 
 
 def _free_stem(serial: str, folder: Path) -> str:
     """The stem for a serial, with its hash where another serial's record would take the same name."""
     stem = safe_stem(serial)
-    digest = hashlib.sha256(serial.encode()).hexdigest()[:8]
-    if not folder.is_dir():
+    if not os.path.isdir(folder):  # noqa: PTH112 - a name too long is no folder, and no error either
         return stem
     for path in folder.glob("*.record.json"):
-        name = path.name.removesuffix(".record.json")
-        if name.lower() != stem.lower() and not re.fullmatch(re.escape(stem.lower()) + r"\.\d+", name.lower()):
-            continue
-        other = _serial_in(path)
-        if other is not None and other != serial:
-            return f"{stem}-{digest}"
+        if path.name.removesuffix(".record.json").lower() == stem.lower() and _serial_in(path) not in (None, serial):
+            return f"{stem}-{_short_hash(serial)}"
     return stem
 
 
@@ -418,7 +439,7 @@ def _same_content(path: Path, record: Record) -> bool | None:
         there = json.loads(path.read_text(encoding="utf-8"))
     except (OSError, ValueError):
         # something unreadable that stands there is kept too; where nothing stands, or nothing can, the place is free
-        return False if path.exists() else None
+        return False if os.path.lexists(path) else None
     if not isinstance(there, dict):
         return False
     mine = json.loads(record_text(record))
@@ -465,22 +486,25 @@ def read_record(path: Path) -> Record:
     RecordError
         If the file cannot be read, is no record, or is one of another version.
     """
-    from pydantic import TypeAdapter, ValidationError
+    from pydantic import ValidationError
 
     try:
-        data: Any = json.loads(path.read_text(encoding="utf-8"), parse_constant=_no_constant)
+        text = path.read_text(encoding="utf-8")
+        data: Any = json.loads(text, parse_constant=_no_constant, parse_float=_finite_float)
     except (OSError, ValueError, RecursionError) as problem:
-        reason = problem.strerror if isinstance(problem, OSError) else "it is not JSON"
+        reason = problem.strerror if isinstance(problem, OSError) else "it is not JSON with finite numbers"
         msg = f"{path}: no record can be read from it: {reason}; expected a file written by judge"
         raise RecordError(msg) from None
     if not isinstance(data, Mapping) or "acceptance_record" not in data:
         msg = f"{path}: this is no record of a unit; expected a file written by judge"
         raise RecordError(msg)
-    if data["acceptance_record"] != VERSION:
-        msg = f"{path}: version {data['acceptance_record']!r} of the record; expected {VERSION}"
+    version = data["acceptance_record"]
+    if version is True or version != VERSION:
+        msg = f"{path}: version {version!r} of the record; expected {VERSION}"
         raise RecordError(msg)
     try:
-        return TypeAdapter(Record).validate_python(data)
+        # strictly: "0.9" is no number, and true is none either
+        return _adapter().validate_json(json.dumps(data), strict=True)
     except ValidationError as problem:
         first = problem.errors(include_url=False)[0]
         place = ".".join(str(part) for part in first["loc"])
@@ -488,16 +512,26 @@ def read_record(path: Path) -> Record:
         raise RecordError(msg) from None
 
 
+@cache
+def _adapter() -> TypeAdapter[Record]:
+    from pydantic import TypeAdapter
+
+    return TypeAdapter(Record)
+
+
 def _no_constant(text: str) -> float:
     msg = f"{text} stands in the record"
     raise ValueError(msg)
 
 
+def _finite_float(text: str) -> float:
+    number = float(text)
+    return number if math.isfinite(number) else _no_constant(text)
+
+
 def record_schema() -> dict[str, Any]:
     """The JSON Schema of the record."""
-    from pydantic import TypeAdapter
-
-    schema = TypeAdapter(Record).json_schema()
+    schema = _adapter().json_schema()
     return {"$schema": "https://json-schema.org/draft/2020-12/schema", **schema}
 
 

@@ -36,12 +36,12 @@ def regulation(voltages: Sequence[Estimate], reference: Estimate) -> Estimate:
     voltages
         Output voltages at the points of the span, at least two; what they share cancels. [V]
     reference
-        The voltage it is referred to; above 0. [V]
+        The voltage it is referred to, of either sign; not 0. [V]
 
     Raises
     ------
     MeasurementError
-        If the reference is not above zero.
+        If the reference is zero.
     """
     largest = max(voltages, key=lambda voltage: voltage.nominal)
     smallest = min(voltages, key=lambda voltage: voltage.nominal)

@@ -37,7 +37,7 @@ VERDICT_MARKS: dict[str, tuple[str, str]] = {
     "rejected": ("x", "red"),
 }
 
-_CONTROL = re.compile(r"[\x00-\x08\x0b-\x1f\x7f-\x9f\u202a-\u202e\u2066-\u2069]")
+_CONTROL = re.compile(r"[\x00-\x08\x0b-\x1f\x7f-\x9f\u202a-\u202e\u2066-\u2069\ud800-\udfff]")
 
 
 def harmless(text: str) -> str:

@@ -16,6 +16,8 @@ from numpy.typing import NDArray
 from scipy.special import ndtri, stdtrit
 from uncertainties import UFloat, ufloat
 
+from acceptance.errors import MeasurementError
+
 __all__ = [
     "Contribution",
     "Expanded",
@@ -64,7 +66,16 @@ class Expanded:
 
 
 def of_source(u: float, source: Source, value: float = 0.0) -> Value:
-    """A value with one source of error of its own; exact where u is 0. Two calls give two independent errors."""
+    """A value with one source of error of its own; exact where u is 0. Two calls give two independent errors.
+
+    Raises
+    ------
+    MeasurementError
+        If u is negative or not a finite number: such a u would pass for none at all.
+    """
+    if not 0 <= u < math.inf:
+        msg = f"the standard uncertainty of {source.name} would be {u}"
+        raise MeasurementError(msg)
     return ufloat(value, u, source) if u > 0 else value
 
 

@@ -11,6 +11,8 @@ from numpy.typing import NDArray
 __all__ = ["TypeA", "autocorrelation", "type_a"]
 
 _ENOUGH = 30  # samples from which on more than the first autocorrelation is worth looking at
+_BATCHES = 12
+_BATCHES_DIFFER = 1.79  # 95 % point of chi squared over its 11 degrees of freedom
 
 
 @dataclass(frozen=True, slots=True)
@@ -58,7 +60,9 @@ def type_a(samples: NDArray[np.float64]) -> TypeA:
     -----
     tau comes from the first autocorrelation coefficient, corrected for most of its bias, as that of a
     first-order process; from 30 samples on also from the sum of the coefficients, cut where the lag exceeds eight
-    times the sum so far, and that one is taken where it is well above the other: slow wander under white noise. The
+    times the sum so far, and that one is taken where it is well above the other: slow wander under white noise. From
+    120 samples on the spread of the means of twelve batches is looked at as well, and taken where it is larger than
+    chance would make it: wander too slow for the sum. The
     degrees of freedom follow the number of independent readings. Negative correlation is never believed: it could
     only make u smaller.
 
@@ -86,8 +90,14 @@ def type_a(samples: NDArray[np.float64]) -> TypeA:
         if summed > max(1.3, 1 + math.sqrt(2 * (2 * window + 1) / n)) * time:
             time, freedom = summed, max(1.0, n / (2 * window + 1))
     time = min(time, 0.8 * n)
-    u = deviation * math.sqrt((n - 1) / (n - time) * time / n)
-    return TypeA(mean, u, freedom, n, n / time, deviation)
+    square = deviation**2 * (n - 1) / (n - time) * time / n
+    if n >= 10 * _BATCHES:
+        of_batches = _variance_by_batches(samples)
+        if of_batches > _BATCHES_DIFFER * square:
+            square, freedom = of_batches, min(freedom, _BATCHES - 1.0)
+    # a mean cannot tell more than its samples taken as independent ones
+    effective = min(n, deviation**2 / square)
+    return TypeA(mean, math.sqrt(square), freedom, n, max(1.0, effective), deviation)
 
 
 def _first_order(samples: NDArray[np.float64]) -> float:
@@ -106,6 +116,13 @@ def _time_of_first_order(phi: float, n: int) -> float:
         return 1.0
     # sum_{k<n} (1 - k/n) phi^k = phi/(1-phi) - phi (1 - phi^n) / (n (1-phi)^2)
     return 1 + 2 * (phi / (1 - phi) - phi * (1 - phi**n) / (n * (1 - phi) ** 2))
+
+
+def _variance_by_batches(samples: NDArray[np.float64]) -> float:
+    """Variance of the mean, from the means of twelve equal batches."""
+    length = samples.size // _BATCHES
+    means = samples[samples.size - length * _BATCHES :].reshape(_BATCHES, length).mean(axis=1)
+    return float(means.var(ddof=1)) / _BATCHES
 
 
 def _summed_time(samples: NDArray[np.float64]) -> tuple[float, int]:

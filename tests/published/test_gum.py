@@ -69,7 +69,7 @@ def test_correct_reproduces_gum_5_1_5(tmp_path):
 
 def test_converter_step_uncertainty_reproduces_gum_f_2_2_1():
     """The last digit of an indication brings 0.29 of itself."""
-    # read at rdrr.io/github/claus-e-andersen/clanTools/man/resolution.uncertainty.abs.html
+    # read in the manual of the R package clanTools, resolution.uncertainty.abs
     assert converter_step_uncertainty(1.0) == printed("0.29")
 
 

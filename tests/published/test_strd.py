@@ -49,7 +49,7 @@ def pi_digits_as_certified() -> list[int]:
     """The set PiDigits: the first 5000 digits of pi, but for the 957th, an 8 that the set has as a 3.
 
     The certified values are those of the set: its sum is 22674, that of the true digits 22679. Seen in a copy of the
-    set in github.com/montanaflynn/stats, nist_test.go.
+    set among the tests of a public statistics library (nist_test.go).
     """
     digits = pi_digits(5000)
     assert digits[956] == 8
