@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import hashlib
+import math
 import platform
 from collections.abc import Iterable, Sequence
 from datetime import datetime
@@ -22,7 +23,7 @@ from acceptance.errors import MeasurementError
 from acceptance.hazards import hazards_of
 from acceptance.limitfile.limits import Limits, Meter
 from acceptance.points.point import Point, Points
-from acceptance.points.propagation import budget, expanded, standard_uncertainty
+from acceptance.points.propagation import budget, expanded
 from acceptance.record import (
     VERSION,
     Alternative,
@@ -278,11 +279,11 @@ def _reading(point: Point, channel: Channel) -> Reading | None:
     except MeasurementError:
         return None
     stated = point.bench.is_stated(channel.key)
-    type_b = standard_uncertainty(point.bench.correct(channel.key, mean.mean)) if stated else None
+    type_b = point.bench.standard_uncertainty(channel.key, mean.mean) if stated else None
     return Reading(
         value=mean.mean,
         unit=KINDS[QUANTITIES[channel.quantity]],
-        standard_uncertainty=None if type_b is None else float(np.hypot(type_b, mean.standard_uncertainty or 0.0)),
+        standard_uncertainty=None if type_b is None else math.hypot(type_b, mean.standard_uncertainty or 0.0),
         type_a=mean.standard_uncertainty,
         type_b=type_b,
         readings=mean.readings,

@@ -47,11 +47,21 @@ def split(accuracy: Accuracy, reading: float, *, meter_range: float, resolution:
 
 
 @dataclass(frozen=True, slots=True)
+class Error:
+    """One error of a reading."""
+
+    source: Source
+    u: float  # standard uncertainty it brings to the reading, in the reading's unit
+    share: str = ""  # what it is shared by; "" for an error of this reading alone
+    per_unit: float = 0.0  # of a shared one: reading's error = sensitivity x variable of this standard uncertainty
+
+
+@dataclass(frozen=True, slots=True)
 class Bench:
     """The bench as a source of errors: asked twice for what is shared, it gives the same error twice."""
 
     limits: Limits
-    _shared: dict[tuple[str, str], Value] = field(default_factory=dict)
+    _shared: dict[str, Value] = field(default_factory=dict)
 
     def is_stated(self, key: str) -> bool:
         """Whether the accuracy of a channel is stated."""
@@ -60,66 +70,82 @@ class Bench:
 
     def correct(self, key: str, reading: float) -> Value:
         """The reading with the errors of its instrument; a plain number where nothing is stated about it."""
-        meter = self.limits.meter(key)
-        if meter is None or not meter.is_stated:
-            return reading
-        value = self._own(f"{key}, {meter.device}: converter and fixed parts", self._fixed(meter), reading)
-        if meter.accuracy is not None:
-            value = value + self._by_accuracy(meter, meter.accuracy, key, reading)
-        if meter.shunt is not None:
-            value = value + self._by_shunt(meter, meter.shunt, key, reading)
+        value: Value = reading
+        for error in self._errors(key, reading):
+            if not error.share:
+                value = value + of_source(error.u, error.source)
+            elif error.per_unit > 0:
+                # the sign of the reading matters: a gain error makes a negative reading more negative
+                sensitivity = math.copysign(error.u / error.per_unit, reading)
+                value = value + sensitivity * self._share(error.share, error.source, error.per_unit)
         return value
+
+    def standard_uncertainty(self, key: str, reading: float) -> float:
+        """What the instrument adds to a reading, all its errors together."""
+        return math.sqrt(sum(error.u**2 for error in self._errors(key, reading)))
 
     def lead(self, side: str, output: str, wiring: Wiring) -> Value:
         """Resistance of the leads, the same error wherever it enters. [ohm]"""
         name = f"{side} {output}".strip()
-        bound = wiring.bound or 0.0
-        unit = self._share(("lead", name), Source(f"lead resistance, {name}", "B"), rectangular(bound))
-        return wiring.resistance + unit
+        u = rectangular(wiring.bound or 0.0)
+        return wiring.resistance + self._share(f"lead {name}", Source(f"lead resistance, {name}", "B"), u)
 
-    def _by_accuracy(self, meter: Meter, accuracy: Accuracy, key: str, reading: float) -> Value:
-        span = meter.meter_range
-        parts = split(
-            accuracy,
-            reading,
-            meter_range=span if isinstance(span, float) else 0.0,
-            resolution=meter.resolution or 0.0,
-        )
-        source = f"{key}, {meter.device}"
-        rest = of_source(parts.rest, Source(f"{source}: fixed part", "B"))
-        gain_source = Source(f"{source}: gain", "B")
-        if span == "auto":  # the range may change between points, so nothing is shared
-            return rest + of_source(parts.gain, gain_source)
-        relative = accuracy.gain / (accuracy.coverage or RECTANGLE)
-        return rest + reading * self._share(("gain", key), gain_source, relative)
+    def _errors(self, key: str, reading: float) -> list[Error]:
+        meter = self.limits.meter(key)
+        if meter is None or not meter.is_stated:
+            return []
+        name = f"{key}, {meter.device}"
+        errors = [Error(Source(f"{name}: converter and fixed parts", "B"), _fixed(meter))]
+        if meter.accuracy is not None:
+            errors += _by_accuracy(meter, meter.accuracy, name, reading, share=f"gain {key}")
+        if meter.shunt is not None:
+            errors += _by_shunt(meter.shunt, name, reading, share=f"shunt {key}")
+        return errors
 
-    def _by_shunt(self, meter: Meter, shunt: ShuntResistor, key: str, reading: float) -> Value:
-        source = f"{key}, {meter.device}"
-        tolerance = self._share(("shunt", key), Source(f"{source}: shunt tolerance", "B"), rectangular(shunt.tolerance))
-        coefficient = self._share(
-            ("shunt temperature", key),
-            Source(f"{source}: shunt self-heating", "B"),
-            rectangular(shunt.temperature_coefficient),
-        )
-        # dR/R = coefficient x thermal resistance x I^2 R
-        heating = shunt.heating * reading * reading * shunt.resistance
-        return reading * tolerance + reading * heating * coefficient
-
-    def _fixed(self, meter: Meter) -> float:
-        """Converter offset and step, and the display's step where the accuracy text does not count digits."""
-        squares = 0.0
-        if meter.converter is not None:
-            scale = 1.0 / meter.shunt.resistance if meter.shunt is not None else 1.0
-            squares += (scale * rectangular(meter.converter.offset)) ** 2
-            squares += (scale * converter_step_uncertainty(meter.converter.step)) ** 2
-        if meter.resolution is not None and not (meter.accuracy is not None and meter.accuracy.digits):
-            squares += converter_step_uncertainty(meter.resolution) ** 2
-        return math.sqrt(squares)
-
-    def _own(self, name: str, u: float, reading: float) -> Value:
-        return of_source(u, Source(name, "B"), reading)
-
-    def _share(self, name: tuple[str, str], source: Source, u: float) -> Value:
+    def _share(self, name: str, source: Source, u: float) -> Value:
         if name not in self._shared:
             self._shared[name] = of_source(u, source)
         return self._shared[name]
+
+
+def _by_accuracy(meter: Meter, accuracy: Accuracy, name: str, reading: float, *, share: str) -> list[Error]:
+    span = meter.meter_range
+    parts = split(
+        accuracy,
+        reading,
+        meter_range=span if isinstance(span, float) else 0.0,
+        resolution=meter.resolution or 0.0,
+    )
+    rest, gain = Source(f"{name}: fixed part", "B"), Source(f"{name}: gain", "B")
+    if span == "auto":  # the range may change between points, so nothing is shared
+        return [Error(rest, parts.rest), Error(gain, parts.gain)]
+    relative = accuracy.gain / (accuracy.coverage or RECTANGLE)
+    return [Error(rest, parts.rest), Error(gain, parts.gain, share, relative)]
+
+
+def _by_shunt(shunt: ShuntResistor, name: str, reading: float, *, share: str) -> list[Error]:
+    tolerance = rectangular(shunt.tolerance)
+    coefficient = rectangular(shunt.temperature_coefficient)
+    # dR/R = coefficient x thermal resistance x I^2 R
+    heating = shunt.heating * reading * reading * shunt.resistance
+    return [
+        Error(Source(f"{name}: shunt tolerance", "B"), abs(reading) * tolerance, f"{share} tolerance", tolerance),
+        Error(
+            Source(f"{name}: shunt self-heating", "B"),
+            abs(reading) * heating * coefficient,
+            f"{share} temperature",
+            coefficient,
+        ),
+    ]
+
+
+def _fixed(meter: Meter) -> float:
+    """Converter offset and step, and the display's step where the accuracy text does not count digits."""
+    squares = 0.0
+    if meter.converter is not None:
+        scale = 1.0 / meter.shunt.resistance if meter.shunt is not None else 1.0
+        squares += (scale * rectangular(meter.converter.offset)) ** 2
+        squares += (scale * converter_step_uncertainty(meter.converter.step)) ** 2
+    if meter.resolution is not None and not (meter.accuracy is not None and meter.accuracy.digits):
+        squares += converter_step_uncertainty(meter.resolution) ** 2
+    return math.sqrt(squares)

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+import math
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Any, TypeVar
 
@@ -14,7 +15,7 @@ from acceptance.errors import MeasurementError
 from acceptance.limitfile.limits import Limits
 from acceptance.points.dwells import Dwell
 from acceptance.points.instrument import Bench
-from acceptance.points.propagation import Source, Value, expanded, nominal, of_source
+from acceptance.points.propagation import Source, Value, coverage_factor, nominal, of_source
 from acceptance.points.type_a import TypeA, type_a
 
 __all__ = ["Estimate", "Point", "Points", "measure_points"]
@@ -63,18 +64,18 @@ class Point:
     log: BenchLog
     limits: Limits
     bench: Bench
+    columns: Mapping[str, Floats]  # the log's channels as arrays, shared by all points
     _kept: dict[tuple[str, ...], Any] = field(default_factory=dict)
 
     # --- samples ----------------------------------------------------------------------------------------------------
 
     def has(self, key: str) -> bool:
         """Whether a channel was logged."""
-        return key in self.log.samples.columns
+        return key in self.columns
 
     def samples(self, key: str) -> Floats:
         """The samples of a channel in this dwell, missing ones as NaN."""
-        column = self.log.samples[key].to_numpy()
-        return np.asarray(column[self.dwell.first : self.dwell.stop], dtype=np.float64)
+        return self.columns[key][self.dwell.first : self.dwell.stop]
 
     def require(self, *keys: str) -> None:
         """See to it that channels may be judged here.
@@ -145,7 +146,9 @@ class Point:
         if fraction is None:
             return False
         key = channel_key("output_current", output)
-        error = expanded(self._corrected(key, self.mean(key).mean), self.limits.decision.confidence).expanded
+        mean = self.mean(key)
+        u = math.hypot(self.bench.standard_uncertainty(key, mean.mean), mean.standard_uncertainty or 0.0)
+        error = coverage_factor(self.limits.decision.confidence, math.inf) * u
         bound = max(error / self.limits.ratings.outputs[output].current, _NO_LOAD)
         return abs(fraction) <= bound + 1e-12
 
@@ -371,7 +374,12 @@ class Points:
 def measure_points(log: BenchLog, dwells: Sequence[Dwell], limits: Limits) -> Points:
     """The points of a log's dwells."""
     bench = Bench(limits)
-    points = tuple(Point(index, dwell, log, limits, bench) for index, dwell in enumerate(dwells))
+    columns = {
+        key: log.samples[key].to_numpy(dtype=np.float64)
+        for key in log.samples.columns
+        if log.samples[key].dtype.kind in "fiu"
+    }
+    points = tuple(Point(index, dwell, log, limits, bench, columns) for index, dwell in enumerate(dwells))
     return Points(points, log, limits, bench)
 
 
