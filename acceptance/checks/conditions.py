@@ -13,7 +13,19 @@ from acceptance.points.point import Point, Points
 
 ANY: Literal["any"] = "any"
 
-__all__ = ["Condition", "condition_of", "load_tolerance", "matching", "missing_dwell", "share"]
+__all__ = [
+    "Condition",
+    "condition_channels",
+    "condition_of",
+    "describe",
+    "load_tolerance",
+    "matching",
+    "meets_input",
+    "meets_load",
+    "missing_dwell",
+    "output_of",
+    "share",
+]
 
 _LOAD_TOLERANCE = 0.02  # of rated current; half of it at 10 % and below
 _INPUT_TOLERANCE = 0.01  # of the input voltage

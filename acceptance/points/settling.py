@@ -97,7 +97,7 @@ def _leading_blocks(calm: Array, size: int, *, scatter: float, drift: float) -> 
 def _deviation(x: Array) -> float:
     """Standard deviation; numpy's own takes ten times as long on a short array."""
     off = x - np.add.reduce(x) / x.size
-    return math.sqrt(float(off @ off) / max(1, x.size - 1))
+    return math.sqrt(float(np.einsum("i,i", off, off)) / max(1, x.size - 1))
 
 
 def _clipped(y: Array) -> Array:
