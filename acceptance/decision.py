@@ -171,7 +171,9 @@ def _judge_estimate(candidate: Candidate, estimate: Estimate, outcome: Outcome, 
     impossible = _impossible(value, u, outcome)
     if impossible:
         return Verdict(candidate, "not judged", impossible)
-    probability = conformity_probability(value, u.standard, low=low, high=high, degrees_of_freedom=u.degrees_of_freedom)
+    least, most = outcome.bounds
+    freedom = u.degrees_of_freedom
+    probability = conformity_probability(value, u.standard, low=least, high=most, degrees_of_freedom=freedom)
     inside = meets(value, low, high)
     verdict = verdict_of(probability, inside, decision)
     reason = _why(verdict, inside, probability, decision)
@@ -246,7 +248,7 @@ def _normal_bounds(one: Decided) -> tuple[float, float]:
     u, value = one.by.expanded, nominal(one.by.candidate.estimate.value)
     if u.standard <= 0:
         return (-math.inf, math.inf) if one.by.probability else (math.inf, math.inf)
-    low, high = one.outcome.low, one.outcome.high
+    low, high = one.outcome.bounds
     return (
         -math.inf if low is None else float(ndtri(_below((low - value) / u.standard, u.degrees_of_freedom))),
         math.inf if high is None else float(ndtri(_below((high - value) / u.standard, u.degrees_of_freedom))),

@@ -155,6 +155,8 @@ class Alternative:
     margin: float | None
     conformity_probability: float | None
     verdict: FindingVerdict
+    reason: str = ""
+    at: str = ""  # the operating condition that was run
 
 
 @dataclass(frozen=True, slots=True)
@@ -185,6 +187,7 @@ class Finding:
     standard_uncertainty: float | None = None
     output: str = ""
     where: str = ""  # file and lines of the dwell, or dwells
+    at: str = ""  # the operating condition that was run, where the condition leaves it open
     note: str = ""  # of the limits file: where the limit was taken from
     formula: str = ""  # how the value is formed, in one line
     points: list[AtDwell] = field(default_factory=list)

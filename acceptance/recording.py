@@ -132,6 +132,7 @@ def _finding(decided: Decided, points: Points) -> Finding:
         standard_uncertainty=u.standard if u is not None else None,
         output=outcome.output,
         where=by.candidate.where if by is not None else "",
+        at=by.candidate.at if by is not None else "",
         note=outcome.note,
         formula=outcome.formula,
         points=[AtDwell(used.point.index, used.role) for used in by.candidate.used] if by is not None else [],
@@ -167,6 +168,8 @@ def _alternative(other: Verdict) -> Alternative:
         margin=other.margin,
         conformity_probability=other.probability,
         verdict=other.verdict,
+        reason=other.reason,
+        at=other.candidate.at,
     )
 
 
@@ -217,7 +220,8 @@ def _calibration(log: BenchLog, limits: Limits) -> list[Finding]:
 
 
 def _meters_used(log: BenchLog, limits: Limits) -> Iterable[Meter]:
-    return (meter for channel in _measured(log) if (meter := limits.meter(channel.key)) is not None)
+    keys = [*(channel.key for channel in _measured(log)), *log.stated]
+    return (meter for key in keys if (meter := limits.meter(key)) is not None)
 
 
 def _undated(log: BenchLog, limits: Limits) -> list[Doubt]:

@@ -12,9 +12,11 @@ from hypothesis import strategies as st
 from acceptance.printing import (
     DASH,
     MINUS,
+    column,
     count,
     duration,
     limit_range,
+    minus_signs,
     printed,
     probability,
     quantity,
@@ -58,6 +60,52 @@ def number(text: str) -> Decimal:
 def test_with_uncertainty_rounds_to_two_digits_of_it(value, expanded, unit, text):
     """U has two significant digits, the value as many decimals, both one prefix."""
     assert with_uncertainty(value, expanded, unit) == text
+
+
+def test_column_shares_decimals_as_far_as_is_honest():
+    """The usual decimals; one digit more of U rather than a ragged row, never one less."""
+    amperes = scale_for("A", [0.5])
+    volts = scale_for("V", [230.0])
+
+    shown = column([0.5053, 0.3997, 0.16068], amperes, expanded=[0.0018, 0.0015, 0.00096])
+    wider = column([230.12, 230.1, 229.0], volts, expanded=[0.28, 0.27, 1.1])
+
+    assert shown == ["505.3 ± 1.8", "399.7 ± 1.5", "160.68 ± 0.96"]
+    assert wider == ["230.12 ± 0.28", "230.10 ± 0.27", "229.00 ± 1.10"]
+
+
+def test_column_without_uncertainties_has_equal_decimals():
+    """As many as the largest value needs, zeros that all would end in left out; odd values as words."""
+    seconds = scale_for("", [], per_cent=False)
+
+    assert column([3.75, 302.5, 540.0, None], seconds, digits=8) == ["3.75", "302.50", "540.00", DASH]
+    assert column([56.0, 117.0], seconds) == ["56", "117"]
+    assert column([0.0, math.nan, -math.inf], seconds) == ["0", "not a number", f"{MINUS}infinite"]
+    assert column([], seconds) == []
+
+
+@pytest.mark.parametrize(
+    ("text", "shown"),
+    [
+        ("load -0.0 %", "load 0.0 %"),
+        ("load -0.1 %, input -5 V", "load −0.1 %, input −5 V"),
+        ("load -0.05 %", "load −0.05 %"),
+        ("2026-05-04, A-17.csv, 5-10", "2026-05-04, A-17.csv, 5-10"),
+        ("-0", "0"),
+    ],
+)
+def test_minus_signs_stand_before_numbers_only(text, shown):
+    """Dates, names and ranges keep their hyphens; zero has no sign."""
+    assert minus_signs(text) == shown
+
+
+@given(values=st.lists(BENCH, min_size=1, max_size=8), u=st.floats(1e-6, 10.0))
+def test_column_rounds_to_within_half_a_digit_of_u(values, u):
+    """What is printed lies within half of the last digit of U from the value, whatever the column."""
+    for value, text in zip(values, column(values, scale_for("V", [1.0]), expanded=[u] * len(values)), strict=True):
+        shown, _, bound = text.partition(" ± ")
+        last = Decimal(1).scaleb(number(bound).as_tuple().exponent)
+        assert abs(number(shown) - Decimal(value)) <= last * Decimal("0.500001")
 
 
 def test_with_uncertainty_shows_a_plain_ratio_when_told():

@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Literal
 
 from acceptance.bench.log import channel_key
+from acceptance.checks.outcome import Candidate, Used
 from acceptance.limitfile.limits import Limits
 from acceptance.limitfile.model import Conditions, Requirement
 from acceptance.points.point import Point, Points
@@ -15,16 +16,22 @@ ANY: Literal["any"] = "any"
 
 __all__ = [
     "Condition",
+    "by_input",
+    "by_load",
     "condition_channels",
     "condition_of",
     "describe",
+    "grouped",
+    "input_words",
     "load_tolerance",
     "matching",
     "meets_input",
     "meets_load",
     "missing_dwell",
+    "not_taken_in",
     "output_of",
     "share",
+    "untold",
 ]
 
 _LOAD_TOLERANCE = 0.02  # of rated current; half of it at 10 % and below
@@ -87,17 +94,19 @@ def load_tolerance(load: float, limits: Limits) -> float:
 
 
 def meets_load(point: Point, output: str, load: Load) -> bool:
-    """Whether a point has the load asked for; any: up to the rated current."""
-    fraction = point.load_fraction(output)
+    """Whether a point has the load asked for; any: up to the rated current.
+
+    By the mean of the current, or by its median: a dwell whose load dropped out for a while was still run at that
+    load, and what is judged there must not be the other dwells alone.
+    """
     if load is None:
         return True
-    if fraction is None:
-        return False
+    fractions = [f for f in (point.load_fraction(output), point.median_load_fraction(output)) if f is not None]
     if isinstance(load, str):
-        return fraction <= 1 + load_tolerance(1.0, point.limits) + 1e-12
+        return any(abs(fraction) <= 1 + load_tolerance(1.0, point.limits) + 1e-12 for fraction in fractions)
     if load == 0:
         return point.is_unloaded(output)
-    return abs(fraction - load) <= load_tolerance(load, point.limits) + 1e-12
+    return any(abs(fraction - load) <= load_tolerance(load, point.limits) + 1e-12 for fraction in fractions)
 
 
 def meets_input(point: Point, voltage: float | Literal["any"] | None) -> bool:
@@ -127,10 +136,76 @@ def matching(points: Points, condition: Condition) -> list[Point]:
     ]
 
 
+def untold(points: Points, condition: Condition) -> list[Candidate]:
+    """Candidates that cannot be judged: points of which it is not known whether an `any` takes them in."""
+    found = []
+    for point in points.steady:
+        loads = [o for o, load in condition.loads.items() if load == ANY and point.load_fraction(o) is None]
+        inputs = condition.input == ANY and point.input_voltage() is None
+        if loads or inputs:
+            what = " and ".join([*(f"the load of {output}" for output in loads), *(["the input voltage"] * inputs)])
+            reason = f"{what} is not known at {point.where}, so that it is open whether the condition takes it in"
+            found.append(Candidate((Used(point, "condition unknown"),), reason=reason))
+    return found
+
+
+def not_taken_in(points: Points, condition: Condition) -> tuple[str, ...]:
+    """What was run beyond the ratings, and an `any` does not take in: for the report to say."""
+    if ANY not in (*condition.loads.values(), condition.input):
+        return ()
+    inside = {id(point) for point in matching(points, condition)}
+    unknown = {id(candidate.used[0].point) for candidate in untold(points, condition)}
+    out = [point for point in points.steady if id(point) not in inside | unknown and _is_beyond(point, condition)]
+    if not out:
+        return ()
+    more = f", and {len(out) - 1} more" if len(out) > 1 else ""
+    return (f"run beyond the ratings and not taken in by any: {describe(out[0])} ({out[0].where}){more}",)
+
+
+def _is_beyond(point: Point, condition: Condition) -> bool:
+    loads = [output for output, load in condition.loads.items() if load == ANY]
+    beyond_load = any(not meets_load(point, output, ANY) for output in loads)
+    return beyond_load or (condition.input == ANY and not meets_input(point, ANY))
+
+
 def condition_channels(condition: Condition) -> list[str]:
     """The channels that tell whether a condition is met."""
     keys = [channel_key("output_current", output) for output, load in condition.loads.items() if load is not None]
     return keys + (["input_voltage"] if condition.input is not None else [])
+
+
+def by_input(found: Sequence[Point]) -> list[list[Point]]:
+    """Points by input voltage: with `input: any` each input voltage is looked at by itself."""
+    return grouped(found, lambda point: point.input_voltage() or 0.0, lambda voltage: 2 * _INPUT_TOLERANCE * voltage)
+
+
+def by_load(found: Sequence[Point], output: str) -> list[list[Point]]:
+    """Points by load: with `load: any` each load is looked at by itself."""
+    return grouped(
+        found, lambda point: point.load_fraction(output) or 0.0, lambda load: 2 * load_tolerance(load, found[0].limits)
+    )
+
+
+def grouped(
+    found: Sequence[Point], value: Callable[[Point], float], width: Callable[[float], float]
+) -> list[list[Point]]:
+    """Points in groups whose neighbouring values lie within a width of each other, each in the order of the log.
+
+    Neighbours, not all: a mains voltage that wanders through a sweep leaves it one sweep.
+    """
+    groups: list[list[Point]] = []
+    for point in sorted(found, key=value):
+        if groups and value(point) - value(groups[-1][-1]) <= abs(width(value(point))):
+            groups[-1].append(point)
+        else:
+            groups.append([point])
+    return [sorted(group, key=lambda point: point.index) for group in groups]
+
+
+def input_words(group: Sequence[Point]) -> str:
+    """The input voltage of a group, in words."""
+    voltages = [voltage for point in group if (voltage := point.input_voltage()) is not None]
+    return f"input {sum(voltages) / len(voltages):.4g} V" if voltages else "an unknown input voltage"
 
 
 def missing_dwell(points: Points, condition: Condition) -> str:

@@ -2,15 +2,20 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 
 from acceptance.checks.conditions import (
     Condition,
+    by_input,
     condition_channels,
     condition_of,
+    describe,
+    input_words,
     matching,
     meets_load,
     missing_dwell,
+    not_taken_in,
+    untold,
 )
 from acceptance.checks.figures import efficiency_figure
 from acceptance.checks.outcome import Candidate, CheckResult, Outcome, Used
@@ -18,6 +23,7 @@ from acceptance.errors import MeasurementError
 from acceptance.limitfile.limits import Limits
 from acceptance.limitfile.model import Efficiency
 from acceptance.points.point import Estimate, Point, Points
+from acceptance.points.propagation import expanded
 
 __all__ = ["check_efficiency"]
 
@@ -39,13 +45,14 @@ def _loaded_outputs(requirement: Efficiency, limits: Limits) -> tuple[str, ...]:
 def _at_load(requirement: Efficiency, points: Points) -> Outcome:
     condition = condition_of(requirement.at, points.limits, _loaded_outputs(requirement, points.limits))
     found = [point for point in matching(points, condition) if _is_loaded(point, condition)]
-    candidates = [_candidate([point], [str(condition)], condition) for point in found]
+    candidates = [_candidate([point], [describe(point)], condition) for point in found]
     return _outcome(
         requirement,
         str(condition),
-        candidates,
+        [*candidates, *untold(points, condition)],
         reason="" if found else missing_dwell(points, condition),
         formula="mean(V × I) / mean(P), sample by sample",
+        deviations=not_taken_in(points, condition),
     )
 
 
@@ -57,37 +64,57 @@ def _is_loaded(point: Point, condition: Condition) -> bool:
 
 
 def _average(requirement: Efficiency, points: Points) -> Outcome:
-    """The mean of the efficiencies at several loads; where a load was run twice, the worse of the two counts."""
+    """The mean of the efficiencies at several loads; where a load was run twice, the worse of the two counts.
+
+    With `input: any` the mean is formed at each input voltage by itself.
+    """
     limits, outputs = points.limits, _loaded_outputs(requirement, points.limits)
     loads = requirement.average or ()
     conditions = [condition_of(requirement.at, limits, outputs, load=load) for load in loads]
-    found = [matching(points, condition) for condition in conditions]
-    reason = "; ".join(missing_dwell(points, c) for c, f in zip(conditions, found, strict=True) if not f)
-    whole = condition_of(requirement.at, limits, ())
-    text = ", ".join(
-        [f"mean over load {', '.join(f'{100 * load:g} %' for load in loads)}", *([str(whole)] * bool(str(whole)))]
-    )
+    reason = "; ".join(missing_dwell(points, c) for c in conditions if not matching(points, c))
+    every = [point for condition in conditions for point in matching(points, condition)]
     candidates: list[Candidate] = []
-    if not reason:
+    deviations: list[str] = []
+    for group in by_input(list(dict.fromkeys(every))):
+        found = [[p for p in matching(points, condition) if p in group] for condition in conditions]
+        missing = [load for load, there in zip(loads, found, strict=True) if not there]
+        if missing:
+            lacks = ", ".join(f"{100 * load:g} %" for load in missing)
+            deviations.append(f"at {input_words(group)} load {lacks} was not run, so that no mean was formed there")
+            continue
         roles = [f"load {100 * load:g} %" for load in loads]
-        wanted = [pick for pick, limit in ((min, requirement.min), (max, requirement.max)) if limit is not None]
-        choices = dict.fromkeys(_extremes(found, pick) for pick in wanted)
-        candidates = [_candidate(choice, roles, conditions[0]) for choice in choices]
+        candidates += [_candidate(choice, roles, conditions[0]) for choice in _choices(requirement, found)]
+    if not reason and not candidates:
+        reason = "the loads were run, but not all of them at one input voltage"
+    words = str(condition_of(requirement.at, limits, ()))
+    text = f"mean over load {', '.join(f'{100 * load:g} %' for load in loads)}" + (f", {words}" if words else "")
+    formula = "mean of the efficiencies at the loads, each measured"
+    more = [*([] if reason else candidates), *untold(points, conditions[0])]
     return _outcome(
-        requirement, text, candidates, reason=reason, formula="mean of the efficiencies at the loads, each measured"
+        requirement, text, more, reason=reason, formula=formula, deviations=deviations if candidates else ()
     )
 
 
-def _extremes(found: Sequence[Sequence[Point]], pick: Callable[..., Point]) -> tuple[Point, ...]:
-    """Of each load the point of the lowest (or highest) efficiency; one that cannot be judged goes before all."""
+def _choices(requirement: Efficiency, found: Sequence[Sequence[Point]]) -> list[tuple[Point, ...]]:
+    """Of each load the point that is worst for a limit: by its value, and by what its uncertainty leaves of it."""
+    ways = [sign for sign, limit in ((1.0, requirement.min), (-1.0, requirement.max)) if limit is not None]
+    return list(
+        dict.fromkeys(
+            tuple(min(group, key=lambda point, sign=sign, k=k: _worth(point, sign, k)) for group in found)  # type: ignore[misc]
+            for sign in ways
+            for k in (0.0, 1.0)
+        )
+    )
 
-    def key(point: Point) -> float:
-        try:
-            return point.efficiency(point.limits.outputs).nominal
-        except MeasurementError:
-            return float("-inf") if pick is min else float("inf")
 
-    return tuple(pick(group, key=key) for group in found)
+def _worth(point: Point, sign: float, k: float) -> float:
+    """Efficiency less k times its U, turned about for an upper limit; what cannot be judged goes before all."""
+    try:
+        efficiency = point.efficiency(point.limits.outputs)
+    except MeasurementError:
+        return float("-inf")
+    u = expanded(efficiency.value, point.limits.decision.confidence).expanded
+    return sign * efficiency.nominal - k * u
 
 
 def _candidate(used: Sequence[Point], roles: Sequence[str], condition: Condition) -> Candidate:
@@ -98,13 +125,19 @@ def _candidate(used: Sequence[Point], roles: Sequence[str], condition: Condition
             point.require(*condition_channels(condition))
             parts.append(point.efficiency(point.limits.outputs))
         value = sum((part.value for part in parts), start=0.0) / len(parts)
-        return Candidate(named, Estimate.of(value, *parts))
+        return Candidate(named, Estimate.of(value, *parts), at=describe(used[0]) if len(used) == 1 else "")
     except MeasurementError as problem:
         return Candidate(named, reason=str(problem))
 
 
 def _outcome(
-    requirement: Efficiency, condition: str, candidates: Sequence[Candidate], *, reason: str, formula: str
+    requirement: Efficiency,
+    condition: str,
+    candidates: Sequence[Candidate],
+    *,
+    reason: str,
+    formula: str,
+    deviations: Sequence[str],
 ) -> Outcome:
     return Outcome(
         name=requirement.name or "",
@@ -118,4 +151,5 @@ def _outcome(
         output=requirement.output or "",
         note=requirement.note or "",
         formula=formula,
+        deviations=tuple(deviations),
     )

@@ -12,8 +12,10 @@ from acceptance.checks.conditions import (
     Condition,
     condition_channels,
     condition_of,
+    describe,
     matching,
     missing_dwell,
+    untold,
 )
 from acceptance.checks.outcome import Candidate, CheckResult, Outcome, Used
 from acceptance.errors import MeasurementError
@@ -32,20 +34,25 @@ def _outcome(requirement: NoLoadPower, points: Points) -> Outcome:
     limits = points.limits
     condition = condition_of(requirement.at, limits, limits.outputs, load=0.0)
     stretches = whole_stretches(matching(points, condition))
-    times = [duration for point in stretches if (duration := point.starts()[1]) is not None]
-    over = f", over {min(times):.4g} s" if times else ", of single readings" if stretches else ""
     return Outcome(
         name=requirement.name or "",
         characteristic="no_load_power",
-        condition=f"{condition}{over}",
+        condition=str(condition),
         unit="W",
         high=requirement.max,
-        candidates=tuple(_candidate(point, condition) for point in stretches),
+        candidates=(*(_candidate(point, condition) for point in stretches), *untold(points, condition)),
         reason="" if stretches else missing_dwell(points, condition),
         output=requirement.output or "",
         note=requirement.note or "",
         formula="mean input power over the whole no-load stretch after settling",
+        deviations=()
+        if _logs_outputs(points)
+        else ("no output voltage was logged: that the unit was on is not shown",),
     )
+
+
+def _logs_outputs(points: Points) -> bool:
+    return all(channel_key("output_voltage", output) in points.log.samples for output in points.limits.outputs)
 
 
 def whole_stretches(found: Sequence[Point]) -> list[Point]:
@@ -78,9 +85,12 @@ def _close(first: float | None, second: float | None) -> bool:
 
 
 def _candidate(point: Point, condition: Condition) -> Candidate:
-    used = (Used(point, "no load"),)
+    duration = point.starts()[1]
+    over = f"mean over {duration:.4g} s" if duration else f"mean of {point.readings} readings"
+    used = (Used(point, f"no load, {over}"),)
     try:
         point.require(*condition_channels(condition))
+        _see_to_output(point)
         power = point.input_power()
         if not power.nominal > 0:
             msg = (
@@ -88,6 +98,27 @@ def _candidate(point: Point, condition: Condition) -> Candidate:
                 "use a lower range, or a meter that does"
             )
             raise MeasurementError(msg)
-        return Candidate(used, power)
+        return Candidate(used, power, at=f"{describe(point)}, {over}")
     except MeasurementError as problem:
         return Candidate(used, reason=str(problem))
+
+
+def _see_to_output(point: Point) -> None:
+    """See to it that the unit was on: one that is off, or has tripped, draws next to nothing and shows no standby.
+
+    Raises
+    ------
+    MeasurementError
+        If an output that was logged stands below half its rated voltage.
+    """
+    for output, rating in point.limits.ratings.outputs.items():
+        key = channel_key("output_voltage", output)
+        if point.has(key) and np.isfinite(point.samples(key)).any():
+            point.require(key)
+            voltage = point.mean(key).mean
+            if voltage < 0.5 * rating.voltage:
+                msg = (
+                    f"output {output} stands at {voltage:.4g} V, under half its rated voltage: the unit is off or has "
+                    f"tripped, and this is no no-load power ({point.where})"
+                )
+                raise MeasurementError(msg)

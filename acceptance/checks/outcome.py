@@ -31,6 +31,7 @@ class Candidate:
     reason: str = ""
     text: str | None = None  # a value in words, such as a behaviour
     text_meets: bool | None = None
+    at: str = ""  # the operating condition that was run, where the requirement's condition leaves it open
 
     @property
     def where(self) -> str:
@@ -54,6 +55,14 @@ class Outcome:
     note: str = ""
     formula: str = ""
     deviations: tuple[str, ...] = ()
+    is_magnitude: bool = False  # of a signed value: what is below -high does not meet the limit either
+
+    @property
+    def bounds(self) -> tuple[float | None, float | None]:
+        """Between what the true value must lie to conform."""
+        if self.is_magnitude and self.high is not None and self.low is None:
+            return -self.high, self.high
+        return self.low, self.high
 
 
 @dataclass(frozen=True, slots=True)

@@ -11,7 +11,9 @@ from acceptance.checks.conditions import (
     describe,
     matching,
     missing_dwell,
+    not_taken_in,
     output_of,
+    untold,
 )
 from acceptance.checks.figures import voltage_figures
 from acceptance.checks.outcome import Candidate, CheckResult, Outcome, Used
@@ -45,11 +47,12 @@ def _outcome(requirement: OutputVoltage, points: Points) -> Outcome:
         unit="V",
         low=low,
         high=high,
-        candidates=tuple(_candidate(point, output, condition) for point in found),
+        candidates=(*(_candidate(point, output, condition) for point in found), *untold(points, condition)),
         reason="" if found else missing_dwell(points, condition),
         output=output,
         note=requirement.note or "",
         formula="mean of the output voltage at the terminals",
+        deviations=not_taken_in(points, condition),
     )
 
 
@@ -63,7 +66,7 @@ def _candidate(point: Point, output: str, condition: Condition) -> Candidate:
     used = (Used(point, describe(point)),)
     try:
         point.require(*condition_channels(condition))
-        return Candidate(used, point.voltage(output))
+        return Candidate(used, point.voltage(output), at=describe(point))
     except MeasurementError as problem:
         return Candidate(used, reason=str(problem))
 

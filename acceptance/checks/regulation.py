@@ -3,25 +3,32 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import replace
+from dataclasses import dataclass, replace
 
 from acceptance.checks.conditions import (
     Condition,
+    by_input,
+    by_load,
     condition_channels,
     condition_of,
+    describe,
+    input_words,
     load_tolerance,
     matching,
     meets_input,
     meets_load,
     missing_dwell,
+    not_taken_in,
     output_of,
     share,
+    untold,
 )
 from acceptance.checks.figures import voltage_figures
 from acceptance.checks.outcome import Candidate, CheckResult, Outcome, Used
 from acceptance.errors import MeasurementError
 from acceptance.limitfile.model import LineRegulation, LoadRegulation
 from acceptance.points.point import Estimate, Point, Points
+from acceptance.points.propagation import expanded
 
 __all__ = ["check_line_regulation", "check_load_regulation", "regulation"]
 
@@ -43,13 +50,27 @@ def regulation(voltages: Sequence[Estimate], reference: Estimate) -> Estimate:
     MeasurementError
         If the reference is zero.
     """
-    largest = max(voltages, key=lambda voltage: voltage.nominal)
-    smallest = min(voltages, key=lambda voltage: voltage.nominal)
+    # by place, so that equal readings are still two readings, each with an error of its own
+    order = sorted(voltages, key=lambda voltage: voltage.nominal)
+    smallest, largest = order[0], order[-1]
     if not abs(reference.nominal) > 0:
         msg = "the reference voltage is zero"
         raise MeasurementError(msg)
     sign = 1.0 if reference.nominal > 0 else -1.0
     return Estimate.of(sign * (largest.value - smallest.value) / reference.value, *voltages, reference)
+
+
+@dataclass(frozen=True, slots=True)
+class Sweep:
+    """What one regulation is formed from: the points of one span, at one value of whatever was held."""
+
+    output: str
+    inside: Sequence[Point]  # the points of the span, ends included
+    reference: Sequence[Point] | float  # points it is referred to, or a voltage [V]
+    referred_to: str  # what those are, in words
+    has_both_ends: bool  # by two different points
+    held: str  # at what the sweep was run, in words
+    role: Callable[[Point], str]
 
 
 def check_load_regulation(requirements: Sequence[LoadRegulation], points: Points) -> CheckResult:
@@ -66,19 +87,10 @@ def _load_regulation(requirement: LoadRegulation, points: Points) -> Outcome:
     others = replace(given, loads={**given.loads, output: None})
     ends = [replace(others, loads={**others.loads, output: load}) for load in span]
     problem = "; ".join(missing_dwell(points, end) for end in ends if not matching(points, end))
-    groups = [
-        group for group in _by_input(matching(points, others)) if all(_meets_any(group, output, load) for load in span)
-    ]
-    if not problem and not groups:
+    sweeps = [_load_sweep(requirement, output, group) for group in by_input(matching(points, others))]
+    judged, left_out = _judged(sweeps, ends[0], requirement.max)
+    if not problem and not judged:
         problem = f"both ends of the load were run, but not at one input voltage ({ends[0]}; {ends[1]})"
-    candidates: list[Candidate] = []
-    for group in groups if not problem else []:
-        reference = _load_reference(requirement, output, group, points)
-        if isinstance(reference, str):
-            problem = reference
-        else:
-            inside = [point for point in group if _is_between(point, output, span)]
-            candidates.append(_candidate(output, inside, reference=reference, condition=ends[0], role=_load_role))
     words = str(others)
     condition = ", ".join([f"load {100 * span[0]:g} % to {100 * span[1]:g} %", *([words] if words else [])])
     return Outcome(
@@ -87,39 +99,45 @@ def _load_regulation(requirement: LoadRegulation, points: Points) -> Outcome:
         condition=f"{condition}, relative to {requirement.relative_to}",
         unit="",
         high=requirement.max,
-        candidates=tuple(candidates),
-        reason=problem if not candidates else "",
+        candidates=() if problem else (*judged, *untold(points, others)),
+        reason=problem,
         output=output,
         note=requirement.note or "",
         formula=f"(largest − smallest output voltage) / output voltage at {_in_words(requirement.relative_to)}",
+        deviations=() if problem else (*left_out, *not_taken_in(points, others)),
+        is_magnitude=True,
     )
 
 
-def _by_input(inside: Sequence[Point]) -> list[list[Point]]:
-    """The points by input voltage: with `input: any` each input voltage is looked at by itself."""
-    return _grouped(inside, lambda point: point.input_voltage() or 0.0, lambda voltage: 0.01 * abs(voltage))
+def _load_sweep(requirement: LoadRegulation, output: str, group: Sequence[Point]) -> Sweep:
+    span = (requirement.from_, requirement.to)
+    ends = [[point for point in group if meets_load(point, output, load)] for load in span]
+    reference: list[Point] | float
+    if requirement.relative_to == "nominal":
+        reference = group[0].limits.ratings.outputs[output].voltage
+    else:
+        load = _REFERENCE_LOADS[requirement.relative_to]
+        reference = [point for point in group if meets_load(point, output, load)]
+    inside = [point for point in group if _is_between(point, output, span)]
+    return Sweep(
+        output=output,
+        inside=inside,
+        reference=reference,
+        referred_to=_in_words(requirement.relative_to),
+        has_both_ends=_are_two(*ends),
+        held=input_words(group),
+        role=lambda point: _load_role(point, output),
+    )
 
 
-def _grouped(
-    inside: Sequence[Point], value: Callable[[Point], float], width: Callable[[float], float]
-) -> list[list[Point]]:
-    """Points in groups that lie within a width of the group's smallest value, each in the order of the log."""
-    groups: list[list[Point]] = []
-    for point in sorted(inside, key=value):
-        start = value(groups[-1][0]) if groups else 0.0
-        if groups and value(point) - start <= 2 * width(start):
-            groups[-1].append(point)
-        else:
-            groups.append([point])
-    return [sorted(group, key=lambda point: point.index) for group in groups]
-
-
-def _meets_any(group: Sequence[Point], output: str, load: float) -> bool:
-    return any(meets_load(point, output, load) for point in group)
+def _are_two(low: Sequence[Point], high: Sequence[Point]) -> bool:
+    """Whether both ends were run, and not by one and the same dwell."""
+    return any(first is not second for first in low for second in high)
 
 
 def _in_words(reference: str) -> str:
-    return "its rated value" if reference == "nominal" else reference
+    """The reference as a report says it."""
+    return {"nominal": "its rated value", "half load": "half load (50 %)"}.get(reference, reference)
 
 
 def _is_between(point: Point, output: str, span: tuple[float, float]) -> bool:
@@ -128,60 +146,11 @@ def _is_between(point: Point, output: str, span: tuple[float, float]) -> bool:
     if fraction is None:
         return False
     low, high = (span[0] - load_tolerance(span[0], point.limits), span[1] + load_tolerance(span[1], point.limits))
-    return low <= fraction <= high or meets_load(point, output, span[0])
+    return low <= fraction <= high or any(meets_load(point, output, load) for load in span)
 
 
 def _load_role(point: Point, output: str) -> str:
     return f"load {share(point.load_fraction(output) or 0.0)}"
-
-
-def _input_role(point: Point, output: str) -> str:
-    return f"input {point.input_voltage() or 0.0:.4g} V"
-
-
-def _load_reference(
-    requirement: LoadRegulation, output: str, group: Sequence[Point], points: Points
-) -> list[Point] | float | str:
-    """Points that the spread is referred to, the rated voltage, or why there is none."""
-    if requirement.relative_to == "nominal":
-        return points.limits.ratings.outputs[output].voltage
-    load = _REFERENCE_LOADS[requirement.relative_to]
-    found = [point for point in group if meets_load(point, output, load)]
-    return found or f"no dwell at load {100 * load:g} %, which the regulation is to be relative to"
-
-
-def _candidate(
-    output: str,
-    inside: Sequence[Point],
-    *,
-    reference: Sequence[Point] | float,
-    condition: Condition,
-    role: Callable[[Point, str], str],
-) -> Candidate:
-    """The spread over the points, referred to the reference that makes it largest."""
-    roles = [role(point, output) for point in inside]
-    try:
-        needed = condition_channels(condition)
-        for point in [*inside, *([] if isinstance(reference, float) else reference)]:
-            point.require(*needed)
-        voltages = [point.voltage(output) for point in inside]
-        extra: list[Used] = []
-        if isinstance(reference, float):
-            value = regulation(voltages, Estimate(reference))
-        else:
-            smallest = min(reference, key=lambda point: abs(point.voltage(output).nominal))
-            value, extra = regulation(voltages, smallest.voltage(output)), [Used(smallest, "reference")]
-    except MeasurementError as problem:
-        return Candidate(tuple(map(Used, inside, roles)), reason=str(problem))
-    return Candidate((*_extremes(inside, voltages, roles), *extra), value)
-
-
-def _extremes(inside: Sequence[Point], voltages: Sequence[Estimate], roles: Sequence[str]) -> list[Used]:
-    order = sorted(range(len(inside)), key=lambda i: voltages[i].nominal)
-    return [
-        Used(inside[order[-1]], f"largest, {roles[order[-1]]}"),
-        Used(inside[order[0]], f"smallest, {roles[order[0]]}"),
-    ]
 
 
 def check_line_regulation(requirements: Sequence[LineRegulation], points: Points) -> CheckResult:
@@ -193,37 +162,43 @@ def _line_regulation(requirement: LineRegulation, points: Points) -> Outcome:
     limits, output = points.limits, output_of(requirement, points.limits)
     outputs = (output,) if requirement.output else limits.outputs
     at_load = condition_of(requirement.at, limits, outputs)
-    span = (requirement.from_, requirement.to)
-    rated = limits.ratings.input.voltage
+    rated, span = limits.ratings.input.voltage, (requirement.from_, requirement.to)
     needed = [replace(at_load, input=voltage) for voltage in dict.fromkeys((*span, rated))]
     problem = "; ".join(missing_dwell(points, condition) for condition in needed if not matching(points, condition))
     if points.log.stated.get("input_voltage") is not None and "input_voltage" not in points.log.samples:
         problem = "the input voltage is only stated, not logged, so that no span of it is seen; record it"
-    inside = [point for point in matching(points, at_load) if _is_between_inputs(point, span)]
-    groups = [g for g in _by_load(inside, output) if all(any(meets_input(p, v) for p in g) for v in (*span, rated))]
-    if not problem and not groups:
+    sweeps = [_line_sweep(requirement, output, group) for group in by_load(matching(points, at_load), output)]
+    judged, left_out = _judged(sweeps, needed[0], requirement.max)
+    if not problem and not judged:
         problem = "both ends of the input were run, but not at one load"
-    candidates: list[Candidate] = []
-    for group in groups if not problem else []:
-        reference = [point for point in group if meets_input(point, rated)]
-        candidates.append(_candidate(output, group, reference=reference, condition=needed[0], role=_input_role))
     return Outcome(
         name=requirement.name or "",
         characteristic="line_regulation",
         condition=", ".join([f"input {span[0]:g} V to {span[1]:g} V", str(at_load)]),
         unit="",
         high=requirement.max,
-        candidates=tuple(candidates),
+        candidates=() if problem else (*judged, *untold(points, at_load)),
         reason=problem,
         output=output,
         note=requirement.note or "",
         formula=f"(largest − smallest output voltage) / output voltage at {rated:g} V input",
+        deviations=() if problem else (*left_out, *not_taken_in(points, at_load)),
+        is_magnitude=True,
     )
 
 
-def _by_load(inside: Sequence[Point], output: str) -> list[list[Point]]:
-    """The points by load: with `load: any` each load is looked at by itself."""
-    return _grouped(inside, lambda point: point.load_fraction(output) or 0.0, lambda load: 0.02 if load > 0.1 else 0.01)
+def _line_sweep(requirement: LineRegulation, output: str, group: Sequence[Point]) -> Sweep:
+    span, rated = (requirement.from_, requirement.to), group[0].limits.ratings.input.voltage
+    ends = [[point for point in group if meets_input(point, voltage)] for voltage in span]
+    return Sweep(
+        output=output,
+        inside=[point for point in group if _is_between_inputs(point, span)],
+        reference=[point for point in group if meets_input(point, rated)],
+        referred_to=f"input {rated:g} V",
+        has_both_ends=_are_two(*ends),
+        held=_load_role(group[0], output),
+        role=lambda point: f"input {point.input_voltage() or 0.0:.4g} V",
+    )
 
 
 def _is_between_inputs(point: Point, span: tuple[float, float]) -> bool:
@@ -231,3 +206,72 @@ def _is_between_inputs(point: Point, span: tuple[float, float]) -> bool:
     if voltage is None:
         return False
     return span[0] <= voltage <= span[1] or any(meets_input(point, end) for end in span)
+
+
+# --- both -----------------------------------------------------------------------------------------------------------
+
+
+def _judged(sweeps: Sequence[Sweep], condition: Condition, limit: float) -> tuple[list[Candidate], list[str]]:
+    """Candidates of the whole sweeps, and of those parts that exceed the limit already; the other parts in words.
+
+    The spread of a part is a lower bound of the whole one's, so a part can fail a unit and never pass it.
+    """
+    judged: list[Candidate] = []
+    left_out: list[str] = []
+    for sweep in sweeps:
+        if not sweep.inside:
+            continue
+        found = _candidates(sweep, condition)
+        if sweep.has_both_ends:
+            judged += found
+            continue
+        beyond = [c for c in found if c.estimate is not None and c.estimate.nominal > limit]
+        judged += beyond
+        if not beyond:
+            where = ", ".join(describe(point) for point in sweep.inside[:3])
+            left_out.append(f"at {sweep.held} only part of the span was run, and is not judged ({where})")
+    return judged, left_out
+
+
+def _candidates(sweep: Sweep, condition: Condition) -> list[Candidate]:
+    """The spread by the readings themselves, and, where it takes other points, by what their uncertainty adds."""
+    try:
+        voltages = _voltages(sweep, condition)
+        if not isinstance(sweep.reference, float) and not sweep.reference:
+            msg = f"at {sweep.held} there is no dwell at {sweep.referred_to}, which the regulation is to be relative to"
+            raise MeasurementError(msg)
+        pairs = dict.fromkeys(_extremes(voltages, sweep.inside, k) for k in (0.0, 1.0))
+        return [_candidate(sweep, pair) for pair in pairs]
+    except MeasurementError as problem:
+        used = tuple(Used(point, sweep.role(point)) for point in sweep.inside)
+        return [Candidate(used, reason=str(problem), at=sweep.held)]
+
+
+def _voltages(sweep: Sweep, condition: Condition) -> list[Estimate]:
+    reference = [] if isinstance(sweep.reference, float) else sweep.reference
+    for point in [*sweep.inside, *reference]:
+        point.require(*condition_channels(condition))
+    return [point.voltage(sweep.output) for point in sweep.inside]
+
+
+def _extremes(voltages: Sequence[Estimate], inside: Sequence[Point], k: float) -> tuple[Point, Point]:
+    """The points of the largest and smallest voltage, k times their U added and taken off."""
+    confidence = inside[0].limits.decision.confidence
+    bounds = [(v.nominal, k * expanded(v.value, confidence).expanded if k else 0.0) for v in voltages]
+    order = range(len(inside))
+    smallest = min(order, key=lambda i: (bounds[i][0] - bounds[i][1], i))
+    # of equal readings two different ones are taken, since each has an error of its own
+    largest = max(order, key=lambda i: (bounds[i][0] + bounds[i][1], i))
+    return inside[largest], inside[smallest]
+
+
+def _candidate(sweep: Sweep, pair: tuple[Point, Point]) -> Candidate:
+    """The spread between two points, referred to the reference that makes it largest."""
+    largest, smallest = pair
+    voltages = [largest.voltage(sweep.output), smallest.voltage(sweep.output)]
+    used = [Used(largest, f"largest, {sweep.role(largest)}"), Used(smallest, f"smallest, {sweep.role(smallest)}")]
+    if isinstance(sweep.reference, float):
+        return Candidate(tuple(used), regulation(voltages, Estimate(sweep.reference)), at=sweep.held)
+    least = min(sweep.reference, key=lambda point: abs(point.voltage(sweep.output).nominal))
+    value = regulation(voltages, least.voltage(sweep.output))
+    return Candidate((*used, Used(least, "reference")), value, at=sweep.held)

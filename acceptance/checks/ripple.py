@@ -14,7 +14,9 @@ from acceptance.checks.conditions import (
     describe,
     matching,
     missing_dwell,
+    not_taken_in,
     output_of,
+    untold,
 )
 from acceptance.checks.outcome import Candidate, CheckResult, Outcome, Used
 from acceptance.errors import MeasurementError
@@ -46,18 +48,22 @@ def _outcome(requirement: Ripple, points: Points) -> Outcome:
         condition=f"{condition}, {requirement.kind}{bandwidth}",
         unit="V",
         high=requirement.max,
-        candidates=tuple(_candidate(point, key, condition) for point in found),
+        candidates=(
+            *(_candidate(point, key, condition, requirement.max) for point in found),
+            *(untold(points, condition) if key in points.log.samples else ()),
+        ),
         reason=reason,
         output=output,
         note=requirement.note or "",
         formula="the largest reading",
         deviations=(
+            *not_taken_in(points, condition),
             f"kind ({requirement.kind}) and bandwidth are those of the limits file; the log does not show them",
         ),
     )
 
 
-def _candidate(point: Point, key: str, condition: Condition) -> Candidate:
+def _candidate(point: Point, key: str, condition: Condition, limit: float) -> Candidate:
     used = (Used(point, describe(point)),)
     try:
         point.require(key, *condition_channels(condition))
@@ -69,8 +75,36 @@ def _candidate(point: Point, key: str, condition: Condition) -> Candidate:
         if largest < 0:
             msg = f"{key} reads {largest:.4g} V, below zero ({point.where})"
             raise MeasurementError(msg)
+        _see_to_settling(point, key, largest=largest, limit=limit)
         unstated = frozenset() if point.bench.is_stated(key) else frozenset({key})
         # of a largest reading there is no mean, so nothing of type A; what the scope may be wrong by is all
-        return Candidate(used, Estimate(point.bench.correct(key, largest), unstated, single=True))
+        return Candidate(used, Estimate(point.bench.correct(key, largest), unstated, single=True), at=describe(point))
     except MeasurementError as problem:
         return Candidate(used, reason=str(problem))
+
+
+def _see_to_settling(point: Point, key: str, *, largest: float, limit: float) -> None:
+    """See to it that no reading above the limit was left out as settling, with the load already set.
+
+    Raises
+    ------
+    MeasurementError
+        If one was, and the limits or bench file does not say how long settling takes.
+    """
+    if point.limits.settle is not None or largest > limit:
+        return
+    before = slice(point.dwell.begins, point.dwell.first)
+    readings = point.columns[key][before]
+    is_set = np.ones(readings.size, dtype=bool)
+    for output, rating in point.limits.ratings.outputs.items():
+        current = point.columns.get(channel_key("output_current", output))
+        if current is not None:
+            median = (point.median_load_fraction(output) or 0.0) * rating.current
+            is_set &= np.abs(current[before] - median) <= 0.02 * rating.current
+    above = readings[is_set & (readings > limit)]
+    if above.size:
+        msg = (
+            f"a reading of {1000 * float(above.max()):.4g} mV lies above the limit in what was left out as settling "
+            f"before {point.where}, with the load already set; state under log: settle: how long settling takes"
+        )
+        raise MeasurementError(msg)

@@ -7,7 +7,7 @@ the output currents and the input voltage. A dwell never spans two tables, two s
 from __future__ import annotations
 
 from collections.abc import Iterable, Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from itertools import pairwise
 
 import numpy as np
@@ -27,8 +27,10 @@ INPUT_SHARE = 0.01  # of the input voltage: the tolerance within which a conditi
 BY_HAND_ROWS = 24  # in so short a table a row may be a condition of its own
 ROWS_BY_HAND = 200  # a longer table whose settings all differ was not written by hand, but read back
 FEW = 5  # samples; a log whose settings are mostly held for fewer is kept by hand
+SUSPICIOUS = 0.3  # of a dwell: nothing that has settled moves for so long after the load has arrived
 HALF_LEFT = 8  # samples; below this a half says nothing about settling
 SETTLING_QUANTITIES = ("output_current", "output_voltage", "input_power")
+LARGEST = 1e150  # beyond it is no reading, and sums of squares overflow
 BY_HAND = "one row a condition"
 DECLARED = "load setting"
 
@@ -73,6 +75,7 @@ class _Samples:
     settle: float | None  # [s]
     min_dwell: float | None  # [s]
     smallest: Mapping[str, float]  # output current channel -> smallest change that is a new load [A]
+    left_out: list[tuple[Span, str]] = field(default_factory=list)  # what is no dwell, and why
 
     def keys(self, *quantities: str) -> list[str]:
         """The channels of these quantities, in this order."""
@@ -119,15 +122,19 @@ def find_dwells(
     dwells: list[Dwell] = []
     for group, borders in _groups(log, samples):
         for steady in _steady_stretches(samples, group, borders):
-            first, stop = _settled_span(samples, steady)
+            first, stop, slow = _settled_span(samples, steady)
             if first < stop:
                 where = str(stage.iat[first]), int(table[first])
                 dwells.append(Dwell(first, stop, steady.begins, *where, steady.from_, _drift(samples, first, stop)))
-                if settle is None and stop - first >= HALF_LEFT and first - steady.first >= (stop - steady.first) // 2:
+                if slow:
+                    doubts.append(_slow_settling(log, steady, first, slow))
+                elif (
+                    settle is None and stop - first >= HALF_LEFT and first - steady.first >= (stop - steady.first) // 2
+                ):
                     doubts.append(_half_settling(log, steady))
             else:
                 doubts.append(_all_settling(log, steady, settle))
-    return Dwells(tuple(dwells), (*_by_hand_doubts(dwells, settle), *doubts))
+    return Dwells(tuple(dwells), (*_by_hand_doubts(dwells, settle), *_left_out(log, samples.left_out), *doubts))
 
 
 # --- doubts -----------------------------------------------------------------------------------------------------
@@ -151,6 +158,29 @@ def _half_settling(log: BenchLog, steady: _Steady) -> Doubt:
     return Doubt("slow settling", text, spans=spans, remedy="hold each condition for longer, or state settle")
 
 
+def _slow_settling(log: BenchLog, steady: _Steady, first: int, slow: Sequence[str]) -> Doubt:
+    """What was left out moved while the load stood still: it may be settling, or the very fault that is looked for."""
+    table, begin, last = log.rows_of((steady.begins, steady.stop))
+    names = " and ".join(slow)
+    text = (
+        f"{table}, lines {begin} to {last}: {names} moved through the first {first - steady.first} of "
+        f"{steady.stop - steady.first} samples, with the load already set"
+    )
+    spans = ((steady.begins, steady.stop),)
+    remedy = "hold each condition for longer, or state under log: settle: how long it is given to settle"
+    return Doubt("slow settling", text, bars=True, channels=tuple(slow), spans=spans, remedy=remedy)
+
+
+def _left_out(log: BenchLog, left_out: Sequence[tuple[Span, str]]) -> Iterator[Doubt]:
+    """What could have been a dwell and is none, by the reason."""
+    for reason in dict.fromkeys(why for _, why in left_out):
+        spans = tuple(span for span, why in left_out if why == reason)
+        table, first, last = log.rows_of(spans[0])
+        more = f", and {len(spans) - 1} more" if len(spans) > 1 else ""
+        text = f"{len(spans)} conditions were left out, {reason} ({table}, lines {first} to {last}{more})"
+        yield Doubt("dwell left out", text.replace("1 conditions were", "1 condition was", 1), spans=spans)
+
+
 def _by_hand_doubts(dwells: Sequence[Dwell], settle: float | None) -> Iterator[Doubt]:
     rows = tuple((dwell.begins, dwell.stop) for dwell in dwells if dwell.stop - dwell.begins == 1)
     if rows and settle:
@@ -168,8 +198,8 @@ def _channels_used(log: BenchLog) -> list[str]:
 
 
 def _finite(x: Array) -> Array:
-    """The samples, contiguous, NaN for what is not finite; copied only where something changes."""
-    infinite = np.isinf(x)
+    """The samples, contiguous, NaN for what is no reading; copied only where something changes."""
+    infinite = np.abs(x) > LARGEST
     return np.where(infinite, np.nan, x) if infinite.any() else np.ascontiguousarray(x)
 
 
@@ -214,7 +244,10 @@ def _steady_stretches(samples: _Samples, group: Span, borders: Sequence[int]) ->
             out += _declared(samples, (first, stop), settings[:, first - group[0] : stop - group[0]])
     if samples.min_dwell is None or samples.time is None:
         return out
-    return [s for s in out if s.stop - s.begins == 1 or _duration(samples.time[s.first : s.stop]) >= samples.min_dwell]
+    kept = [s for s in out if s.stop - s.begins == 1 or _duration(samples.time[s.first : s.stop]) >= samples.min_dwell]
+    why = f"shorter than min_dwell = {samples.min_dwell:g} s"
+    samples.left_out.extend(((s.begins, s.stop), why) for s in out if s not in kept)
+    return kept
 
 
 def _duration(time: Array) -> float:
@@ -258,6 +291,9 @@ def _declared(samples: _Samples, block: Span, settings: Array) -> list[_Steady]:
             out += _found(samples, (block[0] + first, block[0] + stop))
         elif stop - first > 1 or by_hand:
             out += _within((block[0] + first, block[0] + stop), inputs)
+        else:
+            span = (block[0] + first, block[0] + stop)
+            samples.left_out.append((span, "a load setting of one sample being part of a ramp"))
     return out
 
 
@@ -329,7 +365,7 @@ def _levels(samples: _Samples, key: str, block: Span, *, by_hand: bool = False) 
     shortest = 1 if by_hand else 2
     dwell = None if samples.min_dwell is None else 1  # the clock decides later, not the count
     if key == "input_voltage":
-        tolerance = INPUT_SHARE * float(np.median(np.abs(x[known])))
+        tolerance = INPUT_SHARE * float(np.sort(np.abs(x[known]))[known.size // 2])  # no mean that may overflow
         levels = find_levels(x, tolerance=tolerance, min_samples=shortest, min_dwell=dwell)
     else:
         smallest = samples.smallest.get(key, 0.0)
@@ -356,18 +392,28 @@ def _source(told: Mapping[str, Sequence[Span]], first: int) -> str:
 # --- settling ---------------------------------------------------------------------------------------------------
 
 
-def _settled_span(samples: _Samples, steady: _Steady) -> Span:
-    """The samples of a stretch without its settling; empty where nothing is left."""
+def _settled_span(samples: _Samples, steady: _Steady) -> tuple[int, int, tuple[str, ...]]:
+    """The samples of a stretch without its settling, first and stop, and the channels that settled suspiciously long.
+
+    A channel is suspicious that still moves through three tenths of a dwell after the load has arrived, or through
+    any of a dwell of a few samples, where nothing tells settling from a fault.
+    """
     first, stop = steady.first, steady.stop
     if stop - steady.begins == 1:
-        return first, stop
+        return first, stop, ()
     if steady.from_ == DECLARED:
         currents = [samples.channels[key][first:stop] for key in samples.keys("output_current")]
         stop -= max((samples_ahead(part) for part in currents), default=0)
     if samples.settle is not None and samples.time is not None:
-        return max(first, _after(samples.time, (steady.begins, stop), samples.settle)), stop
-    parts = [samples.channels[key][first:stop] for key in samples.keys(*SETTLING_QUANTITIES)]
-    return first + max((settling_samples(part) for part in parts), default=0), stop
+        return max(first, _after(samples.time, (steady.begins, stop), samples.settle)), stop, ()
+    if samples.time is None and stop - first < HALF_LEFT:
+        return first, stop, ()  # rows by hand: whoever wrote them down waited first
+    leads = {key: settling_samples(samples.channels[key][first:stop]) for key in samples.keys(*SETTLING_QUANTITIES)}
+    by_load = max((lead for key, lead in leads.items() if key.startswith("output_current")), default=0)
+    whole = stop - first
+    enough = 1 if whole < HALF_LEFT else SUSPICIOUS * whole
+    slow = tuple(k for k, lead in leads.items() if not k.startswith("output_current") and lead - by_load >= enough)
+    return first + max(leads.values(), default=0), stop, slow
 
 
 def _after(time: Array, span: Span, wait: float) -> int:

@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass, field
 
+from acceptance.errors import MeasurementError
 from acceptance.limitfile.accuracy import Accuracy
 from acceptance.limitfile.limits import Limits, Meter, ShuntResistor, Wiring
 from acceptance.points.propagation import Source, Value, of_source
@@ -17,6 +18,7 @@ from acceptance.points.propagation import Source, Value, of_source
 __all__ = ["Bench", "converter_step_uncertainty", "rectangular"]
 
 RECTANGLE = math.sqrt(3.0)
+OVER_RANGE = 1.25  # common practice, no source: meters read some way beyond the range they are named by
 
 
 def rectangular(bound: float) -> float:
@@ -69,7 +71,14 @@ class Bench:
         return meter is not None and meter.is_stated
 
     def correct(self, key: str, reading: float) -> Value:
-        """The reading with the errors of its instrument; a plain number where nothing is stated about it."""
+        """The reading with the errors of its instrument; a plain number where nothing is stated about it.
+
+        Raises
+        ------
+        MeasurementError
+            If the reading lies outside the range that is stated for the instrument.
+        """
+        self._see_to_range(key, reading)
         value: Value = reading
         for error in self._errors(key, reading):
             if not error.share:
@@ -79,6 +88,31 @@ class Bench:
                 sensitivity = math.copysign(error.u / error.per_unit, reading)
                 value = value + sensitivity * self._share(error.share, error.source, error.per_unit)
         return value
+
+    def stated(self, key: str, value: float) -> Value:
+        """A value that is only stated, with the errors of what measured it: the same ones wherever it enters."""
+        name = f"stated {key}"
+        if name not in self._shared:
+            self._shared[name] = self.correct(key, value)
+        return self._shared[name]
+
+    def _see_to_range(self, key: str, reading: float) -> None:
+        meter = self.limits.meter(key)
+        if meter is None:
+            return
+        span = meter.meter_range
+        if isinstance(span, float) and abs(reading) > OVER_RANGE * span:
+            msg = f"{key} reads {reading:.5g}, and the range stated for {meter.device} is {span:g}; see meter_range:"
+            raise MeasurementError(msg)
+        if meter.converter is not None:
+            at_input = reading * meter.shunt.resistance if meter.shunt is not None else reading
+            slack = 0.001 * (meter.converter.high - meter.converter.low)
+            if not meter.converter.low - slack <= at_input <= meter.converter.high + slack:
+                msg = (
+                    f"{key} reads {reading:.5g}, which is {at_input:.4g} V at the converter of {meter.device}, "
+                    f"and its span is {meter.converter.low:g} V to {meter.converter.high:g} V; see adc:"
+                )
+                raise MeasurementError(msg)
 
     def standard_uncertainty(self, key: str, reading: float) -> float:
         """What the instrument adds to a reading, all its errors together."""

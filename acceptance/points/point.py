@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 
 from acceptance.bench.log import BenchLog, channel_key
 from acceptance.errors import MeasurementError
-from acceptance.limitfile.limits import Limits
+from acceptance.limitfile.limits import Limits, Wiring
 from acceptance.points.dwells import Dwell
 from acceptance.points.instrument import Bench
 from acceptance.points.propagation import Source, Value, coverage_factor, nominal, of_source
@@ -136,9 +136,21 @@ class Point:
     def load_fraction(self, output: str) -> float | None:
         """Measured current over rated current; None where it was not logged."""
         key = channel_key("output_current", output)
-        if not self.has(key) or not np.isfinite(self.samples(key)).any():
+        if not self.has(key):
             return None
-        return self.mean(key).mean / self.limits.ratings.outputs[output].current
+        try:
+            mean = self.mean(key)
+        except MeasurementError:  # no reading, or none over most of the dwell
+            return None
+        return mean.mean / self.limits.ratings.outputs[output].current
+
+    def median_load_fraction(self, output: str) -> float | None:
+        """Median of the measured current over rated current; None where it was not logged."""
+        if self.load_fraction(output) is None:
+            return None
+        key = channel_key("output_current", output)
+        median = self._keep(("median", key), lambda: float(np.nanmedian(self.samples(key))))
+        return median / self.limits.ratings.outputs[output].current
 
     def is_unloaded(self, output: str) -> bool:
         """Whether an output's |I| is below its own uncertainty or 0.2 % of rated current, whichever is larger."""
@@ -154,10 +166,12 @@ class Point:
 
     def input_voltage(self) -> float | None:
         """Mean input voltage at the unit, or the one that is only stated; None where neither is there. [V]"""
-        if self.has("input_voltage") and np.isfinite(self.samples("input_voltage")).any():
+        if self.has("input_voltage"):
+            if not np.isfinite(self.samples("input_voltage")).any():
+                return None
             wiring, key = self.limits.wiring("input"), "input_current"
             drop = wiring.resistance * self.mean(key).mean if wiring is not None and self.has(key) else 0.0
-            return self.mean("input_voltage").mean - drop
+            return float(np.nanmean(self.samples("input_voltage"))) - drop
         return self.log.stated.get("input_voltage")
 
     # --- powers -----------------------------------------------------------------------------------------------------
@@ -253,10 +267,9 @@ class Point:
         wiring = self.limits.wiring("input")
         if wiring is None:
             return power
+        lost, unstated = self._lead_power("input", "", wiring, rows=rows)
         squares = self._at("input_current", rows) ** 2
-        lost = self.bench.lead("input", "", wiring) * float(squares.mean())
-        unstated = power.unstated if wiring.bound is not None else power.unstated | {"lead_resistance input"}
-        return Power(power.samples - wiring.resistance * squares, power.mean - lost, unstated)
+        return Power(power.samples - wiring.resistance * squares, power.mean - lost, power.unstated | unstated)
 
     def _output_power(self, output: str, rows: NDArray[np.bool_]) -> Power:
         """Power at an output's terminals, what the leads drop put back: (V + I R) I."""
@@ -265,25 +278,35 @@ class Point:
         wiring = self.limits.wiring("output", output)
         if wiring is None:
             return power
-        i = self._at(current, rows)
-        gained = self.bench.lead("output", output, wiring) * float((i * i).mean())
-        unstated = power.unstated if wiring.bound is not None else power.unstated | {_lead(output, self.limits)}
-        return Power(power.samples + wiring.resistance * i * i, power.mean + gained, unstated)
+        gained, unstated = self._lead_power("output", output, wiring, rows=rows)
+        squares = self._at(current, rows) ** 2
+        return Power(power.samples + wiring.resistance * squares, power.mean + gained, power.unstated | unstated)
+
+    def _lead_power(
+        self, side: str, output: str, wiring: Wiring, *, rows: NDArray[np.bool_]
+    ) -> tuple[Value, frozenset[str]]:
+        """Power burnt in leads, R mean(I^2), with the errors of both, and what of them is not stated. [W]"""
+        key = channel_key(f"{side}_current", output)
+        current = self._at(key, rows)
+        mean = float(current.mean())
+        square = float((current * current).mean()) + 2 * mean * (self._corrected(key, mean) - mean)
+        unstated = self._unstated([key])
+        if wiring.bound is None:
+            unstated |= {_lead(output, self.limits) if output else "lead_resistance input"}
+        return self.bench.lead(side, output, wiring) * square, unstated
 
     def _product(self, keys: Sequence[str], rows: NDArray[np.bool_]) -> Power:
         """Power as a product of channels, sample by sample.
 
-        The mean of the product is c times the product of the means, and c is known far better than the means are.
+        The errors of the instruments act on the mean through the derivatives: mean I for the error of V, and so on.
         """
         columns = [self._at(key, rows) for key in keys]
         samples = np.prod(columns, axis=0)
         means = [float(column.mean()) for column in columns]
-        product = float(np.prod(means))
-        if product == 0.0:
-            return Power(samples, float(samples.mean()), self._unstated(keys))
-        mean: Value = float(samples.mean()) / product
-        for key, value in zip(keys, means, strict=True):
-            mean = mean * self._corrected(key, value)
+        mean: Value = float(samples.mean())
+        for at, (key, value) in enumerate(zip(keys, means, strict=True)):
+            slope = math.prod(means[:at] + means[at + 1 :])
+            mean = mean + slope * (self._corrected(key, value) - value)
         return Power(samples, mean, self._unstated(keys))
 
     # --- helpers ----------------------------------------------------------------------------------------------------
@@ -306,8 +329,8 @@ class Point:
 
     def _corrected(self, key: str, mean: float) -> Value:
         """A mean with the errors of its instrument, the same errors for whatever is formed from this channel here."""
-        if not self.has(key):  # only stated
-            return self.bench.correct(key, mean)
+        if not self.has(key):  # only stated: one value, so one error at every point
+            return self.bench.stated(key, mean)
         reference = self.mean(key).mean
         error = self._keep(("error", key), lambda: self.bench.correct(key, reference) - reference)
         return mean + error
@@ -323,7 +346,9 @@ class Point:
             msg = f"{key} was not logged"
             raise MeasurementError(msg)
         samples = self.samples(key)
-        finite = samples[np.isfinite(samples)]
+        known = np.isfinite(samples)
+        finite = samples[known]
+        self._enough(known, key)
         if not finite.size:
             msg = f"{key} has no reading ({self.where})"
             raise MeasurementError(msg)
@@ -342,7 +367,21 @@ class Point:
         if not rows.any():
             msg = f"no sample has all of {_words(keys)} ({self.where})"
             raise MeasurementError(msg)
+        self._enough(rows, _words(keys))
         return rows
+
+    def _enough(self, known: NDArray[np.bool_], what: str) -> None:
+        """See to it that no half of the dwell is without a reading; a channel read every n-th sample is enough.
+
+        Raises
+        ------
+        MeasurementError
+            If readings are missing from more than half of the dwell at a stretch.
+        """
+        told = np.flatnonzero(np.concatenate(([True], known, [True])))
+        if known.any() and int(np.diff(told).max()) - 1 > known.size / 2:
+            msg = f"{what}: no reading over more than half of the dwell ({self.where}); record it again"
+            raise MeasurementError(msg)
 
     def _at(self, key: str, rows: NDArray[np.bool_]) -> Floats:
         if self.has(key):

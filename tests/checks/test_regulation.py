@@ -105,7 +105,7 @@ def test_any_input_looks_at_each_input_by_itself():
 def test_half_load_as_reference_must_have_been_run():
     outcome, limits = load_outcome([SWEEP[0], SWEEP[4]], requirement=LOAD.replace("full load", "half load"))
 
-    assert "load 50 %" in decide(outcome, limits.decision).reason
+    assert "no dwell at half load" in decide(outcome, limits.decision).reason
 
 
 def test_line_regulation_is_the_spread_over_the_output_at_rated_input():
@@ -160,3 +160,84 @@ def test_regulation_does_not_depend_on_order_or_scale(volts, scale, random):
     again = regulation([Estimate(v * scale) for v in mixed], Estimate(volts[0] * scale)).nominal
     assert value >= 0
     assert again == pytest.approx(value, rel=1e-9, abs=1e-12)
+
+
+def judged(dwells, requirement, check=check_load_regulation, **kwargs):
+    limits = limits_from(requirement)
+    points = points_from(dwells, limits, **kwargs)
+    outcome = check(limits.requirements, points).outcomes[0]
+    return decide(outcome, limits.decision), outcome
+
+
+def test_equal_readings_are_still_two_readings():
+    """24 / 24 V by a meter of 0.1 V: the spread reads zero, and is known to 0.1 sqrt(2/3) V, not to nothing."""
+    bench = "\ninstruments:\n  output_voltage: {device: M, accuracy: \"0.1 V\"}\n" \
+        "  output_current: {device: L, accuracy: \"0.1 % reading\"}\n"  # fmt: skip
+    rows = [{**adapter(load), "output_voltage main": 12.0} for load in (0.0, 1.0)]
+    outcome, limits = load_outcome(rows, requirement=LOAD.replace("max: 1 %", "max: 0.1 %"), bench=bench)
+
+    estimate = outcome.candidates[0].estimate
+    assert estimate.nominal == 0.0
+    assert expanded(estimate.value, 0.95).standard == pytest.approx(0.1 * math.sqrt(2 / 3) / 12, rel=1e-9)
+    assert decide(outcome, limits.decision).verdict == "fail"
+
+
+def test_the_probability_of_a_magnitude_counts_both_sides():
+    """A spread of zero within +- 1.975 u: 2 Phi(1.975) - 1 = 0.952, not Phi(1.975)."""
+    bench = "\ninstruments:\n  output_voltage: {device: M, accuracy: \"12 mV, k = 2\"}\n" \
+        "  output_current: {device: L, accuracy: \"0.1 % reading\"}\n"  # fmt: skip
+    limit = 100 * 1.975 * 0.006 * math.sqrt(2) / 12
+    rows = [{**adapter(load), "output_voltage main": 12.0} for load in (0.0, 1.0)]
+    outcome, limits = load_outcome(rows, requirement=LOAD.replace("max: 1 %", f"max: {limit:.9f} %"), bench=bench)
+
+    decided = decide(outcome, limits.decision)
+    assert decided.by.probability == pytest.approx(math.erf(1.975 / math.sqrt(2)), abs=1e-6)
+    assert decided.verdict == "fail"
+
+
+def test_a_mains_that_wanders_through_the_sweep_leaves_it_one_sweep():
+    """226.5, 232 and 230 V are one input under any, so that the sagging half-load dwell is in the spread."""
+    rows = [adapter(0.0, vin=226.5), {**adapter(0.5, vin=232.0), "output_voltage main": 11.0}, adapter(1.0, vin=230.0)]
+    decided, _ = judged(rows, LOAD.replace("input: 230 V", "input: any"))
+
+    assert decided.verdict == "fail"
+    assert decided.by.candidate.estimate.nominal == pytest.approx(1.0 / 11.92, rel=1e-12)
+
+
+def test_part_of_a_sweep_that_exceeds_the_limit_already_fails():
+    """At 253 V full load was not run, but no load and half load lie 8 % apart."""
+    part = [adapter(0.0, vin=253.0), {**adapter(0.5, vin=253.0), "output_voltage main": 11.0}]
+    part_with_reference = LOAD.replace("input: 230 V", "input: any").replace("full load", "nominal")
+    decided, _ = judged([*SWEEP, *part], part_with_reference)
+
+    assert decided.verdict == "fail"
+
+
+def test_part_of_a_sweep_within_the_limit_is_named_and_not_judged():
+    decided, outcome = judged([*SWEEP, adapter(1.0, vin=253.0)], LOAD.replace("input: 230 V", "input: any"))
+
+    assert decided.verdict == "pass"
+    assert "at input 253 V only part of the span was run" in outcome.deviations[0]
+
+
+def test_one_dwell_is_not_both_ends():
+    line = LINE.replace("from: 207 V, to: 253 V", "from: 229 V, to: 231 V")
+    decided, _ = judged([adapter(1.0)], line, check_line_regulation)
+
+    assert decided.verdict == "not judged"
+
+
+def test_rated_input_may_lie_outside_the_span():
+    line = LINE.replace("from: 207 V, to: 253 V", "from: 240 V, to: 253 V")
+    rows = [adapter(1.0, vin=vin, volts=12 + 0.0005 * (vin - 230)) for vin in (230.0, 240.0, 253.0)]
+    decided, _ = judged(rows, line, check_line_regulation)
+
+    assert decided.by.candidate.estimate.nominal == pytest.approx(0.0065 / 11.92, rel=1e-9)
+
+
+def test_a_dwell_of_unknown_input_keeps_any_from_being_judged():
+    rows = [*SWEEP, {**adapter(0.5), "input_voltage": math.nan, "output_voltage main": 9.0}]
+    decided, _ = judged(rows, LOAD.replace("input: 230 V", "input: any"))
+
+    assert decided.verdict == "not judged"
+    assert "the input voltage is not known" in decided.reason
