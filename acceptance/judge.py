@@ -16,6 +16,7 @@ from acceptance.checks.outcome import CheckResult
 from acceptance.decision import decide
 from acceptance.limitfile.limits import Limits
 from acceptance.points.dwells import find_dwells
+from acceptance.points.overload import overloads_told
 from acceptance.points.plausible import doubt_points
 from acceptance.points.point import Points, measure_points
 from acceptance.record import Record
@@ -90,11 +91,12 @@ def find_points(log: BenchLog, limits: Limits) -> Points:
     rated = {name: output.current for name, output in limits.ratings.outputs.items()}
     found = find_dwells(log, settle=limits.settle, min_dwell=limits.min_dwell, rated=rated)
     log = replace(log, doubts=(*log.doubts, *found.doubts))
-    points = measure_points(log, found.dwells, limits)
+    points = measure_points(log, overloads_told(log, found.dwells, limits), limits)
     doubts = doubt_points(points)
     if not doubts:
         return points
-    return measure_points(replace(log, doubts=(*log.doubts, *doubts)), found.dwells, limits)
+    dwells = [point.dwell for point in points.all]
+    return measure_points(replace(log, doubts=(*log.doubts, *doubts)), dwells, limits)
 
 
 def check_points(points: Points) -> list[CheckResult]:

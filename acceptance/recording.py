@@ -23,7 +23,7 @@ from acceptance.errors import MeasurementError
 from acceptance.hazards import hazards_of
 from acceptance.limitfile.limits import Limits, Meter
 from acceptance.points.point import Point, Points
-from acceptance.points.propagation import budget, expanded
+from acceptance.points.propagation import budget, expanded, standard_uncertainty
 from acceptance.record import (
     VERSION,
     Alternative,
@@ -178,13 +178,22 @@ def _deviations(decided: Decided, points: Points) -> list[str]:
     by = decided.by
     if by is None:
         return texts
-    if "input" in decided.outcome.condition and "input_voltage" not in points.log.samples:
-        stated = points.log.stated.get("input_voltage")
-        if stated is not None:
-            texts.append(f"the input voltage was stated as {stated:g} V, not logged")
+    stated = points.log.stated
+    if "input" in decided.outcome.condition and "input_voltage" in stated:
+        texts.append(f"the input voltage was stated as {stated['input_voltage']:g} V, not logged")
+    entered = _stated_in(decided, points)
+    texts += [f"{key} was stated as {stated[key]:g}, not logged, and enters the value" for key in entered]
     if any(used.point.readings == 1 for used in by.candidate.used):
         texts.append("single readings: nothing of type A is in the uncertainty")
     return texts
+
+
+def _stated_in(decided: Decided, points: Points) -> list[str]:
+    """The channels of the input power that were only stated, where the value is formed from that power."""
+    if decided.outcome.characteristic not in ("efficiency", "no_load_power") or "input_power" in points.log.samples:
+        return []
+    keys = ("input_current", "power_factor", "input_voltage")
+    return [key for key in keys if key in points.log.stated and key not in points.log.samples]
 
 
 def _calibration(log: BenchLog, limits: Limits) -> list[Finding]:
@@ -283,7 +292,8 @@ def _reading(point: Point, channel: Channel) -> Reading | None:
     except MeasurementError:
         return None
     stated = point.bench.is_stated(channel.key)
-    type_b = point.bench.standard_uncertainty(channel.key, mean.mean) if stated else None
+    rounding = standard_uncertainty(point.rounding(channel.key, mean.deviation or 0.0))
+    type_b = math.hypot(point.bench.standard_uncertainty(channel.key, mean.mean), rounding) if stated else None
     return Reading(
         value=mean.mean,
         unit=KINDS[QUANTITIES[channel.quantity]],

@@ -71,6 +71,7 @@ class Channel:
     offset: float
     reason: str  # why the heading was taken for this, in words for `inspect`
     file: str  # the file (and sheet) that it was found in
+    step: float = 0.0  # what one unit of the last digit written is, SI; 0 where it is not known
 
 
 @dataclass(frozen=True, slots=True)

@@ -78,7 +78,8 @@ def _candidate(point: Point, key: str, condition: Condition, limit: float) -> Ca
         _see_to_settling(point, key, largest=largest, limit=limit)
         unstated = frozenset() if point.bench.is_stated(key) else frozenset({key})
         # of a largest reading there is no mean, so nothing of type A; what the scope may be wrong by is all
-        return Candidate(used, Estimate(point.bench.correct(key, largest), unstated, single=True), at=describe(point))
+        value = point.bench.correct(key, largest) + point.rounding(key, 0.0)
+        return Candidate(used, Estimate(value, unstated, single=True), at=describe(point))
     except MeasurementError as problem:
         return Candidate(used, reason=str(problem))
 

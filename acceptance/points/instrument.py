@@ -89,6 +89,15 @@ class Bench:
                 value = value + sensitivity * self._share(error.share, error.source, error.per_unit)
         return value
 
+    def stated_step(self, key: str) -> float:
+        """The step that is stated for a channel's display or converter, in the reading's unit; 0 where none is."""
+        meter = self.limits.meter(key)
+        if meter is None:
+            return 0.0
+        scale = 1.0 / meter.shunt.resistance if meter.shunt is not None else 1.0
+        converter = scale * meter.converter.step if meter.converter is not None else 0.0
+        return max(converter, meter.resolution or 0.0)
+
     def stated(self, key: str, value: float) -> Value:
         """A value that is only stated, with the errors of what measured it: the same ones wherever it enters."""
         name = f"stated {key}"

@@ -14,12 +14,13 @@ from acceptance.bench.log import BenchLog, channel_key
 from acceptance.errors import MeasurementError
 from acceptance.limitfile.limits import Limits, Wiring
 from acceptance.points.dwells import Dwell
-from acceptance.points.instrument import Bench
+from acceptance.points.instrument import Bench, converter_step_uncertainty
 from acceptance.points.propagation import Source, Value, coverage_factor, nominal, of_source
 from acceptance.points.type_a import TypeA, type_a
 
 __all__ = ["Estimate", "Point", "Points", "measure_points"]
 
+RESOLUTION_COVERS = 1.5  # a logged step up to so many times the stated one is the stated one, differently rounded
 _NO_LOAD = 0.002  # of rated current
 
 Floats = NDArray[np.float64]
@@ -331,9 +332,23 @@ class Point:
         """A mean with the errors of its instrument, the same errors for whatever is formed from this channel here."""
         if not self.has(key):  # only stated: one value, so one error at every point
             return self.bench.stated(key, mean)
-        reference = self.mean(key).mean
-        error = self._keep(("error", key), lambda: self.bench.correct(key, reference) - reference)
-        return mean + error
+        return mean + self._keep(("error", key), lambda: self._error(key))
+
+    def _error(self, key: str) -> Value:
+        """The error of a channel's mean here: the instrument's, and that of the digits it was logged with."""
+        mean = self.mean(key)
+        error = self.bench.correct(key, mean.mean) - mean.mean
+        return error + self.rounding(key, mean.deviation or 0.0)
+
+    def rounding(self, key: str, deviation: float) -> Value:
+        """The error of rounding to the digits of the log, where the spread is too small to average it out.
+
+        Only what the instrument's own steps, as stated, do not cover.
+        """
+        step = max((channel.step for channel in self.log.channels if channel.key == key), default=0.0)
+        if step <= RESOLUTION_COVERS * self.bench.stated_step(key) or deviation > 0.5 * step:
+            return 0.0
+        return of_source(converter_step_uncertainty(step), Source(f"{key}: digits of the log", "B"))
 
     def _spread(self, name: str, spread: TypeA) -> Value:
         return of_source(spread.standard_uncertainty or 0.0, Source(name, "A", spread.degrees_of_freedom))

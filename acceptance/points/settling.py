@@ -13,6 +13,7 @@ __all__ = ["drift_of", "samples_ahead", "settling_samples"]
 Array = npt.NDArray[np.float64]
 
 DEVIATIONS = 3.5  # a leading block further off than this many standard deviations of block means is still settling
+FAR = 5.0  # standard deviations: chance puts the first of some ten thousand dwells' samples there
 FEW = 8  # samples; below this there is no statistic of blocks
 MOST_SAMPLES = 65_536  # quantiles over more samples than this are taken over every n-th
 
@@ -43,7 +44,7 @@ def settling_samples(x: Array) -> int:
     if n < 3:
         return 0
     y = x[at] / (np.max(np.abs(x[at])) or 1.0)  # huge readings must not overflow
-    lead = _leading_few(y) if n < FEW else _leading(y)
+    lead = _leading_few(y) if n < FEW else max(_leading(y), _leading_far(y))
     lead = min(lead + lead // 2, n // 2)
     return int(at[lead]) if lead else 0
 
@@ -78,6 +79,24 @@ def _leading(y: Array) -> int:
     scatter = _deviation(calm[y.size // 2 :])
     sizes = {max(1, y.size // 64), max(1, y.size // 24)}
     return max(_leading_blocks(calm, size, scatter=scatter, drift=drift) for size in sizes)
+
+
+def _leading_far(y: Array) -> int:
+    """Leading samples each far off the later half: a transient too short, or too high, for the means of blocks.
+
+    None where the later half has samples as far off: bursts and outliers are no settling.
+    """
+    later = y[y.size // 2 :]
+    low, middle, high = np.quantile(later[:: max(1, later.size // MOST_SAMPLES)], [0.16, 0.5, 0.84])
+    allowed = FAR * max(0.5 * (high - low), 1e-12) + _steady_drift(y)
+    if np.count_nonzero(np.abs(later - middle) > allowed) > max(1, 0.02 * later.size):
+        return 0
+    off = np.abs(y[: y.size // 2] - middle) > allowed
+    if not off.any():
+        return 0
+    settled = ~off
+    settled[:-1] &= ~off[1:]  # one sample may lie on the level while the transient swings through it
+    return int(settled.argmax()) if settled.any() else off.size
 
 
 def _leading_blocks(calm: Array, size: int, *, scatter: float, drift: float) -> int:

@@ -195,12 +195,12 @@ def test_check_load_regulation_reproduces_worked_check(tmp_path, relative_to, sp
 def test_correct_reproduces_shunt_self_heating_worked_check(tmp_path):
     """10 mohm, 20 A = 4 W, 15 K/W -> 60 K, 50 ppm/K -> 0.30 % as a bound. Calculated: dR/R = alpha Rth I2 R."""
     shunt = "{resistance: 10 mohm, tolerance: 0 %, temperature_coefficient: 50 ppm/K, heating: 15 K/W}"
-    # 32 bits over a millivolt: the step is nothing beside the heating
-    adc = "adc: {bits: 32, span: [-0.5 mV, 0.5 mV]}"
+    # 32 bits over half a volt: the step is nothing beside the heating
+    adc = "adc: {bits: 32, span: [-0.256 V, 0.256 V]}"
     limits = limits_of(tmp_path, instruments=f'{{output_current: {{device: "shunt", shunt: {shunt}, {adc}}}}}')
 
     reading = Bench(limits).correct("output_current main", 20.0)
 
     bound = standard_uncertainty(reading) * math.sqrt(3) / 20.0
     assert 100 * bound == printed("0.30")
-    assert np.isclose(bound, 50e-6 * 15 * 4, rtol=1e-9)
+    assert np.isclose(bound, 50e-6 * 15 * 4, rtol=1e-6)
