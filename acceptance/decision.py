@@ -193,11 +193,11 @@ def _why(verdict: FindingVerdict, inside: bool, probability: float, decision: De
     if verdict == "fail" and not inside:
         return "outside the limit"
     if verdict == "fail":
-        return f"inside the limit, but not shown to conform (p {_percent(probability)})"
+        return f"inside the limit, but not shown to conform (conformity {_percent(probability)})"
     if verdict == "conditional pass":
-        return f"inside the limit, but by less than its uncertainty (p {_percent(probability)})"
+        return f"inside the limit, but by less than its uncertainty (conformity {_percent(probability)})"
     if verdict == "conditional fail":
-        return f"outside the limit, but by less than its uncertainty (p {_percent(probability)})"
+        return f"outside the limit, but by less than its uncertainty (conformity {_percent(probability)})"
     return ""
 
 

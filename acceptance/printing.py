@@ -8,6 +8,7 @@ rounding would do that, it gets more digits. Limits are printed exactly as they 
     quantity           "12.3 mV"
     limit_range        "≥ 88 %", "23.52 V to 24.48 V"
     printed            value, U, limits and margin of one finding, in one unit, for the columns of a table
+    column             the numbers of one column of a table, on one scale, with decimals that stand below one another
     probability        "97.3 %", "> 99.9 %"
     duration           "1 h 5 min"
 """
@@ -15,7 +16,8 @@ rounding would do that, it gets more digits. Limits are printed exactly as they 
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable
+import re
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from decimal import Decimal, localcontext
 from functools import lru_cache
@@ -25,9 +27,11 @@ __all__ = [
     "MINUS",
     "Printed",
     "Scale",
+    "column",
     "count",
     "duration",
     "limit_range",
+    "minus_signs",
     "printed",
     "probability",
     "quantity",
@@ -63,6 +67,11 @@ class Scale:
         """A finite value with so many decimals, without its unit; negative decimals round to tens and more."""
         return _fixed(self.number(value), decimals)
 
+    def rounded(self, value: float, digits: int) -> str:
+        """A finite value rounded to so many significant digits, without its unit."""
+        number = self.number(value)
+        return _fixed(number, digits - 1 - int(f"{number:.{digits - 1}e}".partition("e")[2] if number else 0))
+
     def exact(self, value: float) -> str:
         """A finite value in its shortest exact form, without its unit."""
         return _shortest(self.number(value))
@@ -70,14 +79,6 @@ class Scale:
     def with_unit(self, number: str) -> str:
         """A number's text with the unit after it."""
         return f"{number} {self.symbol}" if self.symbol else number
-
-    def pair(self, value: float, expanded: float | None) -> str:
-        """A value and its expanded uncertainty without units, "24.012 ± 0.011"; without one, the value alone."""
-        odd = _odd(value)
-        if odd is not None:
-            return odd
-        text = self.fixed(value, _decimals(self, value, expanded))
-        return _stripped(text) if expanded is None else f"{text} ± {_expanded_text(self, value, expanded)}"
 
 
 @dataclass(frozen=True, slots=True)
@@ -200,6 +201,56 @@ def limit_range(low: float | None, high: float | None, unit: str, *, per_cent: b
     return f"≤ {texts[1]}" if texts[1] else DASH
 
 
+def column(
+    values: Sequence[float | None], scale: Scale, *, expanded: Sequence[float | None] = (), digits: int = 5
+) -> list[str]:
+    """The numbers of one column without their unit, "24.012 ± 0.011", their decimals alike as far as that is honest.
+
+    With uncertainties a value has the decimals of its U at two significant digits, or one more where most rows of the
+    column have that. Without any, the largest value has so many significant digits, and all share its decimals.
+
+    Parameters
+    ----------
+    values
+        SI; ratios as fractions. None where there is none: a dash. [the scale's unit]
+    scale
+        How they are shown.
+    expanded
+        Expanded uncertainty of each value, None where not known; empty where none is. [the scale's unit]
+    digits
+        Significant digits of the largest value, where it has no uncertainty.
+    """
+    bounds = list(expanded) or [None] * len(values)
+    sure = [
+        _decimals(scale, value, u)
+        for value, u in zip(values, bounds, strict=True)
+        if value is not None and math.isfinite(value) and u is not None and 0 < u < math.inf
+    ]
+    usual = max(sure, key=lambda decimals: (sure.count(decimals), decimals), default=0)
+    plain = _plain_decimals(values, scale, digits)
+    texts = []
+    for value, u in zip(values, bounds, strict=True):
+        odd = _odd(value)
+        if odd is not None or value is None:
+            texts.append(odd or DASH)
+        elif u is None or not 0 < u < math.inf:
+            zero = f" ± {_expanded_text(scale, value, u)}" if u is not None else ""
+            texts.append(scale.fixed(value, min(plain, usual) if sure else plain) + zero)
+        else:
+            own = _decimals(scale, value, u)
+            shared = usual if usual - own == 1 else own
+            texts.append(f"{scale.fixed(value, shared)} ± {_expanded_text(scale, value, u, shared)}")
+    return texts
+
+
+def _plain_decimals(values: Iterable[float | None], scale: Scale, digits: int) -> int:
+    """Decimals that show the largest value with so many digits, without zeros that all of them would end in."""
+    numbers = [scale.number(value) for value in values if value is not None and math.isfinite(value)]
+    decimals = max(0, digits - 1 - max((_order(number) for number in numbers if number), default=0))
+    needed = (-_exponent(_rounded(number, decimals).normalize()) for number in numbers)
+    return min(decimals, max(0, *needed, 0))
+
+
 def probability(share: float | None, *, required: float | None = None) -> str:
     """A probability in per cent: "97.3 %", "> 99.9 %", "< 0.1 %".
 
@@ -239,6 +290,15 @@ def count(number: int) -> str:
     return f"{number:,}".replace(",", " ").replace("-", MINUS)
 
 
+_NO_SIGN = re.compile(r"(?<![\w.])-0(?=(?:\.0*)?(?![\d.]))")
+_SIGN = re.compile(r"(?<![\w.])-(?=\d)")
+
+
+def minus_signs(text: str) -> str:
+    """Prose with the hyphens before its numbers as minus signs; zero has none."""
+    return _SIGN.sub(MINUS, _NO_SIGN.sub("0", text))
+
+
 def _is_number(value: float | None) -> bool:
     return value is not None and math.isfinite(value)
 
@@ -255,7 +315,8 @@ def _odd(value: float | None) -> str | None:
 @lru_cache(maxsize=4096)
 def _fixed(number: Decimal, decimals: int) -> str:
     if number and not -15 < number.adjusted() < 15:
-        return f"{float(number):.6g}".replace("-", MINUS)
+        # as a decimal: on another scale the smallest floats would come to nothing
+        return f"{number.normalize():.6g}".replace("-", MINUS)
     text = f"{_rounded(number, decimals):f}"
     if text.startswith("-") and not text.strip("-0."):
         text = text[1:]
@@ -313,14 +374,15 @@ def _decimals_on_its_side(scale: Scale, value: float, decimals: int, limits: Ite
     return decimals
 
 
-def _expanded_text(scale: Scale, value: float | None, expanded: float | None) -> str:
+def _expanded_text(scale: Scale, value: float | None, expanded: float | None, decimals: int | None = None) -> str:
     if expanded is None or not math.isfinite(expanded):
         return DASH if expanded is None else "not a number"
     if expanded == 0:
         return "0"
-    decimals = _decimals(scale, value if value is not None and math.isfinite(value) else expanded, expanded)
+    if decimals is None:
+        decimals = _decimals(scale, value if value is not None and math.isfinite(value) else expanded, expanded)
     text = scale.fixed(expanded, decimals)
-    return text if text.strip("0.") else f"{float(scale.number(expanded)):.1e}".replace("-", MINUS)
+    return text if text.strip("0.") else f"{scale.number(expanded):.1e}".replace("-", MINUS)
 
 
 def _margin_text(scale: Scale, margin: float | None, decimals: int, *, stripped: bool) -> str:

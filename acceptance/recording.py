@@ -309,7 +309,8 @@ def _reading(point: Point, channel: Channel) -> Reading | None:
 
 
 def _instruments(log: BenchLog, limits: Limits) -> list[InstrumentUsed]:
-    return [_instrument(channel, limits.meter(channel.key), log) for channel in _measured(log)]
+    channels = {channel.key: channel for channel in _measured(log)}  # once, however many files have it
+    return [_instrument(channel, limits.meter(key), log) for key, channel in channels.items()]
 
 
 def _instrument(channel: Channel, meter: Meter | None, log: BenchLog) -> InstrumentUsed:

@@ -403,7 +403,7 @@ def test_decide_says_how_far_conformity_is_shown():
     told = decide(outcome_of(candidate(23.95, 0.05), high=24.0), GUARDED)
 
     assert told.verdict == "fail"
-    assert told.reason == "inside the limit, but not shown to conform (p 84.1 %)"
+    assert told.reason == "inside the limit, but not shown to conform (conformity 84.1 %)"
     assert told.by.probability == pytest.approx(float(ndtr(1.0)))
     assert told.by.margin == pytest.approx(0.05)
     assert told.by.expanded.expanded == pytest.approx(0.05 * float(ndtri(0.975)))

@@ -6,7 +6,7 @@ import math
 from decimal import Decimal
 
 import pytest
-from hypothesis import given
+from hypothesis import example, given
 from hypothesis import strategies as st
 
 from acceptance.printing import (
@@ -203,6 +203,7 @@ def first_two(value: float) -> float:
     return value / 10.0 ** math.floor(math.log10(value))
 
 
+@example(value=1000.0, expanded=5e-324, low=None, margin=-5e-324)
 @given(value=FINITE | st.none() | st.just(math.nan), expanded=FINITE | st.none(), low=FINITE | st.none(), margin=FINITE)
 def test_printed_takes_any_number(value, expanded, low, margin):
     """Nothing a file could hold makes it fail, and no negative zero comes out."""

@@ -21,6 +21,7 @@ from acceptance.checks.outcome import Candidate, CheckResult, Outcome, Used
 from acceptance.errors import MeasurementError
 from acceptance.limitfile.model import NoLoadPower
 from acceptance.points.point import Point, Points
+from acceptance.printing import duration
 
 __all__ = ["check_no_load_power"]
 
@@ -85,8 +86,8 @@ def _close(first: float | None, second: float | None) -> bool:
 
 
 def _candidate(point: Point, condition: Condition) -> Candidate:
-    duration = point.starts()[1]
-    over = f"mean over {duration:.4g} s" if duration else f"mean of {point.readings} readings"
+    lasts = point.starts()[1]
+    over = f"mean over {duration(lasts)}" if lasts else f"mean of {point.readings} readings"
     used = (Used(point, f"no load, {over}"),)
     try:
         point.require(*condition_channels(condition))

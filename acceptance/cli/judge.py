@@ -17,6 +17,12 @@ __all__ = ["judge"]
 
 EXIT_BY_VERDICT = {"accepted": 0, "rejected": 1, "undecided": 3}
 
+# an option more than the command's line shows: a letterhead of one's own, from the first report on
+template_option = click.option(
+    "--template", metavar="DIR", type=click.Path(path_type=Path),
+    help="A template folder for the report: letterhead, sections, wording of the cautions.",
+)  # fmt: skip
+
 
 @click.command()
 @logs_argument
@@ -27,6 +33,7 @@ EXIT_BY_VERDICT = {"accepted": 0, "rejected": 1, "undecided": 3}
     "--out", metavar="DIR", type=click.Path(path_type=Path, file_okay=False), default=Path(),
     help="Where record and report go (default: here).",
 )  # fmt: skip
+@template_option
 @click.option("--json", "as_json", is_flag=True, help="Print verdict and paths as JSON.")
 def judge(
     logs: tuple[Path, ...],
@@ -34,10 +41,14 @@ def judge(
     bench_path: Path | None,
     serial: str | None,
     out: Path,
+    template: Path | None,
     as_json: bool,
 ) -> int:
     """Judge one unit by its logs: DIR/<serial>.record.json and DIR/<serial>.report.pdf."""
-    existing([*logs, limits_path, *([bench_path] if bench_path else [])])
+    existing([*logs, limits_path, *(path for path in (bench_path, template) if path)])
+    if serial is not None and not serial.strip():
+        msg = "--serial is empty"
+        raise click.UsageError(msg)
     from acceptance.limitfile.load import load_limits
 
     limits = load_limits(limits_path, bench_path)  # before the heavy imports: a fault in it is told at once
@@ -50,7 +61,7 @@ def judge(
     with reading(logs) as progress:
         record = judge_unit(logs, limits, serial=serial, judged_at=datetime.now(UTC), progress=progress)
     record_path = write_record(record, out)
-    report_path = write_report(record, _beside(record_path))
+    report_path = write_report(record, _beside(record_path), template=template)
     if as_json:
         _print_json(record, record_path, report_path)
     else:
@@ -80,12 +91,11 @@ def _print_words(record: Record, record_path: Path, report_path: Path) -> None:
     names = max((len(finding.name) for finding in record.findings), default=0)
     for finding in record.findings:
         click.echo(f"  {verdict_words(finding.verdict, 18)}  {_line(finding, names)}")
-    barring = [doubt for doubt in record.health if doubt.bars]
-    for doubt in barring:
-        click.echo(harmless(f"  doubt: {doubt.text}"))
-    others = len(record.health) - len(barring)
+    for text in dict.fromkeys(doubt.text for doubt in record.health if doubt.bars):
+        click.echo(harmless(f"  doubt: {text}"))
+    others = dict.fromkeys(doubt.kind for doubt in record.health if not doubt.bars)
     if others:
-        click.echo(f"  {others} more {'doubt' if others == 1 else 'doubts'} about the data: see the report")
+        click.echo(harmless(f"  also told in the report: {', '.join(others)}"))
     unit = harmless(f"{record.unit.product}, serial {record.unit.serial}")
     click.echo(f"{unit}: {verdict_words(record.verdict)} (performance limits only; no safety approval)")
     click.echo(f"record  {record_path}")

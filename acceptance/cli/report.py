@@ -15,7 +15,7 @@ __all__ = ["report"]
 @click.argument("record_path", metavar="RECORD", type=click.Path(path_type=Path))
 @click.option(
     "--template", metavar="DIR", type=click.Path(path_type=Path),
-    help="A template folder; what it leaves out is taken from the default one.",
+    help="A template folder: letterhead, sections, wording of the cautions.",
 )  # fmt: skip
 @click.option("--out", metavar="FILE", type=click.Path(path_type=Path), help="The PDF (default: beside the record).")
 @click.option("--json", "as_json", is_flag=True, help="Print the path as JSON.")

@@ -214,7 +214,7 @@ class Point:
         eta = float(p_out.mean() / p_in.mean())
         spread = type_a((p_out - eta * p_in) / p_in.mean())
         value = sum((sink.mean for sink in sinks), start=0.0) / source.mean
-        value = value + self._spread(f"spread of the efficiency, point {self.index + 1}", spread)
+        value = value + self._spread(f"spread of the efficiency, dwell {self.index + 1}", spread)
         unstated = source.unstated.union(*(sink.unstated for sink in sinks))
         return Estimate(value, unstated, single=spread.readings == 1)
 
@@ -222,7 +222,7 @@ class Point:
         rows = self._complete(self._input_keys())
         power = self._input_power(rows)
         spread = type_a(power.samples)
-        value = power.mean + self._spread(f"spread of the input power, point {self.index + 1}", spread)
+        value = power.mean + self._spread(f"spread of the input power, dwell {self.index + 1}", spread)
         return Estimate(value, power.unstated, single=spread.readings == 1)
 
     def _input_keys(self) -> list[str]:
@@ -314,7 +314,7 @@ class Point:
 
     def _reading(self, key: str) -> Estimate:
         spread = self.mean(key)
-        value = self._corrected(key, spread.mean) + self._spread(f"spread of {key}, point {self.index + 1}", spread)
+        value = self._corrected(key, spread.mean) + self._spread(f"spread of {key}, dwell {self.index + 1}", spread)
         return Estimate(value, self._unstated([key]), single=spread.readings == 1)
 
     def _voltage(self, output: str) -> Estimate:

@@ -9,8 +9,10 @@ Nothing that a verdict rests on is computed here. No string of the record is eve
 from __future__ import annotations
 
 import io
+import os
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -19,7 +21,7 @@ from acceptance.record import Record, write_whole
 from acceptance.report.blocks import Block, Placed, paginate
 from acceptance.report.findings import findings
 from acceptance.report.fonts import NAMES, font, printable
-from acceptance.report.front import cautions, front
+from acceptance.report.front import NO_ISSUER, cautions, front
 from acceptance.report.measured import figures, points
 from acceptance.report.method import budgets, method
 from acceptance.report.pen import Pen
@@ -69,8 +71,9 @@ def write_report(record: Record, path: Path, *, template: Path | None = None) ->
     Raises
     ------
     ReportError
-        If it cannot be drawn, or not be written.
+        If it cannot be drawn, or not be written, or if something stands at the path that is no report.
     """
+    _see_to_place(path)
     content = report_pdf(record, template=template)
     try:
         write_whole(path, content)
@@ -79,7 +82,27 @@ def write_report(record: Record, path: Path, *, template: Path | None = None) ->
     return path
 
 
+def _see_to_place(path: Path) -> None:
+    """See to it that nothing is lost: a report may take the place of a report, and of nothing else.
+
+    Raises
+    ------
+    ReportError
+        If a log, a record, a folder or a device stands there.
+    """
+    if not os.path.lexists(path):
+        return
+    if path.is_file() and not path.is_symlink():
+        with path.open("rb") as file:
+            if file.read(5) == b"%PDF-":
+                return
+    msg = f"{path}: something that is no PDF stands there, and is kept; choose another name with --out"
+    raise ReportError(msg)
+
+
 def _blocks(record: Record, template: Template) -> list[Block]:
+    if "points" not in template.sections:
+        record = replace(record, points=[])  # without a list of the dwells, their numbers say nothing
     blocks = front(record, template)
     for name in template.sections:
         if name == "cautions":
@@ -140,7 +163,7 @@ def _describe(canvas: Any, record: Record, template: Template) -> None:
     """The document's own title, author, subject and time; the time is that of the decision."""
     unit = record.unit
     canvas.setTitle(printable(f"{template.title} {record.report_number}: {unit.product}, serial {unit.serial}"))
-    canvas.setAuthor(printable(template.issuer.name))
+    canvas.setAuthor(printable(template.issuer.name or NO_ISSUER))
     canvas.setSubject(printable(f"{unit.product}, serial {unit.serial}: {record.verdict}; performance limits only"))
     canvas.setCreator("acceptance")
     stamp = "".join(character for character in record.judged_at if character.isdigit())[:14]
@@ -154,10 +177,11 @@ def _furnish(pen: Pen, record: Record, template: Template, page: str) -> None:
     half = WIDTH / 2
     high, low = PAGE[1] - 40.0, BOTTOM - 22.0
     number = fit(f"Report {record.report_number}", FURNITURE, half - 20)
+    heading = (template.issuer.name, unit.product, f"serial {unit.serial}")
     pen.text(
         LEFT,
         high,
-        fit(f"{template.issuer.name} · {unit.product} · serial {unit.serial}", FURNITURE, half + 60),
+        fit(" · ".join(part for part in heading if part), FURNITURE, half + 60),
         FURNITURE,
     )
     pen.text(LEFT + WIDTH, high, number, FURNITURE, align="right")

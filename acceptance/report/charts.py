@@ -8,7 +8,7 @@ is not allowed.
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import replace
 
 from acceptance.printing import limit_range, scale_for
@@ -132,6 +132,7 @@ class Chart(Block):
     def _label_limits(self, pen: Pen, horizontal: LinearAxis, vertical: LinearAxis) -> None:
         taken: list[Box] = []
         points = _crowd(self._series, horizontal, vertical)
+        points += [place for limit in self._figure.limits for place in _strokes(limit, horizontal, vertical)]
         for limit in self._figure.limits:
             if not _ordinary(limit.y):
                 continue
@@ -238,25 +239,49 @@ def _label_boxes(limit: LimitLine, text: str, horizontal: LinearAxis, vertical: 
     above, below = (height + 1.5, height - 13.5) if limit.side == "min" else (height + 5.5, height - 9.5)
     tops = (below, above) if limit.side == "min" else (above, below)
     lefts = (end - wide, begin, (begin + end - wide) / 2)
+    places = [(left, low) for low in tops for left in lefts]
+    # beside a short line, and a line of text farther away
+    places += [(end + 4, height - 4), (begin - wide - 4, height - 4)]
+    places += [(left, below - 9) for left in lefts] + [(left, above + 9) for left in lefts]
     boxes = []
-    for low in tops:
-        for left in lefts:
-            inside = min(max(left, horizontal.start + 1), horizontal.end - wide)
-            if vertical.start + 1 <= low and low + 8 <= vertical.end + 1:
-                boxes.append((inside, low, inside + wide, low + 8.0))
+    for left, low in places:
+        inside = min(max(left, horizontal.start + 1), horizontal.end - wide)
+        if vertical.start + 1 <= low and low + 8 <= vertical.end + 1:
+            boxes.append((inside, low, inside + wide, low + 8.0))
     return boxes or [(horizontal.end - wide, height + 1.5, horizontal.end, height + 9.5)]
+
+
+def _strokes(limit: LimitLine, horizontal: LinearAxis, vertical: LinearAxis) -> list[tuple[float, float]]:
+    """Places along a limit's line, for labels to keep clear of."""
+    if not _ordinary(limit.y):
+        return []
+    begin, end = _span(limit, horizontal)
+    steps = max(1, int((end - begin) / 6))
+    height = vertical.place(limit.y) + (-2.0 if limit.side == "min" else 2.0)
+    return [(begin + (end - begin) * n / steps, height) for n in range(steps + 1)]
 
 
 def _every(series: Series, buckets: int) -> list[tuple[float, float]]:
     return [(series.x[place], series.y[place]) for place in decimate(series.y, buckets)]
 
 
+def _bars(series: Series, horizontal: LinearAxis, vertical: LinearAxis) -> Iterator[list[tuple[float, float]]]:
+    """Places along each error bar, half of it below its mark and half above."""
+    for place in decimate(series.y, 100):
+        u = series.expanded_uncertainty[place]
+        if u is None:
+            continue
+        x, y = horizontal.place(series.x[place]), series.y[place]
+        yield [(x, vertical.place(y + share * u)) for share in (-1.0, -0.5, 0.5, 1.0)]
+
+
 def _crowd(series: Sequence[Series], horizontal: LinearAxis, vertical: LinearAxis) -> list[tuple[float, float]]:
-    """Where the data lie on the page: their points, and places along the lines between them."""
+    """Where the data lie on the page: points, error bars, and places along the lines between points."""
     crowd: list[tuple[float, float]] = []
     for one in series:
         points = [(horizontal.place(x), vertical.place(y)) for x, y in _every(one, 100)]
         crowd += points
+        crowd += [place for bar in _bars(one, horizontal, vertical) for place in bar]
         for (a, b), (c, d) in zip(points, points[1:], strict=False):
             steps = min(30, int(math.hypot(c - a, d - b) / 6))
             crowd += [(a + (c - a) * n / (steps + 1), b + (d - b) * n / (steps + 1)) for n in range(1, steps + 1)]
@@ -266,10 +291,14 @@ def _crowd(series: Sequence[Series], horizontal: LinearAxis, vertical: LinearAxi
 def _quietest(boxes: Sequence[Box], taken: Sequence[Box], points: Sequence[tuple[float, float]]) -> Box:
     """The box that covers the least; the first of equals."""
 
+    left, low = min(box[0] for box in boxes) - 3, min(box[1] for box in boxes) - 3
+    right, high = max(box[2] for box in boxes) + 3, max(box[3] for box in boxes) + 3
+    near = [(x, y) for x, y in points if left < x < right and low < y < high]
+
     def covered(box: Box) -> int:
         left, low, right, high = box
         labels = sum(left < b[2] and right > b[0] and low < b[3] and high > b[1] for b in taken)
-        return 1000 * labels + sum(left - 3 < x < right + 3 and low - 3 < y < high + 3 for x, y in points)
+        return 1000 * labels + len([1 for x, y in near if left - 3 < x < right + 3 and low - 3 < y < high + 3])
 
     return min(boxes, key=covered)
 

@@ -2,46 +2,79 @@
 
 from __future__ import annotations
 
-from acceptance.printing import DASH, printed, probability
-from acceptance.record import Alternative, DecisionRule, Finding, Record
+import re
+from collections.abc import Sequence
+from typing import Literal
+
+from acceptance.printing import DASH, minus_signs, printed, probability
+from acceptance.record import Alternative, Finding, Record
 from acceptance.report.blocks import Block, Text, heading, subheading
-from acceptance.report.front import verdict_mark
+from acceptance.report.front import limit_text, named, verdict_mark
 from acceptance.report.marks import FINDING_COLOURS
-from acceptance.report.style import CELL, CELL_BOLD, CELL_MUTED, SMALL, WIDTH, Type
-from acceptance.report.table import Cell, Column, Row, Table
+from acceptance.report.style import (
+    CELL,
+    CELL_BOLD,
+    CELL_MUTED,
+    COLUMN,
+    DENSE,
+    DENSE_BOLD,
+    DENSE_MUTED,
+    SMALL,
+    WIDTH,
+    Type,
+)
+from acceptance.report.table import Cell, Column, Row, Table, natural_width
 from acceptance.report.wrap import Run, fold
 
-__all__ = ["findings", "limit_text"]
+__all__ = ["findings"]
 
-_COLUMNS = (
-    Column("Finding", 138),
-    Column("Limit", 76),
-    Column("Value", 58, "right"),
-    Column("U", 50, "right"),
-    Column("Margin", 50, "right"),
-    Column("Conformity", 49, "right"),
-    Column("Verdict", WIDTH - 421),
-)
+_TITLES = ("Finding", "Condition", "Limit", "Value", "U", "k", "Margin", "Conformity", "Verdict")
+# least and most of each column's width, the condition's apart: it has what is left [pt]
+_BOUNDS = ((44, 110), (0, 0), (46, 96), (36, 72), (32, 62), (0, 40), (38, 66), (48, 66), (44, 90))
+_MARK = 11.0  # before a verdict
 
 
 def findings(record: Record) -> list[Block]:
     """The table of findings, and the remarks to them."""
     if not record.findings:
         return [heading("Findings"), Text("The record holds no findings.", SMALL, above=3)]
-    blocks: list[Block] = [
+    factors = {finding.coverage_factor for finding in record.findings if finding.coverage_factor is not None}
+    shared = factors.pop() if len({f"{factor:.2f}" for factor in factors}) == 1 else None
+    rows = [_row(finding, record) for finding in record.findings]
+    kept = [place for place, title in enumerate(_TITLES) if title != "k" or shared is None]
+    rows = [Row([row.cells[place] for place in kept], tinted=row.tinted) for row in rows]
+    return [
         heading("Findings"),
-        Text(_key(record), SMALL, above=1, keep_next=True),
-        Table(_COLUMNS, [_row(finding, record) for finding in record.findings], above=3),
+        Text(_key(record, shared), SMALL, above=1, keep_next=True),
+        Table(_columns(rows, kept), rows, above=3),
+        *_remarks(record),
+        *_others(record),
     ]
-    remarks = [
-        Row([Cell([Run(finding.name, CELL_BOLD)]), Cell(lines)])
-        for finding in record.findings
-        if (lines := _remarks(finding, record.decision))
+
+
+def _columns(rows: Sequence[Row], kept: Sequence[int]) -> list[Column]:
+    """Each as wide as its cells need, within bounds; the conditions have what is left."""
+    widths = []
+    for nth, place in enumerate(kept):
+        title, (least, most) = _TITLES[place], _BOUNDS[place]
+        bold = CELL_BOLD if title in ("Finding", "Verdict") else CELL
+        wide = max(natural_width([_widest(row.cells[nth]) for row in rows], bold), natural_width([title], COLUMN))
+        widths.append(min(max(wide + (_MARK if title == "Verdict" else 0.0), least), most))
+    widths[1] = WIDTH - sum(widths)
+    return [
+        Column(_TITLES[place], width, "left" if _TITLES[place] in ("Finding", "Condition", "Verdict") else "right")
+        for place, width in zip(kept, widths, strict=True)
     ]
-    if remarks:
-        blocks.append(subheading("Remarks to the findings"))
-        blocks.append(Table([Column("", 120), Column("", WIDTH - 120)], remarks, head=False, above=1))
-    return blocks
+
+
+def _widest(cell: str | Cell) -> str:
+    if isinstance(cell, str):
+        return cell
+    texts = [one.text for one in cell.paragraphs if isinstance(one, Run)]
+    return max(texts, key=len, default="")
+
+
+_OPEN = re.compile(r"\bany\b")  # a condition that leaves open what was run
 
 
 def _row(finding: Finding, record: Record) -> Row:
@@ -53,18 +86,21 @@ def _row(finding: Finding, record: Record) -> Row:
         high=finding.max,
         margin=finding.margin,
     )
-    factor = f"k = {finding.coverage_factor:.2f}" if finding.coverage_factor is not None else ""
     kind = finding.characteristic.replace("_", " ")
     several = len(record.ratings.outputs) > 1 and finding.output not in finding.condition
     output = f"output {finding.output}" if several and finding.output else ""
     below = ": ".join(part for part in (kind, ", ".join(part for part in (finding.condition, output) if part)) if part)
+    if finding.at and _OPEN.search(finding.condition):
+        below += f"; {'least favourable' if finding.others else 'run'} at {minus_signs(finding.at)}"
     colour = FINDING_COLOURS[finding.verdict]
     return Row(
         [
-            Cell([Run(finding.name, CELL_BOLD), Run(fold(below), CELL_MUTED)]),
+            Cell([Run(finding.name, CELL_BOLD)]),
+            Cell([Run(fold(below), CELL_MUTED)]),
             limit_text(finding),
             fold(texts.with_unit(texts.value)),
-            Cell([Run(texts.with_unit(texts.expanded), CELL), *([Run(factor, CELL_MUTED)] if factor else [])]),
+            texts.with_unit(texts.expanded),
+            DASH if finding.coverage_factor is None else f"{finding.coverage_factor:.2f}",
             texts.with_unit(texts.margin),
             probability(finding.conformity_probability, required=record.decision.required_probability),
             Cell([Run(finding.verdict, Type(CELL.size, CELL.leading, "semibold", colour))], verdict_mark(finding)),
@@ -73,76 +109,102 @@ def _row(finding: Finding, record: Record) -> Row:
     )
 
 
-def limit_text(finding: Finding) -> str:
-    """What the finding had to meet, in the unit its value is printed in."""
-    numbers = finding.value if isinstance(finding.value, (int, float)) else None
-    texts = printed(numbers, finding.expanded_uncertainty, finding.unit, low=finding.min, high=finding.max)
-    low, high = texts.with_unit(texts.low), texts.with_unit(texts.high)
-    if texts.low != DASH and texts.high != DASH:
-        return f"{low} to {high}"
-    if texts.low != DASH:
-        return f"≥ {low}"
-    return f"≤ {high}" if texts.high != DASH else DASH
-
-
-def _key(record: Record) -> str:
+def _key(record: Record, factor: float | None) -> str:
     """What the columns mean."""
     confidence = f"{record.decision.confidence * 100:.10g} %"
+    k = "the factor k" if factor is None else f"k = {factor:.2f} throughout"
     text = (
-        f"U: expanded uncertainty for {confidence} coverage, with its factor k. Margin: distance to the nearest limit, "
-        "positive inside, before U. Conformity: probability that the true value meets the limit."
+        f"U: expanded uncertainty for {confidence} coverage, {'with ' if factor is None else ''}{k}. Margin: distance "
+        "to the nearest limit, positive inside, before U. Conformity: probability that the true value meets the limit."
     )
     if any(not finding.unit for finding in record.findings):
         text += " U and margin of values in % are in percentage points."
-    return text
+    return fold(text)
 
 
-def _remarks(finding: Finding, decision: DecisionRule) -> list[list[Run]]:
-    """Everything about a finding beyond its row, one paragraph each."""
-    found: list[list[Run]] = []
+# -- beneath the table
 
-    def say(lead: str, text: str) -> None:
-        found.append([Run(f"{lead}  ", CELL_MUTED), Run(fold(text), CELL)])
 
+_UNSTATED = "uncertainty not stated: an instrument that enters this value has no stated accuracy"
+
+
+def _remarks(record: Record) -> list[Block]:
+    """What a row does not say, each text once with the findings it belongs to."""
+    grouped: dict[tuple[str, str], list[str]] = {}
+    for finding in record.findings:
+        for remark in _remarks_to(finding):
+            grouped.setdefault(remark, []).append(finding.name)
+    if not grouped:
+        return []
+    rows = [
+        Row([named(names, record), Cell([[Run(f"{lead}  ", CELL_MUTED), Run(text, CELL)]])])
+        for (lead, text), names in sorted(grouped.items(), key=lambda item: _LEADS.index(item[0][0]))
+    ]
+    wide = (
+        150.0 if max(map(len, grouped.values())) <= 12 or len(record.findings) in map(len, grouped.values()) else 300.0
+    )
+    columns = [Column("", wide), Column("", WIDTH - wide)]
+    return [subheading("Remarks to the findings"), Table(columns, rows, head=False, above=1)]
+
+
+_LEADS = ("Reason", "Uncertainty", "Note of the limits file")
+
+
+def _remarks_to(finding: Finding) -> list[tuple[str, str]]:
+    found = []
     if finding.verdict != "pass":
-        say("Reason", finding.reason or "none is given in the record")
-    numeric = isinstance(finding.value, (int, float))
-    if numeric and finding.expanded_uncertainty is None:
-        say("Uncertainty", "uncertainty not stated: an instrument that enters this value has no stated accuracy")
-    if finding.others:
-        said = "; ".join(_alternatives(finding, decision))
-        say(
-            "Other dwells that met the condition" if len(finding.others) > 1 else "Other dwell that met the condition",
-            said,
-        )
-    for deviation in finding.deviations:
-        say("Deviation", deviation.text)
+        found.append((_LEADS[0], fold(finding.reason) or "none is given in the record"))
+    if isinstance(finding.value, (int, float)) and finding.expanded_uncertainty is None:
+        found.append((_LEADS[1], _UNSTATED))
     if finding.note.strip():
-        say("Note of the limits file", finding.note)
+        found.append((_LEADS[2], fold(finding.note)))
     return found
 
 
-def _alternatives(finding: Finding, decision: DecisionRule) -> list[str]:
-    """What each other dwell gave; the file is named where it changes."""
-    texts = []
-    before = ""
-    for other in finding.others:
-        file, comma, place = other.where.partition(", ")
-        text = _alternative(other, finding, decision)
-        texts.append(text.removeprefix(f"{file}, ") if comma and file == before else text)
-        before = file if comma and place else ""
-    return texts
+def _others(record: Record) -> list[Block]:
+    """The dwells that met a condition as well, and were more favourable."""
+    numbers = {point.where: point.index + 1 for point in record.points if point.where}
+    rows = []
+    for finding in record.findings:
+        for place, other in enumerate(finding.others):
+            name = Cell([Run(finding.name, DENSE_MUTED if place else DENSE_BOLD)])
+            rows.append(Row([name, *_alternative(other, finding, record, numbers.get(other.where))]))
+    if not rows:
+        return []
+    note = "Each was judged; the least favourable one is the finding."
+    return [
+        subheading("Other dwells that met a condition"),
+        Text(note, SMALL, keep_next=True),
+        Table(_other_columns(rows), rows, above=1, style=DENSE),
+    ]
 
 
-def _alternative(other: Alternative, finding: Finding, decision: DecisionRule) -> str:
-    parts = [f"{other.where}:"] if other.where else []
+def _other_columns(rows: Sequence[Row]) -> list[Column]:
+    titles = ("Finding", "Dwell", "Value", "U", "Margin", "Conformity", "Verdict")
+    bounds = ((44, 110), (40, 150), (48, 72), (44, 66), (48, 72), (50, 66), (50, 76))
+    widths = [
+        min(max(natural_width([_widest(row.cells[n]) for row in rows], DENSE), least), most)
+        for n, (least, most) in enumerate(bounds)
+    ]
+    spare = (WIDTH - sum(widths)) / len(widths)
+    sides: tuple[Literal["left", "right"], ...] = ("left", "left", "right", "right", "right", "right", "left")
+    return [Column(title, width + spare, side) for title, width, side in zip(titles, widths, sides, strict=True)]
+
+
+def _alternative(other: Alternative, finding: Finding, record: Record, number: int | None) -> list[str | Cell]:
     texts = printed(
         other.value, other.expanded_uncertainty, finding.unit, low=finding.min, high=finding.max, margin=other.margin
     )
-    value = texts.with_unit(texts.value)
-    parts.append(f"{value} ± {texts.with_unit(texts.expanded)}," if texts.expanded != DASH else f"{value},")
-    if other.margin is not None:
-        parts.append(f"margin {texts.with_unit(texts.margin)},")
-    if other.conformity_probability is not None:
-        parts.append(f"conformity {probability(other.conformity_probability, required=decision.required_probability)},")
-    return " ".join([*parts, other.verdict])
+    place = fold(other.where) if number is None else str(number)
+    at = f":  {minus_signs(fold(other.at))}" if other.at and number is None else ""
+    dwell = [Run(place + at, DENSE)]
+    if other.reason.strip() and fold(other.reason) != fold(finding.reason):
+        dwell.append(Run(fold(other.reason), DENSE_MUTED))
+    return [
+        Cell(dwell),
+        fold(texts.with_unit(texts.value)),
+        texts.with_unit(texts.expanded),
+        texts.with_unit(texts.margin),
+        probability(other.conformity_probability, required=record.decision.required_probability),
+        other.verdict,
+    ]

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from collections import Counter
+from collections.abc import Sequence
 
+from acceptance.printing import DASH, printed, probability, quantity
 from acceptance.printing import duration as printed_duration
-from acceptance.printing import probability, quantity
 from acceptance.record import Finding, FindingVerdict, Hazard, Ratings, Record
 from acceptance.report.blocks import Beside, Block, Panel, Rule, Stack, Text
 from acceptance.report.fonts import string_width
@@ -32,8 +33,9 @@ from acceptance.report.table import Cell, Column, Mark, Row, Table
 from acceptance.report.template import Cautions, Template
 from acceptance.report.wrap import Run, fold
 
-__all__ = ["SCOPE", "cautions", "front", "verdict_mark"]
+__all__ = ["SCOPE", "cautions", "front", "limit_text", "named", "verdict_mark"]
 
+NO_ISSUER = "Issuer not named in the template"
 SCOPE = "Performance limits only; no safety approval."
 _ORDER: tuple[FindingVerdict, ...] = ("pass", "conditional pass", "conditional fail", "fail", "not judged")
 
@@ -44,8 +46,9 @@ def front(record: Record, template: Template) -> list[Block]:
     name = f"{unit.product}, revision {unit.revision}" if unit.revision else unit.product
     issuer = template.issuer
     sender = " · ".join(part for part in (*issuer.address, issuer.contact) if part)
+    named = [Run(issuer.name, _ISSUER)] if issuer.name else [Run(NO_ISSUER, SMALL)]
     return [
-        Text([Run(issuer.name, _ISSUER), Run(f"   {sender}", SMALL)], _ISSUER),
+        Text([*named, Run(f"   {sender}", SMALL)] if sender else named, _ISSUER),
         Text(template.title, TITLE, above=7),
         Text([Run(name, _NAME), Run("   serial ", _SERIAL_WORD), Run(unit.serial, _NAME)], SUBTITLE, above=1),
         Rule(colour=INK, thickness=1.1, above=8),
@@ -63,20 +66,19 @@ _SERIAL_WORD = Type(11, 14.5, "regular", BODY_MUTED.colour)
 def _facts(record: Record) -> Table:
     """What was tested, when, against what, on which bench."""
     limits, test = record.limits, record.test
-    bench = f"{limits.bench_file}, SHA-256 {limits.bench_sha256[:12]}…" if limits.bench_file else "in the limits file"
+    named_there = "none; the instruments stand in the limits file" if record.instruments else "none"
+    bench = f"{limits.bench_file}, SHA-256 {limits.bench_sha256[:12]}…" if limits.bench_file else named_there
     pairs = [
         ("Report number", record.report_number),
         ("Tested", test.date or "date not in the log"),
         ("Rated input", _input(record.ratings)),
         ("Judged", _moment(record.judged_at)),
         ("Rated output", _outputs(record.ratings)),
-        ("Stages", ", ".join(test.stages) or "none told"),
+        ("Stages", ", ".join(test.stages) or "none named"),
         ("Limits file", f"{limits.file}, SHA-256 {limits.sha256[:12]}…"),
         ("Ambient", _ambient(record)),
-        ("Requirements", f"SHA-256 {limits.requirements_sha256[:12]}…"),
+        ("Bench file", bench),
         ("Load mode", test.load_mode or "not stated"),
-        ("Bench", bench),
-        ("Serial from", test.serial_from),
     ]
     rows = [
         Row([cell for label, text in pairs[n : n + 2] for cell in (Cell([Run(label, CELL_MUTED)]), fold(text))])
@@ -168,27 +170,55 @@ def _summary(findings: list[Finding]) -> str:
 def _joint(record: Record) -> str:
     joint = record.joint_conformity_probability
     if joint is None:
-        return "The probability that all limits are met together is not stated: not every finding has one."
+        return "Probability that the unit meets all its limits together: not stated, since not every finding has one."
     return f"Probability that the unit meets all its limits together: {probability(joint)}."
 
 
+_SEVERITY = ("fail", "not judged", "conditional fail", "conditional pass")
+_MOST = 10  # rows of the summary; the findings' own part has them all
+_LONGEST = 400  # characters of a reason in the summary
+
+
 def _deciding(record: Record) -> list[Block]:
-    """The findings that kept the unit from being accepted, each with its reason."""
+    """The findings that kept the unit from being accepted, each with its reason; those alike in one row."""
     deciding = [finding for finding in record.findings if finding.verdict != "pass"]
     if not deciding:
         return []
-    deciding.sort(
-        key=lambda finding: ("fail", "not judged", "conditional fail", "conditional pass").index(finding.verdict)
-    )
+    deciding.sort(key=lambda finding: _SEVERITY.index(finding.verdict))
+    grouped: dict[tuple[str, str], list[Finding]] = {}
+    for finding in deciding:
+        grouped.setdefault((finding.verdict, _reason(finding)), []).append(finding)
     rows = [
-        Row([Cell([Run(finding.name, CELL_BOLD)], verdict_mark(finding)), _word(finding), _reason(finding)])
-        for finding in deciding
+        Row([_names(alike, record), _word(alike[0]), _shortened(reason)])
+        for (_, reason), alike in list(grouped.items())[:_MOST]
     ]
     title = {"accepted": "Not plainly passed", "rejected": "Why it was rejected", "undecided": "Why it is undecided"}
-    return [
+    blocks: list[Block] = [
         Text(title[record.verdict], BODY_BOLD, above=9, keep_next=True),
-        Table([Column("", 118), Column("", 78), Column("", WIDTH - 196)], rows, head=False, above=2),
+        Table([Column("", 170), Column("", 76), Column("", WIDTH - 246)], rows, head=False, above=2),
     ]
+    left = sum(len(alike) for alike in list(grouped.values())[_MOST:])
+    if left:
+        text = (
+            f"{left} more finding{'s' if left > 1 else ''}, with the reason{'s' if left > 1 else ''}, under Findings."
+        )
+        blocks.append(Text(text, SMALL, above=3))
+    return blocks
+
+
+def _names(alike: list[Finding], record: Record) -> Cell:
+    names = [finding.name for finding in alike]
+    if len(names) > _MOST and len(names) < len(record.findings):
+        names = [*names[: _MOST - 2], f"and {len(names) - _MOST + 2} more"]
+    cell = named(names, record)
+    return Cell(cell.paragraphs, verdict_mark(alike[0]))
+
+
+def named(names: Sequence[str], record: Record) -> Cell:
+    """The names of findings, as a cell; all of several as such."""
+    if len(names) == len(record.findings) > 2:
+        return Cell([Run("all findings", CELL_BOLD)])
+    return Cell([Run(", ".join(names), CELL_BOLD)])
 
 
 def _word(finding: Finding) -> Cell:
@@ -196,7 +226,32 @@ def _word(finding: Finding) -> Cell:
 
 
 def _reason(finding: Finding) -> str:
-    return fold(finding.reason) or "No reason is given in the record."
+    """The reason, after the value and what it had to meet."""
+    reason = fold(finding.reason) or "no reason is given in the record"
+    if not isinstance(finding.value, (int, float)):
+        return reason
+    texts = printed(finding.value, finding.expanded_uncertainty, finding.unit, low=finding.min, high=finding.max)
+    value = texts.with_unit(texts.value)
+    value += f" ± {texts.with_unit(texts.expanded)}" if texts.expanded != DASH else ""
+    return fold(f"{value}, limit {limit_text(finding)}: {reason}")
+
+
+def _shortened(text: str) -> str:
+    if len(text) <= _LONGEST:
+        return text
+    return f"{text[:_LONGEST].rpartition(' ')[0] or text[:_LONGEST]} … (the whole reason stands under Findings)"
+
+
+def limit_text(finding: Finding) -> str:
+    """What the finding had to meet, in the unit its value is printed in."""
+    numbers = finding.value if isinstance(finding.value, (int, float)) else None
+    texts = printed(numbers, finding.expanded_uncertainty, finding.unit, low=finding.min, high=finding.max)
+    low, high = texts.with_unit(texts.low), texts.with_unit(texts.high)
+    if texts.low != DASH and texts.high != DASH:
+        return f"{low} to {high}"
+    if texts.low != DASH:
+        return f"≥ {low}"
+    return f"≤ {high}" if texts.high != DASH else DASH
 
 
 def verdict_mark(finding: Finding) -> Mark:
@@ -266,7 +321,5 @@ def _caution(title: str, text: str, width: float) -> Text:
 
 def _basis(hazards: list[Hazard], width: float) -> Text:
     """Why each hazard is taken to be there, in the words of the record."""
-    texts = [f"{hazard.hazard}: {fold(hazard.basis)}" for hazard in hazards if hazard.basis.strip()]
-    return Text(
-        f"Taken to be present: {'; '.join(texts) or ', '.join(h.hazard for h in hazards)}.", SMALL, width=width, above=5
-    )
+    texts = [f"{hazard.hazard} ({fold(hazard.basis)})" if hazard.basis.strip() else hazard.hazard for hazard in hazards]
+    return Text(f"Hazards taken to be present: {'; '.join(texts)}.", SMALL, width=width, above=5)

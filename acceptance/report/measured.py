@@ -2,18 +2,19 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Sequence
 from itertools import groupby
 
-from acceptance.printing import DASH, count, duration, printed, quantity, scale_for
-from acceptance.record import Point, Reading, Record
+from acceptance.printing import DASH, column, count, printed, scale_for
+from acceptance.record import Output, Point, Reading, Record
 from acceptance.report.blocks import Beside, Block, Text, heading
 from acceptance.report.charts import Chart
-from acceptance.report.style import CELL, CELL_MUTED, COLUMN, SMALL, WIDTH
+from acceptance.report.style import COLUMN, DENSE, DENSE_BOLD, DENSE_MUTED, SMALL, WIDTH
 from acceptance.report.table import Cell, Column, Row, Table, natural_width
 from acceptance.report.wrap import Run, fold
 
-__all__ = ["figures", "points"]
+__all__ = ["apart", "channel_name", "figures", "points"]
 
 _GAP = 22.0
 _HALF = (WIDTH - _GAP) / 2
@@ -36,161 +37,218 @@ def figures(record: Record) -> list[Block]:
 
 # -- points
 
+Readings = tuple[str, list[str]]  # heading, and one text for each dwell
+
+_PLACE = re.compile(r"(.*), lines? (\d.*)", re.DOTALL)
+_NUMBER = Column("No.", 26, "right")
+_ELECTRICAL = ("voltage", "current", "power", "power_factor")
+
 
 def points(record: Record) -> list[Block]:
     """Every dwell: where it lies, and the mean reading of each channel with twice its standard uncertainty."""
-    if not record.points:
+    listed = record.points
+    if not listed:
         return []
-    columns = [*_loads(record.points), *_channels(record.points), *_efficiency(record.points)]
+    first, left = _places(record)
     note = (
-        "n: samples in the dwell; effective: as many independent samples as its least telling channel has; settling: "
-        "samples left out before it. Readings: mean ± expanded uncertainty, k = 2 (efficiency: as judged); "
-        "without ± the instrument's accuracy is not stated."
+        "n: samples in the dwell. Effective: as many independent samples as the output voltage's scatter is worth. "
+        "Settling: samples left out before the dwell. Readings: mean ± expanded uncertainty, k = 2 (efficiency: as "
+        "judged); without ± the instrument's accuracy is not stated."
     )
-    found_by = list(dict.fromkeys(fold(point.found_by.replace("_", " ")) for point in record.points))
-    if len(found_by) == 1 and found_by[0]:
-        note += f" Dwells found by: {found_by[0]}."
     return [
         heading("Dwells"),
         Text(note, SMALL, above=1, keep_next=True),
-        _places(record.points, told=len(found_by) > 1),
-        *_reading_tables(record.points, columns),
+        first,
+        *(
+            table
+            for group in _groups(record, left)
+            for table in _reading_tables(group, [str(point.index + 1) for point in listed])
+        ),
     ]
 
 
-def _places(listed: Sequence[Point], *, told: bool) -> Table:
+def _places(record: Record) -> tuple[Table, list[Readings]]:
+    """The table of where each dwell lies and how it was loaded, and the columns that found no room in it."""
+    listed = record.points
+    seconds = scale_for("", [], per_cent=False)
     columns = [
-        Column("No.", 28, "right"),
-        Column("Where in the log", WIDTH - 28 - 66 - 60 - 60 - 44 - 50 - 46),
-        Column("Stage", 66),
-        Column("Begins", 60, "right"),
-        Column("Lasts", 60, "right"),
-        Column("n", 44, "right"),
-        Column("Effective", 50, "right"),
-        Column("Settling", 46, "right"),
+        ("Begins\ns", column([point.starts for point in listed], seconds, digits=8)),
+        ("Lasts\ns", column([point.duration for point in listed], seconds, digits=4)),
+        ("n", [count(point.readings) for point in listed]),
+        ("Effective", [_effective(point) for point in listed]),
+        ("Settling", [count(point.settling) for point in listed]),
+        *_loads(listed),
+        *_efficiency(listed),
     ]
-    rows = [
-        Row(
-            [
-                str(point.index + 1),
-                _place(point, told=told),
-                fold(point.stage),
-                quantity(point.starts, "s", digits=6),
-                duration(point.duration),
-                count(point.readings),
-                _effective(point),
-                count(point.settling),
-            ]
-        )
-        for point in listed
+    lines = [fold(apart(point.where)[1]) for point in listed]
+    room = max(62.0, min(150.0, natural_width(lines, DENSE)))
+    widths = [_width(one, least=38.0) for one in columns]
+    while len(columns) > 5 and _NUMBER.width + room + sum(widths) > WIDTH:
+        widths.pop()
+        columns.pop()
+    left = [*_loads(listed), *_efficiency(listed)][len(columns) - 5 :]
+    spare = (WIDTH - _NUMBER.width - room - sum(widths)) / (len(columns) + 1)
+    heads = [
+        _NUMBER,
+        Column("Lines", room + spare),
+        *(Column(one[0], width + spare, "right") for one, width in zip(columns, widths, strict=True)),
     ]
-    return Table(columns, rows, above=3)
+    sources = [_source(point, record.ratings.outputs) for point in listed]
+    rows: list[Row] = []
+    for source, group in groupby(range(len(listed)), key=sources.__getitem__):
+        if any(source):
+            texts = (Run(source[0], DENSE_BOLD), Run("   " if all(source) else "", DENSE), Run(source[1], DENSE_MUTED))
+            rows.append(Row([Cell([[text for text in texts if text.text]])], span=True, tinted=True))
+        rows += [Row([str(listed[n].index + 1), lines[n], *(one[1][n] for one in columns)]) for n in group]
+    return Table(heads, rows, above=3, style=DENSE), left
 
 
-def _place(point: Point, *, told: bool) -> Cell:
-    found_by = fold(point.found_by.replace("_", " "))
-    return Cell([Run(fold(point.where), CELL), *([Run(found_by, CELL_MUTED)] if told and found_by else [])])
+def _source(point: Point, outputs: Sequence[Output]) -> tuple[str, str]:
+    """The table that a dwell lies in, and its stage with what told it from its neighbours."""
+    stage = f"stage {fold(point.stage)}" if point.stage.strip() else ""
+    found_by = fold(point.found_by)
+    lead, mark, channel = found_by.rpartition("found in ")
+    if mark and not lead:
+        found_by = mark + channel_name(channel, outputs)
+    elif found_by:
+        found_by = f"told apart by {found_by.replace('_', ' ')}"
+    return fold(apart(point.where)[0]), ", ".join(part for part in (stage, found_by) if part)
+
+
+def apart(where: str) -> tuple[str, str]:
+    """A place in a log as its table and the lines of it: ("A-17.csv", "31 to 90"); no table where none is named."""
+    found = _PLACE.fullmatch(where)
+    return (found[1], found[2]) if found else ("", where)
 
 
 def _effective(point: Point) -> str:
+    """Of the output voltage; the least where there are several outputs."""
     known = [
-        reading.effective_readings for reading in point.channels.values() if reading.effective_readings is not None
+        reading.effective_readings
+        for name, reading in point.channels.items()
+        if name.partition(" ")[0] == "output_voltage" and reading.effective_readings is not None
     ]
-    return f"{min(known):.3g}" if known else DASH
-
-
-Readings = tuple[str, list[str]]  # heading, and one text for each dwell
+    return count(round(min(known))) if known and min(known) < 1e15 else DASH
 
 
 def _loads(listed: Sequence[Point]) -> list[Readings]:
     names = dict.fromkeys(name for point in listed for name in point.load_fractions)
-    single = len(names) == 1
+    scale = scale_for("", [])
     found = []
     for name in names:
-        fractions = [point.load_fractions.get(name) for point in listed]
-        texts = [
-            DASH if share is None else f"{share * 100:.1f}".replace("-0.0", "0.0").replace("-", "−")
-            for share in fractions
-        ]
-        found.append(("load\n%" if single or not name else f"load {name}\n%", texts))
+        shares = [point.load_fractions.get(name) for point in listed]
+        # a tenth of a per cent is enough to tell loads apart
+        texts = [DASH if share is None else scale.fixed(share, 1) for share in shares]
+        found.append((f"Load\n{name}\n%" if len(names) > 1 and name else "Load\n%", texts))
     return found
 
 
-def _channels(listed: Sequence[Point]) -> list[Readings]:
-    names = dict.fromkeys(name for point in listed for name in point.channels)
+def _channels(record: Record) -> list[tuple[bool, Readings]]:
+    """Each channel's column, and whether it is one of the electrical ones."""
+    names = dict.fromkeys(name for point in record.points for name in point.channels)
     found = []
     for name in names:
-        readings = [point.channels.get(name) for point in listed]
+        readings = [point.channels.get(name) for point in record.points]
+        title = _title(name, record.ratings.outputs)
         # a channel has one unit; should a record hold several, each text carries its own
         units = {reading.unit for reading in readings if reading is not None}
-        found.append(_one_unit(name, readings, units.pop()) if len(units) == 1 else _own_units(name, readings))
+        texts = _one_unit(title, readings, units.pop()) if len(units) == 1 else _own_units(title, readings)
+        found.append((name.partition(" ")[0].endswith(_ELECTRICAL), texts))
     return found
 
 
-def _title(channel: str) -> str:
+def _groups(record: Record, left: list[Readings]) -> list[list[Readings]]:
+    """The columns that go together: all of them where there is room, else the electrical ones apart from the others."""
+    channels = _channels(record)
+    together = [*left, *(readings for _, readings in channels)]
+    if _NUMBER.width + sum(map(_width, together)) <= WIDTH:
+        return [together] if together else []
+    electrical = [*left, *(readings for is_electrical, readings in channels if is_electrical)]
+    others = [readings for is_electrical, readings in channels if not is_electrical]
+    return [group for group in (electrical, others) if group]
+
+
+def channel_name(channel: str, outputs: Sequence[Output]) -> str:
+    """A channel as it is spoken of; an output is named only where there are several."""
+    quantity, _, of = channel.partition(" ")
+    only = len(outputs) == 1 and of == outputs[0].name and not quantity.endswith("temperature")
+    return quantity.replace("_", " ") if only or not of else f"{quantity.replace('_', ' ')} {of}"
+
+
+def _title(channel: str, outputs: Sequence[Output]) -> str:
     """A channel's name over its column, the output or the probe on a line of its own."""
-    quantity_name, _, of = channel.partition(" ")
-    return f"{quantity_name.replace('_', ' ')}\n{of}" if of else quantity_name.replace("_", " ")
+    quantity, _, of = channel.partition(" ")
+    shown = channel_name(channel, outputs)
+    title = shown.removesuffix(f" {of}") if of and shown.endswith(f" {of}") else shown
+    title = title[:1].upper() + title[1:]
+    return f"{title}\n{of}" if of and shown != quantity.replace("_", " ") else title
 
 
-def _one_unit(name: str, readings: Sequence[Reading | None], unit: str) -> Readings:
-    values = [reading.value for reading in readings if reading is not None]
+def _one_unit(title: str, readings: Sequence[Reading | None], unit: str) -> Readings:
+    values = [None if reading is None else reading.value for reading in readings]
     scale = scale_for(unit, values, per_cent=False)
+    texts = column(values, scale, expanded=[_twice(reading) for reading in readings])
+    return f"{title}\n{scale.symbol}" if scale.symbol else title, texts
+
+
+def _twice(reading: Reading | None) -> float | None:
+    u = None if reading is None else reading.standard_uncertainty
+    return None if u is None else 2 * u
+
+
+def _own_units(title: str, readings: Sequence[Reading | None]) -> Readings:
     texts = []
     for reading in readings:
         if reading is None:
             texts.append(DASH)
             continue
-        u = reading.standard_uncertainty
-        texts.append(scale.pair(reading.value, None if u is None else 2 * u))
-    return f"{_title(name)}\n{scale.symbol}" if scale.symbol else _title(name), texts
-
-
-def _own_units(name: str, readings: Sequence[Reading | None]) -> Readings:
-    texts = []
-    for reading in readings:
-        if reading is None:
-            texts.append(DASH)
-            continue
-        u = reading.standard_uncertainty
-        found = printed(reading.value, None if u is None else 2 * u, reading.unit, per_cent=False)
-        texts.append(found.with_unit(found.value if u is None else f"{found.value} ± {found.expanded}"))
-    return _title(name), texts
+        found = printed(reading.value, _twice(reading), reading.unit, per_cent=False)
+        texts.append(found.with_unit(found.value if found.expanded == DASH else f"{found.value} ± {found.expanded}"))
+    return title, texts
 
 
 def _efficiency(listed: Sequence[Point]) -> list[Readings]:
     if all(point.efficiency is None for point in listed):
         return []
-    scale = scale_for("", [])
-    texts = [
-        DASH if point.efficiency is None else scale.pair(point.efficiency, point.efficiency_expanded_uncertainty)
-        for point in listed
-    ]
-    return [("efficiency\n%", texts)]
+    bounds = [point.efficiency_expanded_uncertainty for point in listed]
+    texts = column([point.efficiency for point in listed], scale_for("", []), expanded=bounds)
+    return [("Efficiency\n%", texts)]
 
 
-def _word_width(title: str) -> float:
-    """Width that no word of a column's title needs to be broken in, as far as that is sensible."""
-    return min(natural_width(title.split(), COLUMN), 90.0)
+def _width(readings: Readings, least: float = 44.0) -> float:
+    """Width that none of the column's numbers, and as far as sensible no word of its title, needs to be broken in."""
+    title, texts = readings
+    word = min(natural_width(title.split(), COLUMN), 90.0)
+    return min(max(natural_width(texts, DENSE), word, least), WIDTH - _NUMBER.width)
 
 
-def _reading_tables(listed: Sequence[Point], columns: Sequence[Readings]) -> list[Table]:
-    """The columns in as many tables as they need, each with the number of the dwell before it."""
-    first = 28.0
-    widths = [min(max(natural_width(texts), _word_width(title), 46.0), WIDTH - first) for title, texts in columns]
-    places: list[int] = []
-    used, table = first, 0
-    for width in widths:
-        if used + width > WIDTH and used > first:
-            used, table = first, table + 1
+def _reading_tables(columns: Sequence[Readings], numbers: Sequence[str]) -> list[Table]:
+    """The columns in as few tables as hold them, about as many in each, with the number of the dwell before them."""
+    widths = [_width(one) for one in columns]
+    room = WIDTH - _NUMBER.width
+    tables = _filled(widths, room)
+    fair = sum(widths) / len(tables) + max(widths) / 2
+    if len(balanced := _filled(widths, min(fair, room))) == len(tables):
+        tables = balanced
+    return [_reading_table([columns[n] for n in chosen], [widths[n] for n in chosen], numbers) for chosen in tables]
+
+
+def _filled(widths: Sequence[float], room: float) -> list[list[int]]:
+    """Places of the columns, in order, in tables of so much room."""
+    tables: list[list[int]] = [[]]
+    used = 0.0
+    for place, width in enumerate(widths):
+        if tables[-1] and used + width > room:
+            tables.append([])
+            used = 0.0
+        tables[-1].append(place)
         used += width
-        places.append(table)
-    tables = []
-    for _, group in groupby(range(len(columns)), key=lambda n: places[n]):
-        chosen = list(group)
-        spare = (WIDTH - first - sum(widths[n] for n in chosen)) / len(chosen)
-        stretch = max(0.0, min(spare, 24.0))
-        heads = [Column("No.", first, "right"), *(Column(columns[n][0], widths[n] + stretch, "right") for n in chosen)]
-        rows = [Row([str(p.index + 1), *(columns[n][1][row] for n in chosen)]) for row, p in enumerate(listed)]
-        tables.append(Table(heads, rows, above=9))
     return tables
+
+
+def _reading_table(columns: Sequence[Readings], widths: Sequence[float], numbers: Sequence[str]) -> Table:
+    stretch = (WIDTH - _NUMBER.width - sum(widths)) / len(columns)
+    heads = [Column(one[0], width + stretch, "right") for one, width in zip(columns, widths, strict=True)]
+    texts = zip(numbers, *(one[1] for one in columns), strict=True)
+    rows = [Row(row) for row in texts if any(text != DASH for text in row[1:])]
+    return Table([_NUMBER, *heads], rows, above=9, style=DENSE)

@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
-from acceptance.printing import MINUS, quantity, with_uncertainty
+from collections.abc import Sequence
+
+from acceptance.printing import DASH, MINUS, Scale, count, minus_signs, quantity, scale_for
 from acceptance.record import BudgetLine, DecisionRule, Finding, Record
 from acceptance.report.blocks import Block, Text, heading, subheading
-from acceptance.report.style import BODY, BODY_BOLD, CELL, CELL_BOLD, CELL_MUTED, SMALL, WIDTH, Type
-from acceptance.report.table import Cell, Column, Row, Table
-from acceptance.report.wrap import Run, fold
+from acceptance.report.measured import channel_name
+from acceptance.report.style import BODY, BODY_BOLD, DENSE, DENSE_BOLD, DENSE_MUTED, SMALL, WIDTH
+from acceptance.report.table import PAD, Cell, Column, Row, Table, natural_width
+from acceptance.report.wrap import Run, fold, wrap
 
 __all__ = ["budgets", "decision_text", "method"]
 
@@ -22,14 +25,12 @@ def method(record: Record) -> list[Block]:
         ("Dwells", _dwells(record)),
         ("Uncertainty", _uncertainty(decision)),
     ]
-    texts = [Text([Run(f"{lead}:  ", BODY_BOLD), Run(fold(text), BODY)], above=5) for lead, text in paragraphs]
+    texts = [
+        Text([Run(f"{lead}.  ", BODY_BOLD), Run(fold(text[:1].upper() + text[1:]), BODY)], above=4)
+        for lead, text in paragraphs
+    ]
     texts[0].above = 2
-    rows = [_formed(finding) for finding in record.findings]
-    formed: list[Block] = []
-    if rows:
-        columns = [Column("Finding", 120), Column("How the value is formed, and from which dwells", WIDTH - 120)]
-        formed = [subheading("How each value was formed"), Table(columns, rows, above=1)]
-    return [heading("Method and decision rule"), *texts, *formed]
+    return [heading("Method and decision rule"), *texts, *_formed(record)]
 
 
 def _percent(share: float) -> str:
@@ -88,8 +89,8 @@ def _dwells(record: Record) -> str:
     settle = "found from the data" if test.settle is None else quantity(test.settle, "s")
     least = "" if test.min_dwell is None else f"; the shortest dwell taken is {quantity(test.min_dwell, 's')}"
     return (
-        f"stretches of samples at one steady condition, found in {test.samples} samples. Settling left out at the "
-        f"start of each: {settle}{least}. A reading is the mean over its dwell."
+        f"stretches of samples at one steady condition, found in {count(test.samples)} samples. Settling left out "
+        f"at the start of each: {settle}{least}. A reading is the mean over its dwell."
     )
 
 
@@ -103,35 +104,61 @@ def _uncertainty(decision: DecisionRule) -> str:
     )
 
 
-def _formed(finding: Finding) -> Row:
-    paragraphs: list[list[Run]] = []
-    if finding.formula:
-        paragraphs.append([Run(fold(finding.formula), CELL)])
-    facts = []
-    if finding.points:
-        facts.append(
-            ("dwell " if len(finding.points) == 1 else "dwells ")
-            + ", ".join(f"{at.point + 1} ({at.role})" if at.role else str(at.point + 1) for at in finding.points)
-        )
-    if finding.where.strip():
-        facts.append(fold(finding.where))
-    if finding.standard_uncertainty is not None:
-        facts.append(f"u = {quantity(finding.standard_uncertainty, finding.unit, digits=2, stripped=False)}")
-    if finding.degrees_of_freedom is not None:
-        shown = _freedom(finding.degrees_of_freedom)
-        facts.append(f"ν {shown}" if shown.startswith(">") else f"ν = {shown}")
-    if facts:
-        paragraphs.append([Run("; ".join(facts), CELL_MUTED)])
+def _formed(record: Record) -> list[Block]:
+    """How each value was formed, and from which dwells."""
+    findings = [finding for finding in record.findings if finding.formula or finding.points or finding.where.strip()]
+    if not findings:
+        return []
+    name = _names(findings)
+    columns = [
+        Column("Finding", name),
+        Column("How it is formed", 0.47 * (WIDTH - name - 88)),
+        Column("From dwell", 0.53 * (WIDTH - name - 88)),
+        Column("u", 48, "right"),
+        Column("ν", 40, "right"),
+    ]
+    rows = [_row(finding, record) for finding in findings]
+    return [subheading("How each value was formed"), Table(columns, rows, above=1, style=DENSE)]
+
+
+def _names(findings: Sequence[Finding]) -> float:
+    """Width of a column of their names. [pt]"""
+    return min(max(natural_width([finding.name for finding in findings], DENSE_BOLD), 44.0), 110.0)
+
+
+def _row(finding: Finding, record: Record) -> Row:
+    value = [Run(fold(finding.formula), DENSE)] if finding.formula else []
     if finding.verdict == "pass" and finding.reason.strip():
-        paragraphs.append([Run(fold(finding.reason), CELL_MUTED)])
-    return Row([Cell([Run(finding.name, CELL_BOLD)]), Cell(paragraphs or [[Run("not formed", CELL_MUTED)]])])
+        value.append(Run(fold(finding.reason), DENSE_MUTED))
+    u, freedom = finding.standard_uncertainty, finding.degrees_of_freedom
+    return Row(
+        [
+            Cell([Run(finding.name, DENSE_BOLD)]),
+            Cell(value),
+            _from(finding, record),
+            DASH if u is None else quantity(u, finding.unit, digits=2, stripped=False),
+            DASH if u is None else _freedom(freedom),
+        ]
+    )
+
+
+def _from(finding: Finding, record: Record) -> Cell:
+    """The numbers of the dwells, with what each was for; their places in the log where the dwells are not listed."""
+    if not record.points or not finding.points:
+        return Cell([Run(fold(finding.where) or DASH, DENSE)])
+    alone = len(finding.points) == 1
+    texts = [_dwell(at.point + 1, finding.at if alone and finding.at else at.role) for at in finding.points]
+    return Cell([Run(fold(", ".join(texts)), DENSE)])
+
+
+def _dwell(number: int, what: str) -> str:
+    return f"{number} ({minus_signs(what)})" if what else str(number)
 
 
 # -- budgets
 
 
-_COMPACT = Type(7.8, 9.4)
-_SMALL_SHARE = 0.01  # of the variance; sources below it are counted, and kept in the record
+_ENOUGH = 0.9  # of the variance: the sources that make it up are listed, the others counted; the record holds all
 
 
 def budgets(record: Record) -> list[Block]:
@@ -139,56 +166,80 @@ def budgets(record: Record) -> list[Block]:
     with_budget = [finding for finding in record.findings if finding.budget]
     if not with_budget:
         return []
+    name = _names(with_budget)
     columns = [
-        Column("Source", WIDTH - 250),
-        Column("Type", 40),
-        Column("Contribution", 84, "right"),
-        Column("Share of variance", 76, "right"),
-        Column("ν", 50, "right"),
+        Column("Finding", name),
+        Column("Source", WIDTH - name - 36 - 76 - 62 - 48),
+        Column("Type", 36),
+        Column("Contribution", 76, "right"),
+        Column("Share", 62, "right"),
+        Column("ν", 48, "right"),
     ]
-    rows = [row for finding in with_budget for row in (_group(finding), *_lines(finding))]
+    wide = columns[1].width - 2 * PAD
     note = (
-        "Contribution: standard uncertainty it brings to the value. Type A: from the scatter of samples; B: from what "
-        "is known of the instrument. ν: degrees of freedom, ∞ where none are given. A negative share is a correlation "
-        "that takes uncertainty away. Sources of less than 1 % of the variance are counted; the record holds them."
+        "Contribution: standard uncertainty that a source brings to the value. Share: of the variance; a negative one "
+        "is a correlation that takes uncertainty away. Type A: from the scatter of samples; B: from what is known of "
+        "the instrument. ν: degrees of freedom, ∞ where none are given. The sources that make up 90 % are listed; the "
+        "record holds all."
     )
     return [
         heading("Uncertainty budgets"),
         Text(note, SMALL, above=1, keep_next=True),
-        Table(columns, rows, above=3, style=_COMPACT),
+        Table(columns, [_budget(finding, record, wide) for finding in with_budget], above=3, style=DENSE),
     ]
 
 
-def _group(finding: Finding) -> Row:
-    value = finding.value if isinstance(finding.value, (int, float)) else None
-    text = with_uncertainty(value, finding.expanded_uncertainty, finding.unit)
-    return Row([Cell([[Run(f"{finding.name}   ", CELL_BOLD), Run(fold(text), CELL_MUTED)]])], span=True, tinted=True)
-
-
-def _lines(finding: Finding) -> list[Row]:
-    """The sources that count, the largest first, and how many do not."""
+def _budget(finding: Finding, record: Record, wide: float) -> Row:
+    """A finding's sources, the largest first, in one row; the cells' lines stand level with one another."""
     ordered = sorted(finding.budget, key=lambda line: -abs(line.share))
-    small = [line for line in ordered if abs(line.share) < _SMALL_SHARE]
-    shown = ordered if len(small) < 2 else ordered[: len(ordered) - len(small)]
-    rows = [_line(line, finding.unit) for line in shown]
-    if len(shown) < len(ordered):
-        most = max(small, key=lambda line: abs(line.contribution))
-        texts = [f"{len(small)} further sources", "", f"≤ {_contribution(most, finding.unit)}", "< 1 % each", ""]
-        rows.append(Row([Cell([Run(text, CELL_MUTED)]) for text in texts]))
-    return rows
+    shown = _telling(ordered)
+    scale = scale_for(finding.unit, [finding.standard_uncertainty, *(line.contribution for line in shown)])
+    cells: tuple[list[Run], ...] = ([], [], [], [], [])
+    for line in shown:
+        source = wrap(_source(line, record), DENSE, wide)
+        texts = [line.kind, _contribution(line, scale), _share(line.share), _freedom(line.degrees_of_freedom)]
+        cells[0].extend(Run(text, DENSE) for text in source)
+        for cell, text in zip(cells[1:], texts, strict=True):
+            cell += [Run(text, DENSE), *[Run("", DENSE)] * (len(source) - 1)]
+    left = ordered[len(shown) :]
+    if left:
+        texts = [f"{len(left)} more", "", "", _share(sum(line.share for line in left)), ""]
+        for cell, text in zip(cells, texts, strict=True):
+            cell.append(Run(text, DENSE_MUTED))
+    return Row([Cell([Run(finding.name, DENSE_BOLD)]), *(Cell(cell) for cell in cells)])
 
 
-def _line(line: BudgetLine, unit: str) -> Row:
-    share = f"{line.share * 100:.1f} %"
-    share = share.removeprefix("-") if not share.strip("-0. %") else share.replace("-", MINUS)
-    freedom = "∞" if line.degrees_of_freedom is None else _freedom(line.degrees_of_freedom)
-    return Row([fold(line.source.replace("_", " ")), line.kind, _contribution(line, unit), share, freedom])
+def _telling(ordered: Sequence[BudgetLine]) -> list[BudgetLine]:
+    """The sources that make up nearly all of the variance."""
+    shown: list[BudgetLine] = []
+    for line in ordered:
+        if sum(one.share for one in shown) >= _ENOUGH:
+            break
+        shown.append(line)
+    return shown
 
 
-def _contribution(line: BudgetLine, unit: str) -> str:
-    return quantity(line.contribution, unit, digits=2, stripped=False)
+def _source(line: BudgetLine, record: Record) -> str:
+    """What the source is; an output is named only where there are several."""
+    text = fold(line.source.replace("_", " "))
+    for used in record.instruments:
+        long, short = used.channel.replace("_", " "), channel_name(used.channel, record.ratings.outputs)
+        if text == long or text.startswith((f"{long},", f"{long}:")):
+            return short + text[len(long) :]
+    return text
 
 
-def _freedom(number: float) -> str:
-    """Degrees of freedom; how many hardly matters beyond ten thousand."""
-    return f"{number:.3g}" if number < 10_000 else "> 10 000"
+def _share(share: float) -> str:
+    text = f"{share * 100:.1f} %"
+    return text.removeprefix("-") if not text.strip("-0. %") else text.replace("-", MINUS)
+
+
+def _contribution(line: BudgetLine, scale: Scale) -> str:
+    return scale.with_unit(scale.rounded(line.contribution, 2))
+
+
+def _freedom(number: float | None) -> str:
+    """Degrees of freedom; how many hardly matters beyond a thousand."""
+    if number is None or number > 1e15:
+        return "∞"
+    return f"{number:.3g}" if number < 999.5 else "> 1000"

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from acceptance.report.blocks import Block, Stack, Text, heading
 from acceptance.report.pen import Pen
-from acceptance.report.style import ACCENT, BODY, CELL, CELL_MUTED, INK, MUTED, RULE, SUBHEADING, WIDTH, Type
+from acceptance.report.style import ACCENT, BODY, CELL_MUTED, INK, MUTED, RULE, SMALL, SUBHEADING, WIDTH, Type
 from acceptance.report.wrap import fit
 
 __all__ = ["NOT_SIGNED", "sign_off"]
@@ -28,7 +28,7 @@ def sign_off(report_number: str) -> list[Block]:
                 heading("Sign-off"),
                 Text(_STATE, BODY, above=1),
                 _Boxes(),
-                Text(_USE, CELL, above=12),
+                Text(_USE, SMALL, above=9),
                 _End(report_number),
             ],
             above=17,
@@ -48,18 +48,18 @@ _USE = (
 class _Boxes(Block):
     """One box for each role, with lines for name, date and signature."""
 
-    height = 112.0
+    height = 92.0
     above = 7.0
 
     def draw(self, pen: Pen, x: float, y: float) -> None:
         for place, (role, meaning) in enumerate(_ROLES):
             left = x + place * (_BOX + _GAP)
             pen.rectangle((left, y - self.height, _BOX, self.height), stroke=MUTED, width=0.7)
-            pen.rectangle((left, y - 22, _BOX, 22), fill=ACCENT)
-            pen.text(left + 8, y - 14.6, role, _ROLE)
-            pen.text(left + _BOX - 8, y - 14.4, meaning, _MEANING, align="right")
+            pen.rectangle((left, y - 20, _BOX, 20), fill=ACCENT)
+            pen.text(left + 8, y - 13.4, role, _ROLE)
+            pen.text(left + _BOX - 8, y - 13.2, meaning, _MEANING, align="right")
             for line, word in enumerate(("Name", "Date", "Signature")):
-                base = y - 42 - line * 23 - (9 if word == "Signature" else 0)
+                base = y - 35 - line * 18 - (13 if word == "Signature" else 0)
                 pen.text(left + 8, base, word, CELL_MUTED)
                 pen.line([(left + 46, base - 2), (left + _BOX - 8, base - 2)], RULE, 0.7)
 

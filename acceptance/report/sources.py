@@ -4,21 +4,39 @@ from __future__ import annotations
 
 import json
 from collections.abc import Iterator
-from dataclasses import fields, is_dataclass
+from dataclasses import fields, is_dataclass, replace
 from functools import lru_cache
 
-from acceptance.printing import count
-from acceptance.record import Health, Record
+from acceptance.printing import DASH, count
+from acceptance.record import Health, InstrumentUsed, Record
 from acceptance.report.blocks import Block, Text, heading, subheading
 from acceptance.report.fonts import REPLACEMENT, is_printable
-from acceptance.report.style import AMBER, BODY, CELL, CELL_BOLD, CELL_MUTED, RED, SMALL, WIDTH, Type
-from acceptance.report.table import Cell, Column, Row, Table
+from acceptance.report.front import named
+from acceptance.report.measured import channel_name
+from acceptance.report.style import (
+    AMBER,
+    BODY,
+    CELL,
+    CELL_BOLD,
+    CELL_MUTED,
+    DENSE,
+    DENSE_BOLD,
+    DENSE_MUTED,
+    RED,
+    SMALL,
+    WIDTH,
+    Type,
+)
+from acceptance.report.table import Cell, Column, Row, Table, natural_width
 from acceptance.report.wrap import Run, fold
 from acceptance.units import KINDS
 
 __all__ = ["doubts", "evidence", "hash_in_fours", "instruments", "unprintable"]
 
 _STATED_UNITS = {"voltage": KINDS["voltage"], "current": KINDS["current"], "power": KINDS["power"]}
+
+
+_HASH = 300.0  # room for a hash on one line [pt]
 
 
 def instruments(record: Record) -> list[Block]:
@@ -28,32 +46,19 @@ def instruments(record: Record) -> list[Block]:
     blocks: list[Block] = [heading("Instruments")]
     if record.instruments:
         columns = [
-            Column("Channel", 84),
-            Column("Device", 84),
-            Column("Accuracy", WIDTH - 374),
-            Column("Range, resolution", 72),
+            Column("Device", 66),
+            Column("Channels", 112),
+            Column("Accuracy", WIDTH - 372),
+            Column("Range, resolution", 74),
             Column("Due", 54),
-            Column("State", 80),
+            Column("State", 66),
         ]
-        rows = [
-            Row(
-                [
-                    used.channel.replace("_", " "),
-                    Cell(
-                        [
-                            Run(fold(used.device or "not stated"), CELL),
-                            *([Run(f"serial {used.serial}", CELL_MUTED)] if used.serial else []),
-                        ]
-                    ),
-                    fold(used.accuracy) or "not stated",
-                    fold(", ".join(part for part in (used.meter_range, used.resolution) if part)) or "–",
-                    used.due or "–",
-                    Cell([Run(used.state, _state_type(used.state))]),
-                ]
-            )
-            for used in record.instruments
-        ]
-        blocks.append(Table(columns, rows, above=2))
+        alike: dict[InstrumentUsed, list[str]] = {}
+        for used in record.instruments:
+            name = channel_name(used.channel, record.ratings.outputs)
+            alike.setdefault(replace(used, channel=""), []).append(name)
+        rows = [_instrument(used, names) for used, names in alike.items()]
+        blocks.append(Table(columns, rows, above=2, style=DENSE))
     if record.test.stated:
         texts = [f"{name.replace('_', ' ')} {value:.10g}{_unit_of(name)}" for name, value in record.test.stated.items()]
         lead = Run("Stated, not logged:  ", CELL_BOLD)
@@ -61,10 +66,26 @@ def instruments(record: Record) -> list[Block]:
     return blocks
 
 
+def _instrument(used: InstrumentUsed, channels: list[str]) -> Row:
+    device = [Run(fold(used.device or DASH), DENSE_BOLD)]
+    if used.serial:
+        device.append(Run(f"serial {used.serial}", DENSE_MUTED))
+    return Row(
+        [
+            Cell(device),
+            ", ".join(dict.fromkeys(channels)),
+            fold(used.accuracy) or DASH,
+            fold(", ".join(part for part in (used.meter_range, used.resolution) if part)) or DASH,
+            used.due or DASH,
+            Cell([Run(used.state, _state_type(used.state))]),
+        ]
+    )
+
+
 def _state_type(state: str) -> Type:
     if state == "in date":
-        return CELL
-    return Type(CELL.size, CELL.leading, "semibold", RED if state == "past due" else AMBER)
+        return DENSE
+    return Type(DENSE.size, DENSE.leading, "semibold", RED if state == "past due" else AMBER)
 
 
 def _unit_of(channel: str) -> str:
@@ -83,34 +104,40 @@ def hash_in_fours(digest: str) -> str:
 def evidence(record: Record) -> list[Block]:
     """Every file that the decision rests on, with its whole SHA-256; programs; notes from the log."""
     limits = record.limits
-    rows = [
-        _file(item.file, f"{count(item.bytes)} bytes, {count(item.rows)} rows", item.sha256) for item in record.evidence
+    files = [
+        (item.file, f"{count(item.rows)} rows, {count(item.bytes)} bytes", item.sha256) for item in record.evidence
     ]
-    rows.append(_file(limits.file, "limits file", limits.sha256))
-    rows.append(
-        _file("Requirements", "as read from the limits file, without wording and layout", limits.requirements_sha256)
-    )
+    files.append((limits.file, "limits file", limits.sha256))
     if limits.bench_file or limits.bench_sha256:
-        rows.append(_file(limits.bench_file, "bench file", limits.bench_sha256))
-    columns = [Column("File", 140), Column("SHA-256", WIDTH - 140)]
+        files.append((limits.bench_file, "bench file", limits.bench_sha256))
+    files.append(("requirements", "as read from the limits file", limits.requirements_sha256))
+    rows = [_file(*file) for file in files]
+    name = min(max(natural_width([file for file, _, _ in files], DENSE_BOLD), 90.0), WIDTH - _HASH - 62)
+    columns = [Column("File", name), Column("", WIDTH - name - _HASH), Column("SHA-256", _HASH)]
     made = ", ".join(f"{name} {version}" for name, version in record.made_by.items())
     blocks: list[Block] = [
         heading("Evidence"),
-        Table(columns, rows, above=2),
-        Text([Run("Made by  ", CELL_MUTED), Run(fold(made) or "not recorded", CELL)], BODY, above=5),
+        Table(columns, rows, above=2, style=DENSE),
+        Text([Run("Serial taken from  ", CELL_MUTED), Run(_serial_from(record.test.serial_from), CELL)], BODY, above=5),
+        Text([Run("Made by  ", CELL_MUTED), Run(fold(made) or "not recorded", CELL)], BODY),
     ]
     if record.notes:
-        notes = [Row([Cell([Run(fold(name), CELL_BOLD)]), fold(text)]) for name, text in record.notes.items()]
+        notes = [Row([Cell([Run(fold(name), DENSE_BOLD)]), fold(text)]) for name, text in record.notes.items()]
         blocks += [
             subheading("Notes from the log"),
-            Table([Column("", 140), Column("", WIDTH - 140)], notes, head=False, above=1),
+            Table([Column("", 140), Column("", WIDTH - 140)], notes, head=False, above=1, style=DENSE),
         ]
     return blocks
 
 
+def _serial_from(source: str) -> str:
+    words = {"note": "a note in the log", "column": "a column of the log", "file name": "the file's name"}
+    return words.get(source) or fold(source.replace("--serial", "the command line (--serial)")) or "not recorded"
+
+
 def _file(name: str, kind: str, digest: str) -> Row:
     shown = hash_in_fours(digest) or "none in the record"
-    return Row([Cell([Run(name, CELL_BOLD), Run(kind, CELL_MUTED)]), Cell([Run(shown, CELL)])])
+    return Row([Cell([Run(name, DENSE_BOLD)]), Cell([Run(kind, DENSE_MUTED)]), shown])
 
 
 # -- doubts
@@ -118,7 +145,10 @@ def _file(name: str, kind: str, digest: str) -> Row:
 
 def doubts(record: Record) -> list[Block]:
     """Deviations of the test, and doubts about the data with what to do about each."""
-    deviations = [(finding.name, deviation.text) for finding in record.findings for deviation in finding.deviations]
+    deviations: dict[str, list[str]] = {}
+    for finding in record.findings:
+        for deviation in finding.deviations:
+            deviations.setdefault(fold(deviation.text), []).append(finding.name)
     unseen = unprintable(record)
     blocks: list[Block] = [heading("Deviations and doubts about the data")]
     if not deviations and not record.health and not unseen:
@@ -127,8 +157,8 @@ def doubts(record: Record) -> list[Block]:
         columns = [Column("Doubt", WIDTH - 150 - 84), Column("What to do", 150), Column("Effect", 84)]
         blocks.append(Table(columns, [_doubt(doubt) for doubt in record.health], above=2))
     if deviations:
-        rows = [Row([Cell([Run(name, CELL_BOLD)]), fold(text)]) for name, text in deviations]
-        columns = [Column("Finding", 120), Column("How the test differed from what the requirement asks", WIDTH - 120)]
+        rows = [Row([named(names, record), text]) for text, names in deviations.items()]
+        columns = [Column("Finding", 150), Column("How the test differed from what the requirement asks", WIDTH - 150)]
         blocks.append(Table(columns, rows, above=6))
     if unseen:
         blocks += _unseen(unseen)
@@ -189,5 +219,8 @@ def _texts(thing: object) -> Iterator[str]:
 
 @lru_cache(maxsize=64)
 def _field_names(kind: type) -> tuple[str, ...]:
-    # the class's own fields: the instances met are all dataclasses
-    return tuple(each.name for each in fields(kind))
+    # the class's own fields, those of plain numbers left out: there is no text in them
+    return tuple(each.name for each in fields(kind) if not _NUMBERS.issuperset(str(each.type).split(" | ")))
+
+
+_NUMBERS = frozenset({"float", "int", "bool", "None", "list[float]"})

@@ -9,13 +9,16 @@ from typing import Literal
 from acceptance.report.blocks import Block, Halves
 from acceptance.report.fonts import printable, string_width
 from acceptance.report.pen import Pen
-from acceptance.report.style import ACCENT, CELL, COLUMN, PALE, RULE, Type
+from acceptance.report.style import ACCENT, CELL, COLUMN, DENSE, PALE, RULE, Type
 from acceptance.report.wrap import Piece, Run, wrap, wrap_runs
 
 __all__ = ["Cell", "Column", "Mark", "Row", "Table", "natural_width"]
 
 PAD = 4.0  # between a column's edge and its text
 _ROW_PAD = 2.4  # above and below a row's lines
+_DENSE_PAD = 1.3
+_BEGINNING = 46.0  # so much of a table's rows stands at a page's foot, or none
+_SMALL = 110.0  # a table lower than this is not spread over two pages
 _WHOLE = 220.0  # a row lower than this is never broken
 
 Mark = Callable[[Pen, tuple[float, float]], None]
@@ -72,6 +75,7 @@ class Table(Block):
         self, columns: Sequence[Column], rows: Sequence[Row], *, above: float = 5, style: Type = CELL, head: bool = True
     ) -> None:
         self._columns = columns
+        self._pad = _DENSE_PAD if style is DENSE else _ROW_PAD
         self._style = style
         self._width = sum(column.width for column in columns)
         self._head = self._lay_head() if head else []
@@ -95,7 +99,7 @@ class Table(Block):
         return max(map(len, self._head)) * COLUMN.leading + 2 * _ROW_PAD if self._head else 0.0
 
     def _row_height(self, row: _Laid) -> float:
-        return row.deepest * self._style.leading + 2 * _ROW_PAD
+        return row.deepest * self._style.leading + 2 * self._pad
 
     def _lay(self, row: Row) -> _Laid:
         widths = [self._width] if row.span else [column.width for column in self._columns]
@@ -125,14 +129,20 @@ class Table(Block):
     def least(self) -> float:
         if not self._rows:
             return self.height
-        first = self._row_height(self._rows[0])
-        if len(self._rows) > 1:
-            first += self._row_height(self._rows[1])
+        if self.height <= _SMALL:
+            return self.height
+        first = 0.0
+        for row in self._rows:
+            if first >= _BEGINNING:
+                break
+            first += self._row_height(row)
         return self._head_height + min(first, _WHOLE)
 
     def split(self, room: float) -> Halves:
         if self.height <= room:
             return self, None
+        if self.height <= _SMALL:
+            return None, self
         used = self._head_height
         place = 0
         while place < len(self._rows) and used + self._row_height(self._rows[place]) <= room:
@@ -152,7 +162,7 @@ class Table(Block):
 
     def _break(self, row: _Laid, room: float) -> tuple[_Laid | None, _Laid]:
         """A row too high to be moved whole, broken between two lines."""
-        lines = int((room - 2 * _ROW_PAD) / self._style.leading)
+        lines = int((room - 2 * self._pad) / self._style.leading)
         if lines < 3:
             return None, row
         upper = replace(row, lines=tuple(cell[:lines] for cell in row.lines), ends=False)
@@ -162,6 +172,7 @@ class Table(Block):
     def _part(self, rows: list[_Laid]) -> Table:
         part = Table.__new__(Table)
         part._columns, part._style, part._width, part._head = self._columns, self._style, self._width, self._head
+        part._pad = self._pad
         part._set(rows)
         return part
 
@@ -196,7 +207,7 @@ class Table(Block):
         left = x
         columns = [Column("", self._width)] if row.span else self._columns
         for column, lines, mark in zip(columns, row.lines, row.marks, strict=True):
-            self._draw_cell(pen, column, lines, mark, left=left, top=y - _ROW_PAD)
+            self._draw_cell(pen, column, lines, mark, left=left, top=y - self._pad)
             left += column.width
         if row.ends:
             pen.line([(x, low), (x + self._width, low)], RULE, 0.45)

@@ -73,7 +73,7 @@ def test_no_load_power_is_the_mean_bursts_and_all():
     (candidate,) = outcome.candidates
     assert candidate.estimate.nominal == pytest.approx(0.445, abs=0.001)
     assert outcome.condition == "load 0 %, input 230 V"
-    assert candidate.used[0].role == "no load, mean over 599 s"
+    assert candidate.used[0].role == "no load, mean over 9 min 59 s"
 
 
 def test_a_no_load_stretch_that_a_spike_cut_in_two_is_one_stretch():

@@ -33,7 +33,7 @@ def test_default_template_is_whole():
     template = load_template()
 
     assert template.sections == SECTIONS
-    assert template.issuer.name == "Tarnbeck Bench Works"
+    assert template.issuer.name == ""  # nobody's letterhead on anybody's report
     assert set(template.cautions.hazards) == set(HAZARDS)
     assert all(caution.title and caution.text for caution in template.cautions.hazards.values())
     assert "{wait}" in template.cautions.hazards["stored charge"].text_with_wait
@@ -133,3 +133,11 @@ def test_any_text_is_a_template_or_a_report_error(tmp_path_factory, text):
 
     with contextlib.suppress(ReportError):
         load_template(folder)
+
+
+def test_example_template_names_its_workshop_on_every_page():
+    """The letterhead that ships as an example, the rest from the default."""
+    folder = Path(__file__).resolve().parents[2] / "templates" / "tarnbeck"
+
+    assert load_template(folder).cautions == load_template().cautions
+    assert pages(folder).count("Tarnbeck Bench Works") >= 3
