@@ -3,14 +3,14 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from datetime import date, datetime
 
 import numpy as np
 from numpy.typing import NDArray
 
 from acceptance.bench.clocks import Times, read_dates, read_times
-from acceptance.bench.headings import Heading, resolve_unit, shown
+from acceptance.bench.headings import Heading, plain, resolve_unit, shown
 from acceptance.bench.log import Channel, Span, channel_key
 from acceptance.bench.table import RawColumn, RawTable, Source
 from acceptance.bench.values import Readings, to_readings
@@ -42,7 +42,8 @@ class Samples:
     over_range: dict[str, tuple[NDArray[np.intp], str]] = field(default_factory=dict)
     doubts: list[tuple[str, str]] = field(default_factory=list)  # kind and text
     chosen: set[str] = field(default_factory=set)  # channels whose heading the limits or bench file names
-    day: date | None = None
+    day: date | None = None  # the latest that a sample lies in, where dates are written
+    days_on: int = 0  # without a date, how many days the last sample lies after the first at the least
     started_at: datetime | None = None
 
     def __len__(self) -> int:
@@ -113,6 +114,8 @@ def _refuse_two(table: RawTable, first: RawColumn, second: RawColumn) -> None:
     found = f'"{shown(first.heading.text)}" and "{shown(second.heading.text)}" are both {_words(key)}'
     file = f'{table.file}, sheet "{shown(table.sheet)}"' if table.sheet else table.file
     expected = f'name one of them in the limits or bench file, under log: columns: {{{key}: "..."}}'
+    if plain(first.heading.text) == plain(second.heading.text):
+        expected = "rename one of them in the file"
     raise LogError(file, found, expected, line=table.heading_line, column=second.position)
 
 
@@ -286,7 +289,7 @@ def _take_time(samples: Samples, table: RawTable, columns: Sequence[RawColumn]) 
         times = _times(table, clock, None)
         if dates is not None:
             day, doubts = read_dates(dates.cells, table.place(dates))
-            times = Times(times.seconds, day, None, times.kind, times.unit, doubts)
+            times = replace(times, day=day, doubts=(*times.doubts, *doubts))
     _keep_times(samples, table, clock, times)
     if dates is not None and dates is not clock:
         samples.channels.append(_channel(table, dates.heading, "", "not a number", None))
@@ -337,7 +340,7 @@ def _keep_times(samples: Samples, table: RawTable, column: RawColumn, times: Tim
     heading = column.heading
     key = channel_key("time")
     samples.numbers[key] = times.seconds
-    samples.day, samples.started_at = times.day, times.started_at
+    samples.day, samples.days_on, samples.started_at = times.day, times.days_on, times.started_at
     samples.doubts += times.doubts
     rows = np.flatnonzero(np.isnan(times.seconds))
     if rows.size:

@@ -34,7 +34,7 @@ _STAMP = re.compile(
       | (?P<nd>\d{1,2})[-\ ](?P<nm>[A-Za-zä]{3})[a-z]*[-\ ,]+(?P<ny>\d{4})
     )?
     (?:(?:^|T|[\s,;]+)(?:
-        (?P<H>\d{1,4}):(?P<M>[0-5]\d)(?::(?P<S>[0-5]\d|60)(?:[.,](?P<f>\d{1,12}))?)?(?:\s*(?P<ap>[AaPp])\.?[Mm]\.?)?
+        (?P<H>\d{1,4}):(?P<M>[0-5]\d)(?::(?P<S>[0-5]\d|60)(?:[.,](?P<f>\d{1,12})|:(?P<ms>\d{3}))?)?(?:\s*(?P<ap>[AaPp])\.?[Mm]\.?)?
       | (?P<cH>\d{2})(?P<cM>[0-5]\d)(?P<cS>[0-5]\d)?(?:[.,](?P<cf>\d{1,12}))?
     ))?
     (?:\s*(?P<z>Z|UTC|GMT|[+\-\u2212]\d{2}(?::?\d{2})?))?""",
@@ -47,7 +47,8 @@ class Times:
     """When each row was taken."""
 
     seconds: NDArray[np.float64]  # as logged, or from the first row that has a clock; NaN where a cell is empty
-    day: date | None = None  # of the first row, where dates are written
+    day: date | None = None  # the latest that a row lies in, where dates are written
+    days_on: int = 0  # days, without a date: how many the last row lies after the first at the least
     started_at: datetime | None = None
     kind: str = "seconds"  # "seconds", "clock", "date and time"
     unit: str = "s"
@@ -93,7 +94,7 @@ def read_times(
     """
     if isinstance(cells, np.ndarray):
         times = _from_datetimes(cells) if cells.dtype.kind == "M" else None
-        return times or _from_first(cells * unit_factor, "seconds")
+        return times or _from_seconds(cells * unit_factor)
     if dates is None:
         quick = _quick(cells)
         if quick is not None:
@@ -111,14 +112,20 @@ def read_times(
 
 
 def read_dates(cells: Cells, place: Place) -> tuple[date | None, tuple[tuple[str, str], ...]]:
-    """The first date of a column of dates, None where it may be read in two ways, and what is doubtful about it."""
+    """The latest date of a column of dates, None where it may be read in two ways, and what is doubtful about it."""
     if isinstance(cells, np.ndarray):
         times = _from_datetimes(cells) if cells.dtype.kind == "M" else None
         return (times.day if times else None), ()
     stamps, order = _stamps(cells, place)
     days, doubts = _days(stamps, order, place)
     known = [day for day in days if day is not None]
-    return (date.fromordinal(known[0]) if known and known[0] > 0 else None), doubts
+    return _latest(known), doubts
+
+
+def _latest(days: Iterable[int | None]) -> date | None:
+    """The latest of the days that are known, None where there is none."""
+    number = max((day for day in days if day is not None), default=0)
+    return date.fromordinal(number) if number > 0 else None
 
 
 def parse_day(text: str) -> tuple[date | None, bool]:
@@ -184,8 +191,7 @@ def _quick_clock(cells: Sequence[object]) -> Times | None:
         return None
     seconds = spans.astype(np.int64) / 1e6
     seconds[np.isnat(spans)] = np.nan
-    seconds, doubts = _past_midnight(seconds)
-    return _from_first(seconds, "clock", doubts=doubts)
+    return _from_clocks(seconds)
 
 
 def _from_datetimes(stamps: NDArray[Any], zone: Any = None) -> Times | None:
@@ -195,10 +201,10 @@ def _from_datetimes(stamps: NDArray[Any], zone: Any = None) -> Times | None:
     first = stamps[known[0]]
     seconds = (stamps - first).astype(np.int64) / 1e6
     seconds[np.isnat(stamps)] = np.nan
-    started = first.astype(datetime)
-    if not isinstance(started, datetime):
+    started, latest = first.astype(datetime), stamps[known].max().astype(datetime)
+    if not (isinstance(started, datetime) and isinstance(latest, datetime)):
         return None
-    return Times(seconds, started.date(), started.replace(tzinfo=zone), "date and time")
+    return Times(seconds, latest.date(), started_at=started.replace(tzinfo=zone), kind="date and time")
 
 
 # --- the careful way: cell by cell ----------------------------------------------------------------------------------
@@ -274,7 +280,7 @@ def _clock_of(part: dict[str, str | None], *, has_day: bool) -> float | None:
     hours, minutes = part["H"] or part["cH"], part["M"] or part["cM"]
     if hours is None or minutes is None:
         return None
-    fraction = part["f"] or part["cf"]
+    fraction = part["f"] or part["ms"] or part["cf"]
     hour = int(hours)
     if part["ap"]:
         if not 1 <= hour <= 12:
@@ -354,13 +360,13 @@ def _from_stamps(stamps: Sequence[_Stamp | None], order: _Order, place: Place) -
         shift = (stamp.zone or 0) if len(zones) > 1 else 0
         seconds[row] = ((day - (days[known[0]] or 0)) * _DAY if day is not None else 0.0) + stamp.seconds - shift
     if not has_day:
-        seconds, past = _past_midnight(seconds)
-        return _from_first(seconds, "clock", doubts=doubts + past)
+        return _from_clocks(seconds, doubts=doubts)
     first = stamps[known[0]]
     assert first is not None
     number = days[known[0]] or 0
     begun = date.fromordinal(number) if number > 0 else None
-    return Times(seconds - seconds[known[0]], begun, _started(begun, first), "date and time", "s", doubts)
+    started = _started(begun, first)
+    return Times(seconds - seconds[known[0]], _latest(days), started_at=started, kind="date and time", doubts=doubts)
 
 
 def _started(day: date | None, stamp: _Stamp) -> datetime | None:
@@ -386,10 +392,18 @@ def _past_midnight(seconds: NDArray[np.float64]) -> tuple[NDArray[np.float64], t
     return carried, (("midnight", f"the clock passes midnight {times}; a day was added each time"),)
 
 
-def _from_first(seconds: NDArray[np.float64], kind: str, *, doubts: tuple[tuple[str, str], ...] = ()) -> Times:
-    """Clocks from the first row; plain seconds as they were logged, since they count from something that matters."""
-    if kind == "seconds":
-        return Times(seconds, kind=kind, doubts=doubts)
-    known = np.flatnonzero(np.isfinite(seconds))
-    start = seconds[known[0]] if known.size else 0.0
-    return Times(seconds - start, kind=kind, doubts=doubts)
+def _from_clocks(seconds: NDArray[np.float64], *, doubts: tuple[tuple[str, str], ...] = ()) -> Times:
+    """Clocks from the first row, carried on past midnight."""
+    carried, past = _past_midnight(seconds)
+    known = carried[np.isfinite(carried)]
+    start = float(known[0]) if known.size else 0.0
+    # a clock beyond 24 h counts from the start of something: only what it ran through is known
+    since = 0.0 if past else start
+    days = int((known.max() - since) // _DAY) if known.size else 0
+    return Times(carried - start, kind="clock", days_on=days, doubts=doubts + past)
+
+
+def _from_seconds(seconds: NDArray[np.float64]) -> Times:
+    """Plain seconds as they were logged, since they count from something that matters."""
+    known = seconds[np.isfinite(seconds)]
+    return Times(seconds, days_on=int((known.max() - known.min()) // _DAY) if known.size else 0)

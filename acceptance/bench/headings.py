@@ -14,7 +14,7 @@ from dataclasses import dataclass, replace
 from acceptance.bench.log import OUTPUT_QUANTITIES, QUANTITIES, channel_key
 from acceptance.units import UNITS, Unit
 
-__all__ = ["Heading", "Vocabulary", "resolve_unit", "shown"]
+__all__ = ["Heading", "Vocabulary", "plain", "resolve_unit", "shown"]
 
 # Names and the trade's abbreviations, joints left out. Every word here has one meaning on a bench.
 _NAMES: dict[str, str] = {
@@ -149,14 +149,19 @@ class Vocabulary:
         self.columns = {self._own_key(key): value for key, value in (columns or {}).items()}
         self._by_output = self._output_words()
         self._known: dict[str, Heading] = {}
-        self._chosen = {_plain(heading): key for key, (heading, _) in self.columns.items()}
+        self._chosen = {plain(heading): key for key, (heading, _) in self.columns.items()}
+        self.numeric = any(heading[:1].isdigit() or heading[:1] in "+-." for heading in self._chosen)
 
     def read(self, text: str) -> Heading:
-        """What this heading means."""
+        """What this heading means; `numeric` tells that one of the chosen headings begins like a number."""
         known = self._known.get(text)
         if known is None:
             known = self._known[text] = self._read(text)
         return known
+
+    def is_chosen(self, text: str) -> bool:
+        """Whether the limits or bench file names this heading."""
+        return plain(shown(text, 200)) in self._chosen
 
     def qualify(self, key: str) -> str:
         """The channel key, an unqualified output quantity given the first output's name."""
@@ -182,7 +187,7 @@ class Vocabulary:
         stripped = shown(text, 200)
         if not stripped:
             return _unread(text, "it is empty")
-        chosen = self._chosen.get(_plain(stripped))
+        chosen = self._chosen.get(plain(stripped))
         if chosen is not None:
             return self._from_limits_file(text, chosen)
         if len(stripped) > 80:
@@ -274,7 +279,8 @@ def _words(key: str) -> str:
     return key.replace("_", " ")
 
 
-def _plain(heading: str) -> str:
+def plain(heading: str) -> str:
+    """A heading as it is compared: in any case, with single spaces."""
     return " ".join(heading.split()).casefold()
 
 

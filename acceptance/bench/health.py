@@ -12,8 +12,9 @@ from collections.abc import Iterator, Mapping
 import numpy as np
 from numpy.typing import NDArray
 
+from acceptance.bench.dropouts import dropouts
 from acceptance.bench.log import BenchLog, Doubt, Span
-from acceptance.bench.standstill import Trace, Values, clipped, frozen, place_of, runs_of, words_of
+from acceptance.bench.standstill import Trace, Values, clipped, frozen, piled, place_of, runs_of, words_of
 
 __all__ = ["check_health"]
 
@@ -22,6 +23,7 @@ _COARSE_SHARE = 0.01  # repeated times beyond this share are no accident
 _LISTED = 200  # spans kept of one doubt without a bar
 
 _ANALOGUE = ("input_voltage", "input_current", "input_power", "output_voltage", "output_current", "ripple")
+_NEVER_ZERO_ONCE = ("output_voltage", "input_voltage", "input_power", "output_current")
 _PLACED = ("input_voltage", "input_current", "input_power", "output_voltage", "output_current")
 
 
@@ -56,9 +58,13 @@ def check_health(
         quantity = key.partition(" ")[0]
         if quantity in _ANALOGUE:
             channel = Trace(log, key, _values(log, key), _driver(log, key))
-            doubts += clipped(channel, tables)
+            ends = list(clipped(channel, tables))
+            doubts += ends
+            doubts += piled(channel, tables, [span for doubt in ends for span in doubt.spans])
             if quantity in _PLACED:
                 doubts += frozen(channel, tables)
+            if quantity in _NEVER_ZERO_ONCE:
+                doubts += dropouts(channel, tables, _power(log) if quantity.startswith("output") else None)
     doubts += _missing(log)
     doubts += _no_input_power(log, supply)
     doubts += _swapped(log, rated, rated_input_voltage)
@@ -94,6 +100,11 @@ def _driver(log: BenchLog, key: str) -> Values | None:
         if name in log.samples and name != key:
             return _values(log, name)
     return None
+
+
+def _power(log: BenchLog) -> Values | None:
+    """What the input took: its power, else its current."""
+    return next((_values(log, key) for key in ("input_power", "input_current") if key in log.samples), None)
 
 
 # --- time -----------------------------------------------------------------------------------------------------------

@@ -134,9 +134,9 @@ class BenchLog:
     stated: dict[str, float] = field(default_factory=dict)  # channel -> SI value: not logged, only stated
     ignored: tuple[Ignored, ...] = ()
     doubts: tuple[Doubt, ...] = ()
-    test_date: date | None = None
+    test_date: date | None = None  # the latest day that any sample lies in
     serial_from: str = ""  # "--serial", "note", "column", "file name"
-    stages_from: str = ""  # "stage column", "file name", "sheet name", "none told"
+    stages_from: str = ""  # "stage column", "file name", "sheet name", "note", "none told"
 
     def keys(self, quantity: str) -> list[str]:
         """The channels of one quantity, such as every "temperature"."""

@@ -8,7 +8,6 @@ from __future__ import annotations
 import hashlib
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
-from datetime import date
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -16,14 +15,14 @@ import numpy as np
 from numpy.typing import NDArray
 
 from acceptance.bench.assemble import Samples, assemble, spans_of
-from acceptance.bench.clocks import parse_day
 from acceptance.bench.headings import Vocabulary, shown
+from acceptance.bench.identity import Claim, day_of_test, serial_of
 from acceptance.bench.log import BenchLog, Channel, Doubt, Evidence, Ignored, Span
-from acceptance.bench.stages import split_name, stage_of_sheet
+from acceptance.bench.stages import RowStages, doubts_of, split_name, stages_of
 from acceptance.bench.table import Source
 from acceptance.bench.text import read_text
 from acceptance.bench.workbook import is_workbook, read_workbook
-from acceptance.errors import LogError, SeveralSerialsError
+from acceptance.errors import LogError
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -32,12 +31,6 @@ __all__ = ["read_logs"]
 
 MAX_TEXT_BYTES = 2 << 30
 MAX_WORKBOOK_BYTES = 256 << 20
-
-_SERIAL_NOTES = (
-    "serial", "serial number", "serial no", "serial no.", "serialno", "serial nr", "sn", "s/n", "unit serial",
-    "dut serial", "seriennummer", "numéro de série",
-)  # fmt: skip
-_DATE_NOTES = ("date", "test date", "date of test", "tested", "tested on", "datum", "prüfdatum")
 
 
 @dataclass(frozen=True, slots=True)
@@ -66,7 +59,8 @@ def read_logs(
     Parameters
     ----------
     paths
-        Delimited text or workbooks, told apart by what is in them; samples keep this order.
+        Delimited text or workbooks, told apart by what is in them. Their order changes nothing: samples come in
+        the order of the files' names.
     columns
         Channel key ("output_voltage", "temperature case") to its heading as in the file and its unit, or None.
     stated
@@ -76,7 +70,7 @@ def read_logs(
     outputs
         The product's outputs; the first is meant where a heading names none. Without them such channels stay bare.
     serial
-        The unit's; without it a serial column or note tells, else the file's name without its stage.
+        The unit's; without it (None or empty) a serial column or note tells, else the file's name without its stage.
     progress
         Called with the number of files read and of all files.
 
@@ -92,13 +86,14 @@ def read_logs(
     vocabulary = Vocabulary(columns, outputs)
     files: list[_File] = []
     repeated: list[Ignored] = []
-    for number, path in enumerate(map(Path, paths)):
+    for number, path in enumerate(sorted(map(Path, paths), key=lambda path: (path.name, str(path)))):
         _read_another(path, files, repeated, vocabulary, load_mode)
         if progress is not None:
             progress(number + 1, len(paths))
     _refuse_unmet_columns(files, vocabulary)
-    unit, serial_from, serial_doubts = _serial(files, serial)
-    return _merge(files, vocabulary, dict(stated or {}), load_mode, (unit, serial_from, serial_doubts), repeated)
+    given = serial if serial is not None and serial.strip() else None
+    identity = serial_of([_claim(file) for file in files], given)
+    return _merge(files, vocabulary, dict(stated or {}), load_mode, identity, repeated)
 
 
 # --- files ----------------------------------------------------------------------------------------------------------
@@ -159,56 +154,9 @@ def _refuse_unmet_columns(files: Sequence[_File], vocabulary: Vocabulary) -> Non
             raise LogError(listed, found, "write the heading as it stands in the file")
 
 
-# --- whose log it is ------------------------------------------------------------------------------------------------
-
-
-def _told_serials(file: _File) -> tuple[list[str], str]:
-    """Serials in a file's columns, else in its notes, and which of the two."""
-    columns = [text for s in file.samples for text in dict.fromkeys(s.texts.get("serial", ())) if text]
-    if columns:
-        return list(dict.fromkeys(columns)), "column"
-    notes = [file.source.notes[key] for key in _SERIAL_NOTES if file.source.notes.get(key)]
-    return list(dict.fromkeys(notes))[:1], "note"
-
-
-def _serial(files: Sequence[_File], given: str | None) -> tuple[str, str, list[Doubt]]:
-    told: dict[str, str] = {}
-    named: dict[str, str] = {}
-    for file in files:
-        serials, origin = _told_serials(file)
-        for text in serials:
-            told.setdefault(text, origin)
-        if not serials and file.stem_serial:
-            named.setdefault(file.stem_serial, "file name")
-    listed = ", ".join(file.evidence.file for file in files)
-    if len(told) > 1:
-        units = ", ".join(shown(text, 30) for text in list(told)[:6])
-        found = f"the logs belong to {len(told)} units: {units}"
-        raise SeveralSerialsError(listed, found, "give the logs of one unit", serials=tuple(told))
-    if given is not None:
-        return given, "--serial", _differing(given, told)
-    both = {**told, **named}
-    if len(both) > 1:
-        units = ", ".join(shown(text, 30) for text in list(both)[:6])
-        found = f"the names of the logs tell {len(both)} serials: {units}"
-        expected = "give the logs of one unit, or say which unit it is with --serial"
-        raise SeveralSerialsError(listed, found, expected, serials=tuple(both))
-    if not both:
-        raise LogError(listed, "no serial is told by the log or its name", "give it with --serial")
-    unit, origin = next(iter(both.items()))
-    return unit, origin, []
-
-
-def _differing(given: str, told: Mapping[str, str]) -> list[Doubt]:
-    return [
-        Doubt(
-            "serial differs",
-            f'--serial says "{shown(given)}", and the log\'s serial {origin} says "{shown(text)}"',
-            remedy="make sure that these are the logs of this unit",
-        )
-        for text, origin in told.items()
-        if text != given
-    ]
+def _claim(file: _File) -> Claim:
+    columns = [text for samples in file.samples for text in dict.fromkeys(samples.texts.get("serial", ())) if text]
+    return Claim(file.evidence.file, tuple(dict.fromkeys(columns)), file.source.told, file.stem_serial)
 
 
 # --- all tables together --------------------------------------------------------------------------------------------
@@ -225,14 +173,15 @@ def _merge(
     unit, serial_from, doubts = identity
     tables = [(file, samples) for file in files for samples in file.samples]
     offsets = np.concatenate(([0], np.cumsum([len(samples) for _, samples in tables]))).tolist()
-    stages, stages_from = _stages(tables)
+    stages, stages_from, stage_doubts = _stages(tables)
     frame = _frame(tables, stages, load_mode)
-    notes = _notes(files)
-    day, day_doubts = _test_date(tables, notes)
+    day, day_doubts = day_of_test((samples, file.source.told) for file, samples in tables)
     qualified = {vocabulary.qualify(key): value for key, value in stated.items()}
     doubts = [
         *doubts,
         *day_doubts,
+        *stage_doubts,
+        *(doubt for file in files for doubt in file.source.doubts),
         *_reading_doubts(tables, offsets),
         *_unit_doubts(samples for _, samples in tables),
         *_stated_doubts(qualified, frame),
@@ -243,7 +192,7 @@ def _merge(
         channels=_channels(tables),
         evidence=tuple(file.evidence for file in files),
         tables=tuple(samples.name for _, samples in tables),
-        notes=notes,
+        notes=_notes(files),
         stated=qualified,
         ignored=tuple(dict.fromkeys([item for file in files for item in file.source.ignored] + repeated)),
         doubts=tuple(doubts),
@@ -257,27 +206,24 @@ def _channels(tables: Sequence[tuple[_File, Samples]]) -> tuple[Channel, ...]:
     return tuple(dict.fromkeys(channel for _, samples in tables for channel in samples.channels))
 
 
-def _stages(tables: Sequence[tuple[_File, Samples]]) -> tuple[list[list[str] | str], str]:
-    """Each table's stage, or one a sample; and what told them."""
-    stages: list[list[str] | str] = []
-    told = set()
-    for file, samples in tables:
-        own = stage_of_sheet(samples.sheet) if samples.sheet else ""
-        default = own or file.stem_stage or "steady"
-        column = samples.texts.get("stage")
-        if column is not None and any(column):
-            stages.append([text or default for text in column])
-            told.add("stage column")
-        else:
-            stages.append(default)
-            told.add("sheet name" if own else "file name" if file.stem_stage else "none told")
-    order = ("stage column", "file name", "sheet name", "none told")
-    return stages, next(name for name in order if name in told)
+def _stages(tables: Sequence[tuple[_File, Samples]]) -> tuple[list[RowStages], str, list[Doubt]]:
+    """Each table's stages, what told them, and what is doubtful about them."""
+    found = [
+        stages_of(samples, in_name=file.stem_stage, in_note="; ".join(_stage_notes(file))) for file, samples in tables
+    ]
+    told = {origin for _, origin, _ in found}
+    order = ("stage column", "file name", "sheet name", "note", "none told")
+    faults = list(dict.fromkeys(fault for _, _, fault in found if fault))
+    stages = [stage for stage, _, _ in found]
+    doubts = doubts_of([(samples, stage) for (_, samples), stage in zip(tables, stages, strict=True)], faults)
+    return stages, next(name for name in order if name in told), doubts
 
 
-def _frame(
-    tables: Sequence[tuple[_File, Samples]], stages: Sequence[list[str] | str], load_mode: str | None
-) -> pd.DataFrame:
+def _stage_notes(file: _File) -> list[str]:
+    return [text for key in ("stage", "test stage") for text in file.source.told.get(key, ())]
+
+
+def _frame(tables: Sequence[tuple[_File, Samples]], stages: Sequence[RowStages], load_mode: str | None) -> pd.DataFrame:
     import pandas as pd
 
     sizes = [len(samples) for _, samples in tables]
@@ -331,26 +277,6 @@ def _notes(files: Sequence[_File]) -> dict[str, str]:
             if notes.setdefault(key, value) != value:
                 notes[f"{key} ({file.evidence.file})"] = value
     return notes
-
-
-def _test_date(tables: Sequence[tuple[_File, Samples]], notes: Mapping[str, str]) -> tuple[date | None, list[Doubt]]:
-    """The day of the test: the latest that a table begins on, which no calibration may be past; else a note's."""
-    doubts = [
-        Doubt(kind, f"{samples.name}: {text}", channels=("time",))
-        for _, samples in tables
-        for kind, text in samples.doubts
-    ]
-    days = [samples.day for _, samples in tables if samples.day is not None]
-    if days:
-        return max(days), doubts
-    for key in _DATE_NOTES:
-        day, either = parse_day(notes.get(key, ""))
-        if day is not None:
-            return day, doubts
-        if either:
-            text = f'the note "{key}: {shown(notes[key])}" may be day/month or month/day: no test date is taken'
-            doubts.append(Doubt("ambiguous date", text, remedy="write dates as 2026-05-04"))
-    return None, doubts
 
 
 # --- doubts ---------------------------------------------------------------------------------------------------------

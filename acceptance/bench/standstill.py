@@ -1,4 +1,4 @@
-"""Readings that stand still where they are known to move: a clipped converter, a frozen instrument.
+"""Readings that stand still, or pile up, where they are known to move: a clipped converter, a frozen instrument.
 
 A coarse converter, a quiet dwell and a zero current stand still for good reasons, so both checks first ask
 for noise: at the reading's own level, and beside the run itself at the same load.
@@ -6,7 +6,7 @@ for noise: at the reading's own level, and beside the run itself at the same loa
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -14,12 +14,18 @@ from numpy.typing import NDArray
 
 from acceptance.bench.log import BenchLog, Doubt, Span
 
-__all__ = ["Trace", "Values", "clipped", "frozen", "place_of", "runs_of", "words_of"]
+__all__ = ["Trace", "Values", "clipped", "frozen", "piled", "place_of", "runs_of", "words_of"]
 
 Values = NDArray[np.float64]
 
 _FROZEN_RUN = 50  # samples
 _CLIPPED_RUN = 5
+_PILED = 5  # readings
+_PILED_SHARE = 0.05  # of a table's
+_STEPS_BELOW = 3  # lattice steps under the largest, which together must be three times rarer
+_SPREAD = 10  # lattice steps that the readings beside must spread over
+_TYPICAL = 4  # lattice steps that they typically lie below the largest
+_NEAREST = 0.45  # of the typical distance below; two conditions in turn leave half of it without a reading
 _NOISE_STEPS = 3.0  # second differences (2.4 sigma) of this many resolution steps: then a run of equals is no chance
 
 
@@ -124,8 +130,9 @@ def _clipped_spans(channel: Trace, at_rail: NDArray[np.bool_], tables: Sequence[
         long = last - first >= need
         if not long.any() or not _is_loaded(channel, a, first[long], last[long]):
             continue
-        piled = last - first >= _CLIPPED_RUN
-        found += [(a + int(i), a + int(j)) for i, j in zip(first[piled], last[piled], strict=True)]
+        # amid lower readings, those of a pile were cut off too
+        kept = (last - first >= _CLIPPED_RUN) | _pile(values)[first]
+        found += [(a + int(i), a + int(j)) for i, j in zip(first[kept], last[kept], strict=True)]
     return tuple(found)
 
 
@@ -136,6 +143,56 @@ def _is_loaded(channel: Trace, start: int, first: NDArray[np.intp], last: NDArra
     top = float(np.nanmax(np.abs(channel.driver), initial=0.0))
     loads = [np.nanmedian(np.abs(channel.driver[start + i : start + j])) for i, j in zip(first, last, strict=True)]
     return top == 0 or max(loads) >= 0.1 * top
+
+
+def piled(channel: Trace, tables: Sequence[Span], told: Iterable[Span] = ()) -> Iterator[Doubt]:
+    """A range that ends within the noise: the largest reading is frequent, with hardly any just below it.
+
+    The readings beside the pile tell it from a quiet dwell (which has hardly any), from coarse steps (which lie one
+    or two steps lower) and from conditions in turn (which leave a gap between their levels).
+
+    Parameters
+    ----------
+    told
+        Samples that are called clipped already; their table is not looked at again.
+    """
+    told = tuple(told)
+    for a, b in tables:
+        if any(first < b and last > a for first, last in told):
+            continue
+        rows = _pile(channel.values[a:b])
+        first, last = runs_of(rows)
+        if not first.size or not _is_loaded(channel, a, first, last):
+            continue
+        spans = tuple((a + int(i), a + int(j)) for i, j in zip(first, last, strict=True))
+        top = channel.values[spans[0][0]]
+        where = f"{np.count_nonzero(rows)} of {b - a} samples, first at {place_of(channel.log, spans[0][0])}"
+        text = f"{words_of(channel.key)} stands at its largest value {top:.6g} in {where}"
+        text += ", and hardly ever just below it: clipped"
+        remedy = "measure again in a higher range"
+        yield Doubt("clipped", text, bars=True, channels=(channel.key,), spans=spans, remedy=remedy)
+
+
+def _pile(values: Values) -> NDArray[np.bool_]:
+    """The samples of a pile at the largest value; none where there is no pile."""
+    none = np.zeros(values.size, bool)
+    known = np.isfinite(values)
+    count = np.count_nonzero(known)
+    top = float(np.max(values, where=known, initial=-np.inf))
+    at_top = values == top
+    size = np.count_nonzero(at_top)
+    if not top > 0 or size < max(_PILED, _PILED_SHARE * count) or size == count:
+        return none
+    beside = known & ~at_top & (np.concatenate((at_top[1:], [False])) | np.concatenate(([False], at_top[:-1])))
+    if np.count_nonzero(beside) < _PILED:
+        return none
+    typical = float(np.median(top - values[beside]))
+    below = top - values[known & ~at_top & (values >= top - 2 * typical)]
+    step = _resolution(np.append(below, 0.0))
+    is_rare = size > _STEPS_BELOW * np.count_nonzero(below < (_STEPS_BELOW + 0.5) * step)
+    is_noise = np.ptp(below) >= _SPREAD * step and typical >= _TYPICAL * step
+    is_one_level = np.quantile(below, 0.1) <= _NEAREST * typical
+    return at_top if step > 0 and is_rare and is_noise and is_one_level else none
 
 
 def frozen(channel: Trace, tables: Sequence[Span]) -> Iterator[Doubt]:

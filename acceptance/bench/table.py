@@ -8,13 +8,14 @@ from __future__ import annotations
 import re
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, field, replace
+from datetime import datetime, time
 from typing import TYPE_CHECKING, NoReturn
 
 import numpy as np
 from numpy.typing import NDArray
 
 from acceptance.bench.headings import Heading, Vocabulary, resolve_unit, shown
-from acceptance.bench.log import Ignored
+from acceptance.bench.log import Doubt, Ignored
 from acceptance.bench.values import Place, is_reading, settle_decimal
 from acceptance.errors import LogError
 
@@ -22,25 +23,38 @@ if TYPE_CHECKING:
     from acceptance.bench.values import Cells
 
 __all__ = [
+    "DATE_NOTES",
+    "IDENTITY_NOTES",
     "MAX_COLUMNS",
     "Layout",
     "RawColumn",
     "RawTable",
     "Row",
+    "SERIAL_NOTES",
     "Source",
+    "cell_text",
     "find_layout",
+    "has_reading",
+    "is_blank",
+    "is_empty",
+    "is_rule",
     "note_of",
     "refuse_headings",
     "refuse_width",
     "settle",
-    "tables_of",
+    "unit_row",
 ]
 
-_SIDE_ROWS = 400  # notes beside a table stand beside its first rows
 MAX_COLUMNS = 2000  # a bench log has tens; beyond this a file is something else
 _DASHES = re.compile(r":?-{2,}:?")
 _CLOCK_FORM = re.compile(r"[hmsydtf:./\- ]+", re.IGNORECASE)  # hh:mm:ss, dd.mm.yyyy
 _KEY = re.compile(r"[^\W\d_][\w ./()-]{0,39}")
+SERIAL_NOTES = (
+    "serial", "serial number", "serial no", "serial no.", "serialno", "serial nr", "sn", "s/n", "unit serial",
+    "dut serial", "seriennummer", "numéro de série",
+)  # fmt: skip
+DATE_NOTES = ("date", "test date", "date of test", "tested", "tested on", "datum", "prüfdatum")
+IDENTITY_NOTES = frozenset((*SERIAL_NOTES, *DATE_NOTES))
 
 Row = tuple[int, Sequence[object]]  # line of the file from 1, cells
 
@@ -81,10 +95,16 @@ class Source:
     dialect: str = ""
     tables: list[RawTable] = field(default_factory=list)
     notes: dict[str, str] = field(default_factory=dict)
+    told: dict[str, list[str]] = field(default_factory=dict)  # every different value of a note, in order
     ignored: list[Ignored] = field(default_factory=list)
+    doubts: list[Doubt] = field(default_factory=list)
 
     def note(self, key: str, value: str) -> None:
         """Keep a note; of two with one key the first stays, the other is kept beside it."""
+        values = self.told.setdefault(key, [])
+        if value in values:
+            return
+        values.append(value)
         if key in self.notes and self.notes[key] != value:
             value = f"{self.notes[key]}; {value}"
         self.notes[key] = value
@@ -107,14 +127,26 @@ class Layout:
     cells: tuple[str, ...]  # the heading row as written
     numbers: tuple[int, ...]  # cell indices of the columns that hold readings or times
 
+    @property
+    def rank(self) -> tuple[int, int]:
+        """What makes one row the heading row before another: chosen headings first, then understood ones."""
+        return _rank(self.columns)
+
 
 def is_blank(cell: object) -> bool:
     """Whether nothing stands in a cell."""
     return cell is None or (isinstance(cell, str) and not cell.strip())
 
 
+def cell_text(cell: object) -> str:
+    """A cell of a note as text: a day without its midnight."""
+    if isinstance(cell, datetime) and cell.time() == time():
+        return cell.date().isoformat()
+    return str(cell).strip()
+
+
 def find_layout(rows: Sequence[Row], vocabulary: Vocabulary) -> Layout | None:
-    """The row with most understood headings that has readings under it, or None.
+    """The row with most chosen headings, then most understood ones, that has readings under it; or None.
 
     Of two alike the upper one is taken. A note such as "serial; A-17" is no heading row: no reading stands
     under a word that names a quantity.
@@ -124,21 +156,27 @@ def find_layout(rows: Sequence[Row], vocabulary: Vocabulary) -> Layout | None:
         if len(cells) > MAX_COLUMNS:
             continue
         understood = _understood(cells, vocabulary)
-        if len(understood) > (len(best.columns) if best else 0):
+        if understood and (best is None or _rank(understood) > best.rank):
             layout = _layout_at(index, rows, understood, vocabulary)
-            if layout is not None and len(layout.columns) > (len(best.columns) if best else 0):
+            if layout is not None and (best is None or layout.rank > best.rank):
                 best = layout
     return best
+
+
+def _rank(understood: dict[int, Heading]) -> tuple[int, int]:
+    return sum(heading.is_chosen for heading in understood.values()), len(understood)
 
 
 def _understood(cells: Sequence[object], vocabulary: Vocabulary) -> dict[int, Heading]:
     found = {}
     for index, cell in enumerate(cells):
-        # a number is no heading: the quick way past rows of data
+        # a number is no heading, unless the bench file says so: the quick way past rows of data
         if isinstance(cell, str) and cell and not cell.lstrip()[:1].isdigit():
             heading = vocabulary.read(cell)
             if heading.quantity:
                 found[index] = heading
+        elif vocabulary.numeric and cell is not None and vocabulary.is_chosen(str(cell)):
+            found[index] = vocabulary.read(str(cell))
     return found
 
 
@@ -148,13 +186,13 @@ def _layout_at(
     numbers = [column for column, heading in understood.items() if heading.is_number]
     if not numbers:
         return None
-    below = [i for i in range(index + 1, min(index + 12, len(rows))) if not _is_empty(rows[i][1], understood)]
+    below = [i for i in range(index + 1, min(index + 12, len(rows))) if not is_empty(rows[i][1], understood)]
     if not below:
         return None
-    units = _unit_row(rows[below[0]][1], understood)
+    units = unit_row(rows[below[0]][1], understood)
     first = below[0] + 1 if units else index + 1
     data = [i for i in below if i >= first]
-    if not data or not any(_has_reading(rows[i][1], numbers) for i in data[:3]):
+    if not data or not any(has_reading(rows[i][1], numbers) for i in data[:3]):
         return None
     cells = tuple("" if cell is None else str(cell) for cell in rows[index][1])
     kept = _blocks(cells, understood, rows[data[0]][1])
@@ -181,27 +219,27 @@ def _blocks(cells: Sequence[str], understood: dict[int, Heading], data: Sequence
     kept = [
         run
         for run in runs
-        if _has_reading(data, [i for i in run if i in understood and understood[i].is_number]) or len(runs) == 1
+        if has_reading(data, [i for i in run if i in understood and understood[i].is_number]) or len(runs) == 1
     ]
     if not kept:  # the first row has a gap in every run: keep what has a numeric heading
         kept = [run for run in runs if any(i in understood and understood[i].is_number for i in run)]
     return {index for run in kept for index in run}
 
 
-def _is_empty(cells: Sequence[object], columns: Iterable[int]) -> bool:
-    return all(index >= len(cells) or is_blank(cells[index]) or _is_rule(cells[index]) for index in columns)
+def is_empty(cells: Sequence[object], columns: Iterable[int]) -> bool:
+    return all(index >= len(cells) or is_blank(cells[index]) or is_rule(cells[index]) for index in columns)
 
 
-def _is_rule(cell: object) -> bool:
+def is_rule(cell: object) -> bool:
     """A cell of the line that some tables draw under their headings."""
     return isinstance(cell, str) and _DASHES.fullmatch(cell.strip()) is not None and len(cell.strip()) > 2
 
 
-def _has_reading(cells: Sequence[object], columns: Iterable[int]) -> bool:
+def has_reading(cells: Sequence[object], columns: Iterable[int]) -> bool:
     return any(index < len(cells) and is_reading(cells[index]) for index in columns)
 
 
-def _unit_row(cells: Sequence[object], understood: dict[int, Heading]) -> dict[int, str]:
+def unit_row(cells: Sequence[object], understood: dict[int, Heading]) -> dict[int, str]:
     """Units by cell index, where this row holds units and nothing else; else nothing."""
     units: dict[int, str] = {}
     for index, heading in understood.items():
@@ -218,98 +256,7 @@ def _unit_row(cells: Sequence[object], understood: dict[int, Heading]) -> dict[i
     return units
 
 
-# --- rows -> tables -------------------------------------------------------------------------------------------------
-
-
-def tables_of(
-    rows: Sequence[Row], layout: Layout, source: Source, *, name: str, sheet: str = "", strict_width: bool = False
-) -> list[RawTable]:
-    """The tables under a heading row, a new one wherever the headings come again.
-
-    Parameters
-    ----------
-    rows
-        Those that `layout` was found in, and all that follow.
-    strict_width
-        Refuse a row with more cells than headings: in delimited text its cells have lost their columns.
-    """
-    found: list[RawTable] = []
-    data: list[Row] = []
-    heading_line = rows[layout.heading][0]
-    repeated = tuple(cell.strip() for cell in layout.cells[: layout.width])
-    after_heading = False
-    has_gap = len(layout.columns) + len(layout.unread) < layout.width
-    for number, row in enumerate(rows[layout.first :]):
-        line, cells = row
-        if _has_reading(cells, layout.numbers) and not _is_remark(cells, layout):
-            if strict_width and len(cells) > layout.width:
-                _refuse_long(row, layout, source)
-            if number < _SIDE_ROWS and (has_gap or len(cells) > layout.width):
-                _side_note(cells, layout, source)
-            data.append(row)
-            after_heading = False
-        elif _is_empty(cells, layout.columns):
-            _side_note(cells, layout, source)
-        elif _is_repeated(cells, repeated):
-            _close(found, data, layout, source, name=name, sheet=sheet, line=heading_line)
-            data, heading_line, after_heading = [], line, True
-            source.ignore(f"line {line}", "the headings come again here: a new table begins", file=name)
-        elif not (after_heading and _unit_row(cells, layout.columns)):
-            _leave_out(row, layout, source, name)
-    _close(found, data, layout, source, name=name, sheet=sheet, line=heading_line)
-    return found
-
-
-def _is_repeated(cells: Sequence[object], repeated: tuple[str, ...]) -> bool:
-    return len(cells) >= len(repeated) and all(
-        ("" if cell is None else str(cell).strip()) == text for cell, text in zip(cells, repeated, strict=False)
-    )
-
-
-def _is_remark(cells: Sequence[object], layout: Layout) -> bool:
-    """A short row that begins with a word: "count; 200" under thirteen headings."""
-    filled = [cell for cell in cells if not is_blank(cell)]
-    first = cells[layout.numbers[0]] if layout.numbers[0] < len(cells) else None
-    if isinstance(first, str) and first.lstrip().startswith("#"):
-        return True
-    return len(filled) * 2 < len(layout.columns) and isinstance(first, str) and first != "" and not is_reading(first)
-
-
-def _refuse_long(row: Row, layout: Layout, source: Source) -> None:
-    line, cells = row
-    if is_blank(cells[layout.width]):  # what stands behind an empty column is a note
-        return
-    found = f"this line has {len(cells)} cells and the headings are {layout.width}"
-    expected = "write the log again with a separator that is not also the decimal mark"
-    raise LogError(source.file, found, expected, line=line, column=layout.width + 1)
-
-
-def _leave_out(row: Row, layout: Layout, source: Source, name: str) -> None:
-    """A row of words among or below the data: a note, or a fault where it should have been data."""
-    line, cells = row
-    texts = [str(cell).strip() for cell in cells if not is_blank(cell)]
-    under = [index for index in layout.numbers if index < len(cells) and not is_blank(cells[index])]
-    is_comment = texts[0].startswith("#")
-    numeric = under and str(cells[under[0]]).lstrip()[:1].isdigit()
-    if not is_comment and (numeric or (len(texts) * 2 > len(layout.columns) and len(texts) > 2)):
-        index = under[0] if under else layout.numbers[0]
-        heading = layout.columns[index].text
-        cell = cells[index] if index < len(cells) else ""  # a line may be shorter than the headings
-        found = f'"{shown(cell, 30)}" under "{shown(heading)}" is not a number'
-        raise LogError(source.file, found, "expected a reading, or an empty cell", line=line, column=index + 1)
-    pair = note_of(texts)
-    if pair:
-        source.note(*pair)
-    else:
-        source.ignore(f"line {line}", f'text among the data: "{shown(" ".join(texts))}"', file=name)
-
-
-def _side_note(cells: Sequence[object], layout: Layout, source: Source) -> None:
-    table = layout.columns.keys() | layout.unread.keys()
-    outside = [str(c).strip() for i, c in enumerate(cells) if i not in table and not is_blank(c)]
-    pair = note_of(outside) if outside and not all(map(_is_rule, outside)) else None
-    if pair:
-        source.note(*pair)
+# --- notes, decimal marks -------------------------------------------------------------------------------------------
 
 
 def note_of(cells: Sequence[str]) -> tuple[str, str] | None:
@@ -324,30 +271,6 @@ def note_of(cells: Sequence[str]) -> tuple[str, str] | None:
     if len(texts) > 1 and _KEY.fullmatch(texts[0]):
         return texts[0].lower(), " ".join(texts[1:])
     return None
-
-
-def _close(
-    found: list[RawTable], data: list[Row], layout: Layout, source: Source, *, name: str, sheet: str, line: int
-) -> None:
-    if not data:
-        return
-    columns = []
-    for index, heading in layout.columns.items():
-        cells = [row[index] if index < len(row) else None for _, row in data]
-        columns.append(RawColumn(heading, index + 1, layout.units.get(index, ""), _compact(cells)))
-    lines = np.fromiter((number for number, _ in data), np.int64, len(data))
-    found.append(RawTable(source.file, sheet, name, line, tuple(columns), lines))
-
-
-def _compact(cells: list[object]) -> Cells:
-    """Plain numbers as an array, an empty cell NaN; anything else as it stands."""
-    # a bool is no reading, and numpy would read a text "1_0" as ten: only these three types are safe
-    if set(map(type, cells)) <= {int, float, type(None)}:
-        try:
-            return np.array(cells, dtype=np.float64)
-        except OverflowError:
-            return cells
-    return cells
 
 
 def settle(tables: Sequence[RawTable]) -> list[RawTable]:

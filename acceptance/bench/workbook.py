@@ -7,21 +7,28 @@ import warnings
 import zipfile
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
+from dataclasses import replace
+from itertools import groupby
 from typing import Any
 
 from acceptance.bench.headings import Vocabulary, shown
+from acceptance.bench.log import Doubt
+from acceptance.bench.rows import tables_of
 from acceptance.bench.table import (
+    IDENTITY_NOTES,
     MAX_COLUMNS,
     Layout,
+    RawColumn,
     RawTable,
     Row,
     Source,
+    cell_text,
     find_layout,
+    is_blank,
     note_of,
     refuse_headings,
     refuse_width,
     settle,
-    tables_of,
 )
 from acceptance.errors import LogError
 
@@ -34,6 +41,8 @@ MAX_TEXTS = 256 * _MIB  # shared texts and styles are held in memory whole
 MAX_CELLS = 50_000_000
 MAX_EMPTY_ROWS = 100_000  # in a row, below or above a table
 _HEAD_ROWS = 400
+_COVER_ROWS = 60  # what is longer is a list, and no cover
+_UNUSED = ("output_power",)  # a check forms it from volts and amperes
 _FORMULA = "formula without a stored value: open the workbook in a spreadsheet program, save it, try again"
 
 
@@ -43,7 +52,9 @@ def is_workbook(raw: bytes) -> bool:
 
 
 def read_workbook(raw: bytes, file: str, vocabulary: Vocabulary) -> Source:
-    """The tables and notes of every sheet of a workbook; a sheet without a table is left out and said so.
+    """The tables and notes of every visible sheet of a workbook; what is left out is said.
+
+    A sheet without a table gives its notes alone; a hidden one gives nothing.
 
     Raises
     ------
@@ -53,19 +64,27 @@ def read_workbook(raw: bytes, file: str, vocabulary: Vocabulary) -> Source:
     _refuse_container(raw, file)
     source = Source(file)
     tried: list[tuple[str, list[Row]]] = []
+    hidden: list[str] = []
     with _opened(raw, file) as (book, charts):
         for sheet in book.worksheets:
+            if getattr(sheet, "sheet_state", "visible") != "visible":
+                hidden.append(sheet.title)
+                reason = "it is hidden; make it visible if it belongs to the test"
+                source.ignore(f'sheet "{shown(sheet.title)}"', reason)
+                continue
             rows, layout = _read_sheet(sheet, file, vocabulary)
             if layout is None:
                 tried.append((sheet.title, rows[:_HEAD_ROWS]))
-                source.ignore(f'sheet "{shown(sheet.title)}"', "no table of readings on it")
+                noted = _take_cover(source, rows[:_COVER_ROWS])
+                reason = "no table of readings on it" + ("; its notes are kept" if noted else "")
+                source.ignore(f'sheet "{shown(sheet.title)}"', reason)
                 continue
             _take_sheet(source, sheet, rows, layout)
         for title in charts:
             source.ignore(f'sheet "{shown(title)}"', "a sheet of charts only")
     if not source.tables:
-        _refuse_sheets(raw, file, tried, vocabulary)
-    _refuse_formulas(raw, source)
+        _refuse_sheets(raw, file, tried, hidden, vocabulary)
+    _settle_formulas(raw, source)
     source.tables = settle(source.tables)
     listed = ", ".join(f'"{shown(name, 31)}"' for name in dict.fromkeys(table.sheet for table in source.tables))
     source.dialect = f"workbook, {'sheets' if ',' in listed else 'sheet'} {listed}"
@@ -184,43 +203,93 @@ def _take_sheet(source: Source, sheet: Any, rows: list[Row], layout: Layout) -> 
 
 def _side_pairs(source: Source, cells: Sequence[object], table: frozenset[int]) -> None:
     """Notes in a row, outside the table's columns: a key with its value at its right, or both in one cell."""
-    texts = [str(cell).strip() for i, cell in enumerate(cells) if i not in table and cell is not None]
+    texts = [cell_text(cell) for i, cell in enumerate(cells) if i not in table and cell is not None]
     pair = note_of(texts) if texts else None
     if pair:
         source.note(*pair)
 
 
-def _refuse_sheets(raw: bytes, file: str, tried: Sequence[tuple[str, list[Row]]], vocabulary: Vocabulary) -> None:
+def _take_cover(source: Source, rows: Sequence[Row]) -> bool:
+    """Keep the notes of a sheet without a table, such as a cover; whether there is one."""
+    noted = False
+    for _, cells in rows:
+        for pair in _pairs(["" if is_blank(cell) else cell_text(cell) for cell in cells]):
+            source.note(*pair)
+            noted = True
+    return noted
+
+
+def _pairs(texts: Sequence[str]) -> Iterator[tuple[str, str]]:
+    """Keys and values in a row: two cells, or runs of neighbours of which each is one note, or "key:", value, ...
+
+    A row of three words or more is a row of some other table, unless it tells the serial or the date.
+    """
+    runs = [list(run) for is_filled, run in groupby(texts, key=bool) if is_filled]
+    if len(runs) == 2 and all(len(run) == 1 and not note_of(run) for run in runs):
+        runs = [runs[0] + runs[1]]  # the value stands behind an empty or merged cell
+    for run in runs:
+        if len(run) > 2 and len(run) % 2 == 0 and all(key.endswith((":", "=")) for key in run[::2]):
+            yield from filter(None, map(note_of, zip(run[::2], run[1::2], strict=True)))
+            continue
+        pair = note_of(run)
+        if pair and (len(run) < 3 or pair[0] in IDENTITY_NOTES):
+            yield pair
+
+
+def _refuse_sheets(
+    raw: bytes, file: str, tried: Sequence[tuple[str, list[Row]]], hidden: Sequence[str], vocabulary: Vocabulary
+) -> None:
     filled = [(title, rows) for title, rows in tried if rows]
-    if not filled:
+    if not filled and not hidden:
         raise LogError(file, "the workbook is empty", "expected a sheet with headings and readings")
-    title, rows = filled[0]
     with _opened(raw, file, values=False) as (book, _):
         for name, kept in filled:
             cells = book[name].iter_rows(min_row=kept[0][0], max_row=kept[-1][0] + 50, max_col=40, values_only=True)
             if any(isinstance(cell, str) and cell.startswith("=") for row in cells for cell in row):
                 raise LogError(file, f'sheet "{shown(name)}" holds a {_FORMULA}')
+    if hidden:
+        listed = ", ".join(f'"{shown(name, 31)}"' for name in hidden[:6])
+        found = f"no sheet that can be seen holds a table of readings; hidden: {listed}"
+        raise LogError(file, found, "make the sheet visible if it belongs to the test")
+    title, rows = filled[0]
     refuse_headings(f'{file}, sheet "{shown(title)}"' if len(filled) > 1 else file, rows, vocabulary)
 
 
 # --- formulas -------------------------------------------------------------------------------------------------------
 
 
-def _refuse_formulas(raw: bytes, source: Source) -> None:
-    """A column without one value may hold formulas that no program has worked out yet."""
+def _settle_formulas(raw: bytes, source: Source) -> None:
+    """A column without one value may hold formulas that no program has worked out yet.
+
+    One that is needed is refused; one that nothing uses is left out, and said.
+    """
     empty = [
-        (table, column)
-        for table in source.tables
+        (number, column)
+        for number, table in enumerate(source.tables)
         for column in table.columns
         if all(cell is None or cell != cell for cell in column.cells)
     ]
     if not empty:
         return
     with _opened(raw, source.file, values=False) as (book, _):
-        for table, column in empty:
-            if _is_formula(book[table.sheet], table, column.position):
+        for number, column in empty:
+            table = source.tables[number]
+            if not _is_formula(book[table.sheet], table, column.position):
+                continue
+            if column.heading.quantity not in _UNUSED or column.heading.is_chosen:
                 found = f'sheet "{shown(table.sheet)}": the column "{shown(column.heading.text)}" holds a {_FORMULA}'
                 raise LogError(source.file, found, line=int(table.lines[0]), column=column.position)
+            source.tables[number] = replace(table, columns=tuple(c for c in table.columns if c is not column))
+            _say_formula(source, table, column)
+
+
+def _say_formula(source: Source, table: RawTable, column: RawColumn) -> None:
+    heading = shown(column.heading.text)
+    source.ignore(f'column "{heading}"', f"it holds a {_FORMULA}", file=table.name)
+    text = f'{table.name}: the column "{heading}" holds formulas without stored values, and is left out'
+    doubt = Doubt("formula", text, remedy="open the workbook in a spreadsheet program, and save it")
+    if doubt not in source.doubts:
+        source.doubts.append(doubt)
 
 
 def _is_formula(sheet: Any, table: RawTable, position: int) -> bool:

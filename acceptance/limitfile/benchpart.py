@@ -12,7 +12,7 @@ from acceptance.errors import MeasurementError
 from acceptance.limitfile.accuracy import Accuracy, parse_accuracy
 from acceptance.limitfile.faults import Source, unknown
 from acceptance.limitfile.limits import Converter, Meter, ShuntResistor, Wiring
-from acceptance.limitfile.model import Adc, BenchFile, ColumnChoice, Instrument, Shunt
+from acceptance.limitfile.model import Adc, BenchFile, ColumnChoice, Instrument, LogColumns, Shunt
 from acceptance.limitfile.yamltree import Path
 from acceptance.units import KINDS, UNITS, find_unit, parse_quantity, quoted
 
@@ -40,10 +40,10 @@ class BenchPart:
     leads: Mapping[str, Wiring] = field(default_factory=dict)
 
     def overridden_by(self, other: BenchPart) -> BenchPart:
-        """This part with what another file says instead, entry by entry."""
+        """This part with what another file says instead, entry by entry: a column, or a value that was not logged."""
         return BenchPart(
-            columns={**self.columns, **other.columns},
-            stated={**self.stated, **other.stated},
+            columns={**{k: v for k, v in self.columns.items() if k not in other.stated}, **other.columns},
+            stated={**{k: v for k, v in self.stated.items() if k not in other.columns}, **other.stated},
             load_mode=self.load_mode if other.load_mode is None else other.load_mode,
             settle=self.settle if other.settle is None else other.settle,
             min_dwell=self.min_dwell if other.min_dwell is None else other.min_dwell,
@@ -60,6 +60,7 @@ def _put_over(mine: Mapping[str, V], other: Mapping[str, V]) -> dict[str, V]:
 
 def bench_part(source: Source, model: BenchFile, outputs: Sequence[str]) -> BenchPart:
     """What a file says about the bench; everything wrong with it is noted in `source`."""
+    _check_logged_or_stated(source, model.log, outputs)
     return BenchPart(
         columns=_columns(source, model.log.columns, outputs),
         stated=_stated(source, model.log.stated, outputs),
@@ -111,6 +112,30 @@ def _kept_once(source: Source, path: Path, *, key: str, seen: dict[str, Path]) -
     return False
 
 
+def _whole_key(channel: tuple[str, str], outputs: Sequence[str]) -> str:
+    """The key of a channel of the log, an output's quantity without a name being the first output's."""
+    quantity, qualifier = channel
+    default = outputs[0] if outputs and quantity in OUTPUT_QUANTITIES else ""
+    return channel_key(quantity, qualifier or default)
+
+
+def _check_logged_or_stated(source: Source, log: LogColumns, outputs: Sequence[str]) -> None:
+    """Note what is given a column and stated as well; what is wrong with either by itself has been noted."""
+    columns = {_plain_key(name, outputs): name for name in log.columns}
+    for name in log.stated:
+        if column := columns.get(_plain_key(name, outputs)):
+            line, at = source.tree.place(("log", "columns", column), key=True)
+            expected = f"expected one of them; the column stands at line {line}, column {at}"
+            found = f"{quoted(name)} is stated, and has a column too"
+            source.refuse(("log", "stated", name), found, expected, key=True)
+
+
+def _plain_key(name: str, outputs: Sequence[str]) -> str:
+    quantity, _, qualifier = name.partition(" ")
+    qualifier = qualifier.strip()
+    return _whole_key((quantity, qualifier.lower() if quantity in _PROBED else qualifier), outputs)
+
+
 def _columns(
     source: Source, columns: Mapping[str, ColumnChoice], outputs: Sequence[str]
 ) -> dict[str, tuple[str, str | None]]:
@@ -122,16 +147,15 @@ def _columns(
         channel = _channel(source, path, quantities=QUANTITIES, outputs=outputs, probe_needed=True)
         if channel is None:
             continue
-        quantity, qualifier = channel
-        _check_column_unit(source, path, quantity=quantity, unit=choice.unit)
-        default = outputs[0] if outputs and quantity in OUTPUT_QUANTITIES else ""
-        if not _kept_once(source, path, key=channel_key(quantity, qualifier or default), seen=seen):
+        _check_column_unit(source, path, quantity=channel[0], unit=choice.unit)
+        key = _whole_key(channel, outputs)
+        if not _kept_once(source, path, key=key, seen=seen):
             continue
         if choice.heading in headings:
             found = f"the heading {quoted(choice.heading)} stands for {headings[choice.heading]} already"
             source.refuse((*path, "heading"), found, "expected one quantity for each heading")
         headings.setdefault(choice.heading, name)
-        made[channel_key(quantity, qualifier or default)] = (choice.heading, choice.unit)
+        made[key] = (choice.heading, choice.unit)
     return made
 
 
@@ -157,7 +181,8 @@ def _stated(source: Source, stated: Mapping[str, str], outputs: Sequence[str]) -
     for name, text in stated.items():
         path: Path = ("log", "stated", name)
         channel = _channel(source, path, quantities=_NUMBERS, outputs=outputs, probe_needed=True)
-        if channel is None or not _kept_once(source, path, key=channel_key(*channel), seen=seen):
+        key = _whole_key(channel, outputs) if channel is not None else ""
+        if channel is None or not _kept_once(source, path, key=key, seen=seen):
             continue
         kind = _NUMBERS[channel[0]]
         value = _number(source, path, text, kind=kind)
@@ -167,7 +192,7 @@ def _stated(source: Source, stated: Mapping[str, str], outputs: Sequence[str]) -
             source.refuse(path, f"{quoted(text)} is no {channel[0]}", "expected above 0 and at most 1, or 100 %")
         elif kind != "temperature" and value < 0:
             source.refuse(path, f"{quoted(text)} is below zero", f"expected a {kind} such as 1 {_si(kind)}")
-        made[channel_key(*channel)] = value
+        made[key] = value
     return made
 
 

@@ -18,25 +18,17 @@ from acceptance.limitfile.model import (
     Requirement,
     Temperature,
 )
+from acceptance.limitfile.ratings import Plate, check_rated
 from acceptance.limitfile.yamltree import Path
 from acceptance.units import quoted
 
-__all__ = ["Placed", "Plate", "check_outputs", "check_requirements", "named"]
+__all__ = ["Placed", "check_outputs", "check_requirements", "named"]
 
 NAME = re.compile(r"[^\W_](?:[\w .+-]*[\w.+-])?")
 OUTPUT_NAME = re.compile(r"[\w+-](?:[\w .+-]*[\w.+-])?")
 RESERVED = "calibration."  # findings about instruments past their date are called so
 _SEVERAL = frozenset({Overcurrent.characteristic, Published.characteristic})  # these give several findings each
 RANGE_SLACK = 0.01  # an input voltage is met within 1 %, so it may lie that far outside
-
-
-@dataclass(frozen=True, slots=True)
-class Plate:
-    """What is known of the ratings, even where some of them are faulty."""
-
-    outputs: tuple[str, ...]  # empty where they cannot be told
-    input: InputRating | None
-    ambient_is_missing: bool
 
 
 @dataclass(frozen=True, slots=True)
@@ -72,7 +64,7 @@ def check_outputs(source: Source, outputs: Sequence[str]) -> None:
 
 
 def check_requirements(source: Source, requirements: Sequence[Placed], plate: Plate) -> None:
-    """Note every name, output, load and input voltage that does not fit."""
+    """Note every name, output, load, input voltage and limit that does not fit."""
     _check_names(source, requirements)
     for placed in requirements:
         path, entry = placed.path, placed.entry
@@ -81,6 +73,7 @@ def check_requirements(source: Source, requirements: Sequence[Placed], plate: Pl
         if plate.outputs:
             _check_output(source, path, entry, outputs=plate.outputs)
         _check_inputs(source, path, entry, rating=plate.input)
+        check_rated(source, path, entry, plate)
         if plate.ambient_is_missing and isinstance(entry, Temperature) and entry.adjust == "rated ambient":
             expected = "expected ambient: under ratings:, such as ambient: 40 °C"
             source.refuse((*path, "adjust"), "no rated ambient is given to adjust to", expected)
@@ -117,20 +110,27 @@ def _check_output(source: Source, path: Path, entry: Requirement, *, outputs: Se
     for name in loads:
         if name not in outputs:
             source.refuse((*path, "at", "load", name), f"{quoted(name)} is no output", unknown(name, outputs), key=True)
-    if not loads:
-        return
     own = entry.output or outputs[0]
     if isinstance(entry, LoadRegulation):
-        if own in loads:
-            expected = "expected from: and to: for it, and under at: only the other outputs"
-            source.refuse(
-                (*path, "at", "load", own), f"load_regulation sweeps {quoted(own)} itself", expected, key=True
-            )
+        _check_other_loads(source, path, loads, own=own, outputs=outputs)
         return
     needed = outputs if isinstance(entry, Efficiency) else [own]
-    if missing := [name for name in needed if name not in loads]:
+    if loads and (missing := [name for name in needed if name not in loads]):
         found = f"no load is given for {' and '.join(missing)}"
         source.refuse((*path, "at", "load"), found, f'expected one, such as {missing[0]}: 50 %, or "any"')
+
+
+def _check_other_loads(
+    source: Source, path: Path, loads: Mapping[str, Any], *, own: str, outputs: Sequence[str]
+) -> None:
+    """A sweep of one output says what the others carry meanwhile: it matters to the output that is swept."""
+    if own in loads:
+        expected = "expected from: and to: for it, and under at: only the other outputs"
+        source.refuse((*path, "at", "load", own), f"load_regulation sweeps {quoted(own)} itself", expected, key=True)
+    if own in outputs and (missing := [name for name in outputs if name != own and name not in loads]):
+        example = ", ".join(f"{name}: 50 %" for name in missing)
+        found = f"no load is given for {' and '.join(missing)}"
+        source.refuse((*path, "at", "load"), found, f'expected it under at:, such as load: {{{example}}}, or "any"')
 
 
 def _loads(entry: Requirement) -> Mapping[str, Any]:

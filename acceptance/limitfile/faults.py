@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 from types import NoneType
@@ -16,6 +17,8 @@ from acceptance.units import quoted
 
 __all__ = ["Source", "add_model_faults", "nearest", "on_one_line", "one_of", "unknown"]
 
+_BRACKET = re.compile(r"[\[{]")
+
 
 @dataclass(slots=True)
 class Source:
@@ -28,6 +31,11 @@ class Source:
     def refuse(self, path: Path, found: str, expected: str, *, key: bool = False) -> None:
         """Note a fault at the value of a path, or at its key."""
         self.add(self.tree.place(path, key=key), found, expected)
+
+    def written(self, path: Path) -> str:
+        """The text at a path as the file has it; "" where none is."""
+        node = self.tree.node(path)
+        return node.value if node is not None and isinstance(node.value, str) else ""
 
     def add(self, place: tuple[int, int], found: str, expected: str) -> None:
         """Note a fault at line and column; (0, 0) is the file as a whole."""
@@ -96,8 +104,22 @@ def _unknown_key(source: Source, path: Path, model: type[Part], *, elsewhere: It
     if len(path) == 1 and key in set(elsewhere):
         source.refuse(path, f"the key {quoted(key)} stands in a bench file", "expected it in the limits file", key=True)
         return
+    if bracket := _BRACKET.search(key):
+        expected = f"expected a colon before the bracket: {key[: bracket.start()].strip()[:60]}: {bracket[0]}..."
+        source.refuse(path, f"the key {quoted(key)} has a bracket", expected, key=True)
+        return
     around = _annotation_at(model, path[:-1])
-    source.refuse(path, f"the key {quoted(key)} is not known here", unknown(key, _keys(around)), key=True)
+    expected = _home(model, key, path[:-1]) or unknown(key, _keys(around))
+    source.refuse(path, f"the key {quoted(key)} is not known here", expected, key=True)
+
+
+def _home(model: type[Part], key: str, around: Path) -> str:
+    """Where a key belongs that has lost its indentation, or got one; "" where it belongs nowhere near."""
+    if len(around) == 1 and key in _keys(model):
+        return "expected it at the start of a line"
+    sections = (name for name, inner in _fields(model).items() if _is_part(inner) and key in _keys(inner))
+    section = next(sections, "") if not around else ""
+    return f"expected it under {section}:, with spaces before it" if section else ""
 
 
 def _missing_key(source: Source, path: Path, model: type[Part]) -> None:

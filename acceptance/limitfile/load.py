@@ -3,24 +3,25 @@
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path as FilePath
 from typing import Any, TypeVar
 
 from pydantic import ValidationError
 
-from acceptance.errors import LimitsError
+from acceptance.errors import Fault, LimitsError
 from acceptance.limitfile.benchpart import BenchPart, bench_part
-from acceptance.limitfile.crosscheck import Placed, Plate, check_outputs, check_requirements, named
+from acceptance.limitfile.crosscheck import Placed, check_outputs, check_requirements, named
 from acceptance.limitfile.faults import Source, add_model_faults, on_one_line
 from acceptance.limitfile.fields import Part
 from acceptance.limitfile.fingerprint import requirements_sha256
 from acceptance.limitfile.limits import Limits
-from acceptance.limitfile.model import BenchFile, InputRating, LimitsFile, Requirements
+from acceptance.limitfile.model import BenchFile, Decision, InputRating, LimitsFile, Output, Requirements
+from acceptance.limitfile.ratings import Plate, check_meters
 from acceptance.limitfile.yamltree import MAX_BYTES, Path, Tree, read_tree
 
-__all__ = ["bench_schema", "limits_schema", "load_limits"]
+__all__ = ["BenchPart", "bench_schema", "limits_schema", "load_bench", "load_limits"]
 
 P = TypeVar("P", bound=Part)
 
@@ -66,14 +67,13 @@ def load_limits(path: FilePath, bench: FilePath | None = None) -> Limits:
     check_outputs(limits_file.source, plate.outputs)
     requirements = list(_requirements(limits_file.raw, model))
     check_requirements(limits_file.source, requirements, plate)
-    part = _bench_part(limits_file, model, plate.outputs)
+    part = _bench_part(limits_file, model, plate)
     if bench_file is not None:
-        part = part.overridden_by(_bench_part(bench_file, bench_model, plate.outputs))
+        part = part.overridden_by(_bench_part(bench_file, bench_model, plate))
 
-    files = [file for file in (limits_file, bench_file) if file is not None]
-    faults = {fault: None for file in files for fault in file.source.faults}
+    faults = _faults(limits_file, bench_file)
     if faults or model is None:
-        raise LimitsError(list(faults))
+        raise LimitsError(faults)
     return Limits(
         file=limits_file.name,
         sha256=limits_file.sha256,
@@ -93,6 +93,29 @@ def load_limits(path: FilePath, bench: FilePath | None = None) -> Limits:
         bench_sha256=bench_file.sha256 if bench_file is not None else "",
         lot=model.lot.model_dump(exclude_none=True) if model.lot is not None else None,
     )
+
+
+def load_bench(path: FilePath, outputs: Sequence[str] = ()) -> BenchPart:
+    """What a bench file says by itself, without a limits file.
+
+    Parameters
+    ----------
+    path
+        The bench file.
+    outputs
+        Names of the product's outputs, the default first. Where none are known, every name of an output is taken
+        as it is written, and a quantity without one stays without.
+
+    Raises
+    ------
+    LimitsError
+        With every fault of the file.
+    """
+    file = _read(path)
+    part = _bench_part(file, _validated(file, BenchFile, elsewhere=_OWN_KEYS), Plate(tuple(outputs)))
+    if faults := _faults(file):
+        raise LimitsError(faults)
+    return part
 
 
 def limits_schema() -> dict[str, Any]:
@@ -182,15 +205,23 @@ def _attempt(model: type[P], raw: object) -> P | None:
 def _plate(raw: Mapping[str, Any], model: LimitsFile | None) -> Plate:
     """What the ratings say; of a faulty file each of them by itself."""
     if model is not None:
-        return Plate(tuple(model.ratings.outputs), model.ratings.input, model.ratings.ambient is None)
+        plate = model.ratings
+        names, tolerance = tuple(plate.outputs), model.decision.tolerance
+        return Plate(names, plate.outputs, plate.input, plate.ambient is None, tolerance)
+    decision = _attempt(Decision, raw.get("decision", {}))
+    tolerance_told = decision.tolerance if decision is not None else None
     ratings = raw.get("ratings")
     if not isinstance(ratings, dict):
-        return Plate((), None, ambient_is_missing=False)
+        return Plate(tolerance=tolerance_told)
     outputs = ratings.get("outputs")
+    outputs = outputs if isinstance(outputs, dict) else {}
+    tried = {name: _attempt(Output, output) for name, output in outputs.items()}
     return Plate(
-        outputs=tuple(outputs) if isinstance(outputs, dict) else (),
+        outputs=tuple(outputs),
+        rated={name: output for name, output in tried.items() if output is not None},
         input=_attempt(InputRating, ratings.get("input")),
         ambient_is_missing="ambient" not in ratings,
+        tolerance=tolerance_told,
     )
 
 
@@ -208,8 +239,15 @@ def _requirements(raw: Mapping[str, Any], model: LimitsFile | None) -> Iterator[
             yield Placed(("limits", characteristic, i), name if isinstance(name, str) and name else None, made)
 
 
-def _bench_part(file: _File, model: BenchFile | None, outputs: tuple[str, ...]) -> BenchPart:
-    return bench_part(file.source, model if model is not None else _salvaged(file.raw), outputs)
+def _bench_part(file: _File, model: BenchFile | None, plate: Plate) -> BenchPart:
+    part = bench_part(file.source, model if model is not None else _salvaged(file.raw), plate.outputs)
+    check_meters(file.source, part.meters, plate)
+    return part
+
+
+def _faults(*files: _File | None) -> list[Fault]:
+    """Every fault of the files, each once."""
+    return list({fault: None for file in files if file is not None for fault in file.source.faults})
 
 
 def _salvaged(raw: Mapping[str, Any]) -> BenchFile:

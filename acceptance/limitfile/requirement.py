@@ -1,7 +1,6 @@
 """The requirements of a limits file: one class a characteristic, its fields being the file's keys."""
 
-from __future__ import annotations
-
+# without postponed annotations: pydantic would evaluate each of them anew, which takes a third of the import
 from collections.abc import Iterator
 from typing import Annotated, ClassVar, Literal
 
@@ -46,6 +45,10 @@ __all__ = [
     "Temperature",
     "TemperatureRise",
 ]
+
+# limits that no product needs, and that a slip of the pen makes: 0.88 % for 88 %, 100 % for 1 %
+_LOWEST_EFFICIENCY = 0.01
+_WIDEST = 0.5  # of the output voltage: its spread, or its band to either side
 
 
 class Conditions(Part):
@@ -107,6 +110,12 @@ def _reversed(low: float | None, high: float | None, names: tuple[str, str]) -> 
         yield Problem(found, f"expected {names[0]} to be the smaller one", (names[1],))
 
 
+def _wide(spread: float, characteristic: str) -> Iterator[Problem]:
+    if spread >= _WIDEST:
+        found = f"a {characteristic} of {100 * spread:g} % as max lets any pass"
+        yield Problem(found, f"expected below {100 * _WIDEST:g} %, such as 1 %", ("max",))
+
+
 class Efficiency(Requirement):
     """Output power over input power, at one load or as the mean of several."""
 
@@ -122,6 +131,11 @@ class Efficiency(Requirement):
         yield from super().problems()
         yield from _lacks(self, "min", "max")
         yield from _reversed(self.min, self.max, ("min", "max"))
+        if self.min is None and self.max is not None:
+            yield Problem("an efficiency with a max and no min lets any low one pass", "expected min:", ("max",))
+        if self.min is not None and self.min < _LOWEST_EFFICIENCY:
+            found = f"an efficiency of {100 * self.min:g} % as min lets any pass"
+            yield Problem(found, "expected one such as 88 %", ("min",))
         for key, limit in (("min", self.min), ("max", self.max)):
             if limit is not None and limit > 1:
                 yield Problem(f"an efficiency of {100 * limit:g} % cannot be", "expected at most 100 %", (key,))
@@ -152,7 +166,7 @@ class LoadRegulation(Requirement):
     characteristic = "load_regulation"
     needs = ("input",)
     from_: RatioFromZero = Field(alias="from", description="the smallest load of the span")
-    to: Ratio = Field(description="the largest load of the span")
+    to: RatioFromZero = Field(description="the largest load of the span")
     at: At = None  # a load given here is that of the other outputs
     max: Ratio
     relative_to: Literal["full load", "nominal", "no load", "half load"] = Field(
@@ -160,9 +174,10 @@ class LoadRegulation(Requirement):
     )
 
     def problems(self) -> Iterator[Problem]:
-        """A span of load within the rating; a load under at: only for the other outputs."""
+        """A span of load within the rating, a limit that not every spread meets; other outputs' loads alone."""
         yield from super().problems()
         yield from _reversed(self.from_, self.to, ("from", "to"))
+        yield from _wide(self.max, self.characteristic)
         for key, load in (("from", self.from_), ("to", self.to)):
             if load > 1:
                 yield Problem(f"load {100 * load:g} % is above rated current", "expected at most 100 %", (key,))
@@ -180,15 +195,20 @@ class LineRegulation(Requirement):
     characteristic = "line_regulation"
     needs = ("load",)
     takes = ("load",)
-    from_: Voltage = Field(alias="from", description="the smallest input voltage of the span")
-    to: Voltage = Field(description="the largest input voltage of the span")
+    # zero is told with what it is wrong with: reversed, or no input voltage
+    from_: VoltageFromZero = Field(alias="from", description="the smallest input voltage of the span")
+    to: VoltageFromZero = Field(description="the largest input voltage of the span")
     at: At = None
     max: Ratio
 
     def problems(self) -> Iterator[Problem]:
-        """A span of input voltage."""
+        """A span of input voltage, and a limit that not every spread meets."""
         yield from super().problems()
         yield from _reversed(self.from_, self.to, ("from", "to"))
+        if self.from_ == 0:
+            expected = "expected the smallest input voltage of the span, such as 207 V"
+            yield Problem("an input voltage of 0 V is not above zero", expected, ("from",))
+        yield from _wide(self.max, self.characteristic)
 
 
 class OutputVoltage(Requirement):
@@ -207,6 +227,9 @@ class OutputVoltage(Requirement):
         yield from _lacks(self, "within", "min", "max")
         if self.within is not None and (self.min is not None or self.max is not None):
             yield Problem("within and min or max are both given", "expected one kind of limit", ("within",))
+        if self.within is not None and self.within >= _WIDEST:
+            found = f"a band of {100 * self.within:g} % to either side lets any pass"
+            yield Problem(found, f"expected below {100 * _WIDEST:g} %, such as 2 %", ("within",))
         yield from _reversed(self.min, self.max, ("min", "max"))
 
 

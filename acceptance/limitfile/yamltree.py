@@ -24,7 +24,12 @@ Path = tuple[str | int, ...]
 Plain = str | list[Any] | dict[str, Any]
 
 _LOADER: Any = getattr(yaml, "CSafeLoader", yaml.SafeLoader)
-_CONTROL = re.compile(r"[^\t\n\r\x20-\x7e\x85\xa0-\ud7ff\ue000-\ufffd\U00010000-\U0010ffff]")
+# three sets, since one of both ends of the alphabet takes ten times as long to compile
+_CONTROL = re.compile(r"[\x00-\x08\x0b\x0c\x0e-\x1f\x7f-\x84\x86-\x9f]|[\ud800-\udfff]|[\ufffe\uffff]")
+# what YAML makes of 0,21 W within brackets: 0, and another value or a key without its own
+_WHOLE = re.compile(r"[+\-−]?[0-9]{1,20}")
+_REST = re.compile(r"[0-9].{0,60}", re.ASCII)
+_THOUSANDS = re.compile(r"[0-9]{3}(?![0-9])")
 _MARKS = (
     (b"\xff\xfe\x00\x00", "UTF-32"),
     (b"\x00\x00\xfe\xff", "UTF-32"),
@@ -51,6 +56,7 @@ class Node:
     column: int  # from 1
     value: str | list[Node] | dict[str, Entry]
     empty: bool = False  # nothing is written there, as after "key:"
+    plain: bool = False  # a text without quotation marks
     size: int = 1  # nodes in it, itself counted
     height: int = 1  # levels in it, its own counted
 
@@ -153,7 +159,9 @@ def read_tree(data: bytes) -> Tree:
     except _Stop:
         pass
     except yaml.YAMLError as error:
-        builder.fail(_syntax_flaw(error, text))
+        from acceptance.limitfile.syntax import syntax_flaw  # only a faulty file needs it
+
+        builder.fail(syntax_flaw(error, text))
     return builder.tree()
 
 
@@ -167,7 +175,9 @@ class _Open:
 
     node: Node
     anchor: str | None
-    key: tuple[str | None, int, int] | None = None  # key waiting for its value; its text is None where it is dropped
+    key: Node | None = None  # the key that waits for its value
+    merges: bool = False  # whether that key is a merge key
+    last: str = ""  # the key before it
 
 
 class _Builder:
@@ -225,7 +235,7 @@ class _Builder:
             found = f"the text holds the control character {quoted(odd[0])}"
             self._flaws.append(Flaw(line, column, found, "expected text that can be printed"))
         plain = event.style is None or event.style == ""
-        node = Node(line, column, event.value, empty=plain and event.value == "")
+        node = Node(line, column, event.value, empty=plain and event.value == "", plain=plain)
         if event.anchor is not None:
             self._anchors[event.anchor] = node
         self._grow(1, line, column)
@@ -274,71 +284,66 @@ class _Builder:
         parent = self._open[-1]
         held = parent.node.value
         if isinstance(held, list):
+            if held and _touch(held[-1], node) and self._is_comma(held[-1], node):
+                return
             held.append(node)
         elif isinstance(held, dict) and parent.key is None:
-            parent.key = (self._key(held, node, (line, column), merges=merges), line, column)
+            # an alias as a key stands where it is written, not where it was anchored
+            parent.key = Node(line, column, node.value, node.empty, plain=node.plain)
+            parent.merges = merges
             return
-        elif isinstance(held, dict) and parent.key is not None:
-            key, at_line, at_column = parent.key
-            parent.key = None
-            if key is None:
-                return
-            held[key] = Entry(at_line, at_column, node)
+        elif isinstance(held, dict) and parent.key is not None and not self._entry(parent, held, node):
+            return
         parent.node.size += node.size
         parent.node.height = max(parent.node.height, node.height + 1)
 
-    def _key(self, held: dict[str, Entry], node: Node, place: tuple[int, int], *, merges: bool) -> str | None:
+    def _entry(self, parent: _Open, held: dict[str, Entry], node: Node) -> bool:
+        """Put a value under the key that waits for it; whether it was kept."""
+        key = parent.key
+        parent.key = None
+        if key is None or (node.empty and parent.last in held and self._is_comma(held[parent.last].node, key)):
+            return False
+        text = self._key(held, key, merges=parent.merges)
+        parent.last = text or ""
+        if text is not None:
+            held[text] = Entry(key.line, key.column, node)
+        return text is not None
+
+    def _is_comma(self, before: Node, after: Node) -> bool:
+        """Whether two texts are one number with a decimal comma; it is noted, and the first one takes its place."""
+        whole, rest = before.value, after.value
+        if not (before.plain and after.plain and isinstance(whole, str) and isinstance(rest, str)):
+            return False
+        if not (_WHOLE.fullmatch(whole) and _REST.fullmatch(rest)):
+            return False
+        found = f"{quoted(f'{whole},{rest}')} has a decimal comma, and a limits file takes a decimal point"
+        expected = f"expected {whole}.{rest}" + (f" or {whole}{rest}" if _THOUSANDS.match(rest) else "")
+        expected += "" if rest.strip("0123456789") else ", or quotes round a text"
+        self._flaws.append(Flaw(before.line, before.column, found, expected))
+        before.value = f"{whole}.{rest}"
+        return True
+
+    def _key(self, held: dict[str, Entry], key: Node, *, merges: bool) -> str | None:
         """The text of a key, or None where its entry is dropped because of a flaw."""
-        if not isinstance(node.value, str):
-            kind = "mapping" if isinstance(node.value, dict) else "list"
+        place = (key.line, key.column)
+        if not isinstance(key.value, str):
+            kind = "mapping" if isinstance(key.value, dict) else "list"
             self._flaws.append(Flaw(*place, f"a {kind} stands as a key", "expected a text, quoted where it has braces"))
         elif merges:
             self._flaws.append(Flaw(*place, 'the merge key "<<" stands here', "expected the keys themselves"))
-        elif node.value in held:
-            first = held[node.value]
-            found = f"the key {quoted(node.value)} stands twice"
+        elif key.value in held:
+            first = held[key.value]
+            found = f"the key {quoted(key.value)} stands twice"
             place_before = f"line {first.line}, column {first.column}"
             self._flaws.append(Flaw(*place, found, f"expected it once; it is there already at {place_before}"))
-        elif node.empty:
+        elif key.empty:
             self._flaws.append(Flaw(*place, "a value stands here without a key", "expected a key before the colon"))
         else:
-            return node.value
+            return key.value
         return None
 
 
-# what the parser says -> what is found, what is expected; the first that fits
-_UNCLOSED = (
-    ("expected ',' or ']'", "this list is not closed", "expected commas between its values and ] at its end"),
-    ("expected ',' or '}'", "this mapping is not closed", "expected commas between its entries and } at its end"),
-    ("stream while scanning a quoted scalar", "a quotation mark is not closed", "expected its second mark"),
-)
-_SYNTAX = (
-    ("a tab character", "a tab stands here", "expected spaces"),
-    ("mapping values are not allowed", "a colon stands where no key can be", "expected quotes round a text with ': '"),
-    ("expected ':'", "a key has no colon", "expected key: value"),
-    ("expected <block end>", "this does not line up with what is above", "expected the same indentation"),
-    ("did not find expected key", "this does not line up with what is above", "expected the same indentation"),
-    ("did not find expected '-'", "this does not line up with the list above", "expected a dash, or less indentation"),
-    ("sequence entries are not allowed", "a dash stands where no list can begin", "expected it on its own line"),
-    ("undefined tag handle", "a tag stands here", "expected the value without a tag"),
-    ("unknown escape character", "a backslash means nothing here", "expected single quotes round such a text"),
-    ("that cannot start any token", "a text cannot begin with this character", "expected quotes round the text"),
-    ("expected node content", "the file ends, or a bracket closes, before a value", "expected the value"),
-    ("expected the node content", "the file ends, or a bracket closes, before a value", "expected the value"),
-)
-
-
-def _syntax_flaw(error: yaml.YAMLError, text: str) -> Flaw:
-    """A flaw in our words for what the parser objected to."""
-    mark, start = getattr(error, "problem_mark", None), getattr(error, "context_mark", None)
-    said = f"{getattr(error, 'problem', None) or ''} {getattr(error, 'context', None) or ''}".strip()
-    for part, found, expected in _UNCLOSED:
-        if part in said and start is not None:
-            return Flaw(start.line + 1, start.column + 1, found, expected)
-    line, column = (mark.line + 1, mark.column + 1) if mark is not None else (1, 1)
-    if text.split("\n")[line - 1 : line] and text.split("\n")[line - 1][column - 1 : column] == "\t":
-        said = "a tab character"
-    for part, found, expected in _SYNTAX:
-        if part in said:
-            return Flaw(line, column, found, expected)
-    return Flaw(line, column, f"this is not YAML ({said or 'it cannot be read'})", "expected lines of key: value")
+def _touch(before: Node, after: Node) -> bool:
+    """Whether a plain text ends one character before another begins."""
+    end = before.column + len(before.value)
+    return before.plain and before.line == after.line and end + 1 == after.column

@@ -140,6 +140,76 @@ def limiter():
     }
 
 
+def quantised(step, noise, seed=7):
+    """Noise on a lattice at three inputs: at 253 V one reading may be by far the most frequent."""
+
+    def columns():
+        generator = np.random.default_rng(seed)
+        volts = np.repeat([207.0, 230.0, 253.0, 230.0], 300) + generator.normal(0, noise * step, 1200)
+        return sweep(1200) | {"input_voltage": (np.round(volts / step) * step).round(9)}
+
+    return columns
+
+
+def alternating_inputs():
+    """A person goes through three inputs at each load: the highest reads the same each time, the others nearly so."""
+    generator = np.random.default_rng(11)
+    loads = np.repeat(np.linspace(0, 3, 20), 3)
+    order = np.concatenate([(207.0, 230.0, 253.0) if n % 2 else (253.0, 230.0, 207.0) for n in range(20)])
+    off = np.where(order == 253, 0, generator.integers(-2, 3, 60) * 0.1)
+    power = 14 * loads + 0.2
+    return {
+        "time": np.arange(60) * 60.0,
+        "input_voltage": (order + off).round(1),
+        "input_power": power.round(2),
+        "output_current main": loads.round(3),
+        "output_voltage main": (12.03 - 0.02 * loads).round(3),
+    }
+
+
+def ripple_at_one_step():
+    """A scope of 8 bits: few levels, the highest among the most frequent."""
+    columns = sweep()
+    levels = np.round(columns["ripple main"] / 0.002) * 0.002
+    return columns | {"ripple main": levels.round(4)}
+
+
+def warming_up():
+    """A current that rises to its last value and stays there to the last digit."""
+    columns = sweep(dwell=2400)
+    rising = 0.5 * (1 - np.exp(-np.arange(2400) / 200)) + np.random.default_rng(2).normal(0, 3e-4, 2400)
+    return columns | {"input_current": rising.round(3), "load_setting main": np.full(2400, 3.0)}
+
+
+def bursts_seen_in_part():
+    """A hiccup whose bursts are all alike, between which the output is at zero."""
+    columns = limiter()
+    burst = np.arange(1000) % 9 < 2
+    for key in ("output_current main", "output_voltage main", "input_power"):
+        columns[key] = np.where(burst, columns[key], 0.0)
+    return columns
+
+
+def single_rests():
+    """A burst mode that reads zero in every eighth sample at no load."""
+    columns = sweep()
+    empty = columns["load_setting main"] == 0
+    rest = empty & (np.arange(2400) % 8 == 0)
+    return columns | {"input_power": np.where(rest, 0.0, columns["input_power"])}
+
+
+def one_row_at_no_load():
+    """Ten rows at one load, one at none, ten at the load again: the power says that the zero is true."""
+    current = np.array([2.5, 2.501, 2.499, 2.5, 2.5] * 4 + [2.5])
+    current[10] = 0.0
+    return {
+        "time": np.arange(21) * 60.0,
+        "output_current main": current,
+        "output_voltage main": 12.03 - 0.02 * current,
+        "input_power": (0.2 + 14 * current).round(2),
+    }
+
+
 def latched_off():
     """An output that is off, with its meter's offset standing still."""
     columns = limiter()
@@ -167,13 +237,23 @@ GOOD = {
     "long soak": soak,
     "limiter": limiter,
     "latched off": latched_off,
+    "lattice, quiet": quantised(0.1, 0.3),
+    "lattice, a step of noise": quantised(0.1, 1.0),
+    "lattice, half a step off": quantised(0.3, 0.4),
+    "lattice, whole volts": quantised(1.0, 0.5),
+    "inputs in turn, by hand": alternating_inputs,
+    "scope of 8 bits": ripple_at_one_step,
+    "warming up": warming_up,
+    "hiccup": bursts_seen_in_part,
+    "single rests": single_rests,
+    "one row at no load": one_row_at_no_load,
 }
 
 
 @pytest.mark.parametrize("kind", GOOD)
 def test_good_log_raises_no_doubt(kind):
     """A false bar is as bad as a miss."""
-    stage = "overcurrent" if kind in ("limiter", "latched off") else "steady"
+    stage = "overcurrent" if kind in ("limiter", "latched off", "hiccup") else "steady"
 
     assert found(log_of(GOOD[kind](), stage=stage)) == ()
 
@@ -260,6 +340,97 @@ def test_clipped_limiter_is_barred():
     columns["output_current main"] = np.minimum(columns["output_current main"], 3.5)
 
     assert kinds(log_of(columns, stage="overcurrent"))["clipped"].bars
+
+
+def piled(key, share, *, rows=120, noise=10.0, seed=1):
+    """Readings of one dwell on a lattice, those beyond a ceiling put onto it; their share is as asked."""
+    generator = np.random.default_rng(seed)
+    columns = sweep(rows, dwell=rows)
+    columns["load_setting main"] = np.full(rows, 3.0)
+    step = {"ripple main": 1e-4, "input_voltage": 0.01}.get(key, 1e-3)
+    middle = {"ripple main": 0.099, "input_voltage": 230.0, "input_power": 42.0}.get(key, 3.0)
+    steps = np.round(middle / step + generator.normal(0, noise, rows))
+    ceiling = np.quantile(steps, 1 - share)
+    columns[key] = (np.minimum(steps, np.ceil(ceiling)) * step).round(9)
+    return columns, columns[key].max()
+
+
+@pytest.mark.parametrize("key", ["ripple main", "output_current main", "input_power", "input_voltage"])
+@pytest.mark.parametrize(("share", "noise", "seed"), [(0.3, 20, 1), (0.24, 25, 2), (0.5, 12, 3), (0.5, 40, 4)])
+def test_readings_piled_up_at_their_largest_are_barred_there(key, share, noise, seed):
+    """Not in one run, but among lower readings: the range ends within the noise."""
+    columns, ceiling = piled(key, share, noise=noise, seed=seed)
+
+    doubt = kinds(log_of(columns))["clipped"]
+
+    assert (doubt.bars, doubt.channels) == (True, (key,))
+    barred = np.concatenate([np.arange(a, b) for a, b in doubt.spans])
+    assert barred.tolist() == np.flatnonzero(columns[key] == ceiling).tolist()
+    assert "range" in doubt.remedy
+
+
+def test_ripple_clipped_at_full_load_alone_is_barred():
+    """28 of 120 readings at exactly 100.0 mV, the other loads far below."""
+    generator = np.random.default_rng(3)
+    columns = sweep(120, dwell=20)
+    full = columns["load_setting main"] >= 2.25
+    ripple = np.where(full, 101.0, 60.0) + generator.normal(0, 3, 120)
+    columns["ripple main"] = (np.minimum(ripple, 100.0).round(1) * 1e-3).round(6)
+    count = int((columns["ripple main"] == 0.1).sum())
+    assert 20 < count < 40
+
+    doubt = kinds(log_of(columns))["clipped"]
+
+    assert doubt.channels == ("ripple main",)
+    assert sum(b - a for a, b in doubt.spans) == count
+    assert f"{count} " in doubt.text
+
+
+def test_pile_is_looked_for_in_each_table():
+    """A second table in a higher range does not hide it."""
+    columns, ceiling = piled("ripple main", 0.3, noise=20)
+    longer = {key: np.concatenate([values, values]) for key, values in columns.items()}
+    longer["ripple main"][120:] *= 1.7
+    longer["ripple main"][120:] += np.random.default_rng(1).normal(0, 2e-3, 120).round(4)
+    longer["time"] = np.tile(columns["time"], 2)
+
+    doubt = kinds(log_of(longer, table=np.repeat([0, 1], 120)))["clipped"]
+
+    assert max(b for _, b in doubt.spans) <= 120
+    assert f"{ceiling:.6g}" in doubt.text
+
+
+@pytest.mark.parametrize("seed", range(40))
+@pytest.mark.parametrize("noise", [0.3, 1, 3, 10, 30])
+def test_noise_that_is_not_clipped_is_no_pile(seed, noise):
+    """Whatever the converter's step."""
+    columns, _ = piled("ripple main", 0.001, noise=noise, seed=seed)
+
+    assert found(log_of(columns)) == ()
+
+
+@pytest.mark.parametrize("key", ["output_voltage main", "input_voltage", "input_power", "output_current main"])
+@pytest.mark.parametrize("rows", [[1000], [1000, 1013, 1500]])
+def test_zero_between_readings_is_barred(key, rows):
+    """A logger that had no reading wrote 0."""
+    columns = sweep()
+    columns[key][rows] = 0.0
+
+    (doubt,) = found(log_of(columns))
+
+    assert (doubt.kind, doubt.bars, doubt.channels) == ("dropout", True, (key,))
+    assert doubt.spans == tuple((row, row + 1) for row in rows)
+    assert "table 0:1002" in doubt.text
+
+
+def test_row_of_zeros_is_barred_in_every_channel():
+    """No channel can vouch for another there."""
+    columns = sweep()
+    keys = ("output_voltage main", "input_voltage", "input_power", "output_current main")
+    for key in (*keys, "input_current", "load_setting main", "ripple main"):
+        columns[key][1000] = 0.0
+
+    assert {d.channels[0] for d in found(log_of(columns)) if d.kind == "dropout"} == set(keys)
 
 
 @pytest.mark.parametrize("key", ["output_voltage main", "input_power", "output_current main", "input_voltage"])

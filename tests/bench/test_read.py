@@ -70,7 +70,7 @@ def test_names_tell_serial_and_stage(stem, serial, stage):
 
 
 def test_files_of_one_unit_become_one_log(tmp_path):
-    """In the order given; what one lacks is empty, and no doubt."""
+    """In the order of their names; what one lacks is empty, and no doubt."""
     paths = put(
         tmp_path,
         {
@@ -146,6 +146,61 @@ def test_several_serials_are_refused(tmp_path, read_text_log):
     assert read_logs(named, serial="C-1").serial == "C-1"
 
 
+def test_serial_of_a_note_against_a_column_is_refused(read_text_log):
+    """Or told from --serial, where that is one of them."""
+    text = "# serial: X9\nSN,Vout\nX1,1\nX1,2\n"
+    with pytest.raises(SeveralSerialsError, match="X1, X9.*--serial") as caught:
+        read_text_log(text)
+    assert caught.value.serials == ("X1", "X9")
+    with pytest.raises(SeveralSerialsError):
+        read_text_log(text, serial="X5")
+    for given, other in (("X1", "X9"), ("X9", "X1")):
+        log = read_text_log(text, serial=given)
+        assert log.serial == given
+        (doubt,) = [d for d in log.doubts if d.kind == "serial differs"]
+        assert other in doubt.text
+
+
+def test_two_serials_in_notes_are_refused(read_text_log):
+    """Under one key nobody can tell which rows are whose; under two, --serial can."""
+    with pytest.raises(SeveralSerialsError, match="X1, X9"):
+        read_text_log("# serial: X1\n# serial: X9\nVout\n1\n", serial="X1")
+    text = "# serial: X1\n# S/N: X9\nVout\n1\n"
+    with pytest.raises(SeveralSerialsError, match="X1, X9"):
+        read_text_log(text)
+    assert read_text_log(text, serial="X9").serial == "X9"
+    assert read_text_log("# serial: X1\n# SN: X1\nSN,Vout\nX1,1\n").serial_from == "column"
+
+
+def test_empty_serial_is_none_given(read_text_log):
+    """As if the argument were left out."""
+    for given in ("", "  "):
+        log = read_text_log("serial: B-2\nVout\n1\n", serial=given)
+        assert (log.serial, log.serial_from) == ("B-2", "note")
+
+
+def test_order_of_the_files_changes_nothing(tmp_path):
+    """Samples, evidence, tables, notes and doubts."""
+    paths = put(
+        tmp_path,
+        {
+            "A-17_thermal.csv": "# operator: J. Q.\ntime (s),T_case (°C)\n0,25\n1,26\n",
+            "A-17_cold.csv": "# operator: M. F.\ntime,Rw (ohm)\n0,1\n1,OL\n",
+            "A-17_steady.csv": "time,Vout\n0,12\n1,12.5\n",
+        },
+    )
+
+    first, *others = (read_logs(order) for order in (paths, paths[::-1], [paths[1], paths[0], paths[2]]))
+
+    assert first.tables == ("A-17_cold.csv", "A-17_steady.csv", "A-17_thermal.csv")
+    assert first.samples["table"].tolist() == [0, 0, 1, 1, 2, 2]
+    for log in others:
+        assert log.samples.equals(first.samples)
+        assert list(log.samples.columns) == list(first.samples.columns)
+        for part in ("serial", "channels", "evidence", "tables", "notes", "ignored", "doubts", "stages_from"):
+            assert getattr(log, part) == getattr(first, part), part
+
+
 def test_stage_column_comes_first(read_text_log):
     """Before the file's name; an empty cell falls back to it."""
     log = read_text_log("stage,Vout\nSteady,1\n,2\ncooling,3\n", name="A_thermal.csv")
@@ -200,6 +255,27 @@ def test_test_date_from_a_note(read_text_log):
     either = read_text_log("date: 04/05/2026\nVout\n1\n")
     assert either.test_date is None
     assert [d.kind for d in either.doubts if d.kind == "ambiguous date"] == ["ambiguous date"]
+
+
+def test_test_date_is_the_latest_day(tmp_path, read_text_log):
+    """Past midnight a clock is in the next day; of several files the latest counts."""
+    noted = "date: 4.5.2026\ntime,Vout\n"
+    assert read_text_log(noted + "23:59:00,1\n23:59:30,1\n").test_date == date(2026, 5, 4)
+    assert read_text_log(noted + "23:59:00,1\n00:00:30,1\n").test_date == date(2026, 5, 5)
+    assert read_text_log(noted + "23:59:00,1\n00:00:30,1\n23:00:00,1\n01:00:00,1\n").test_date == date(2026, 5, 6)
+    assert read_text_log(noted + "0,1\n180000,1\n").test_date == date(2026, 5, 6)
+    assert read_text_log("date: 4.5.2026\ndate: 7.5.2026\nVout\n1\n").test_date == date(2026, 5, 7)
+    assert read_text_log("date,t,Vout\n4.5.2026,0,1\n5.5.2026,1,2\n").test_date == date(2026, 5, 5)
+    paths = put(
+        tmp_path,
+        {
+            "B_cold.csv": "date: 4.5.2026\nVout\n1\n",
+            "B_cooling.csv": "date: 8.5.2026\nVout\n2\n",
+            "B_steady.csv": "time,Vout\n2026-05-06 12:00:00,1\n2026-05-06 12:00:01,2\n",
+        },
+    )
+    assert read_logs(paths).test_date == date(2026, 5, 8)
+    assert read_logs(paths[::2]).test_date == date(2026, 5, 6)
 
 
 def test_no_log_is_refused():

@@ -9,8 +9,8 @@ import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
+from acceptance.bench.quick import _needs_precision
 from acceptance.bench.read import read_logs
-from acceptance.bench.text import _needs_precision
 from acceptance.errors import LogError
 
 PLAIN = "t,Vout (V),Iout (A)\n0,12.5,0.1\n1,12.25,1\n2,-3e-1,+2.5\n"
@@ -158,7 +158,8 @@ def test_unit_not_written_is_assumed_and_said(read_text_log):
         ("t;Vout;Iout\n0;1,5;1,5\n1;2,5;1.234\n", "3:3", "decimal comma"),
         ("t;Vout\n0;1,234\n1;2,345\n", "2:2", "may be 1234 .* or 1.234 .*which is it"),
         ("t;Vout;Iout\n0;1,234;0.5\n", "2:2", "which is it"),
-        ("t,Vout\n0,1,5\n1,1,6\n", "2:3", "3 cells and the headings are 2"),
+        ("t,Vout\n0,1,5\n1,1,6\n", "2:3", "3 cells and the headings are 2; leave out the surplus .*or.* separator"),
+        ("t,Vout,Vout\n0,1,2\n", "1:3", "both output voltage; rename one of them in the file"),
         ("time,Vout\n12:00:00,1\nnoon,2\n", "3:1", "not a time"),
         ("time,Vout\n2026-05-04T12:00:00,1\n2026-05-04T12:00:01Z,2\n", "3:1|2:1", "another form"),
         ("time,Vout\n2026-02-30 12:00:00,1\n", "2:1", "not a time"),
@@ -212,6 +213,71 @@ def test_missing_and_over_range_readings_are_no_numbers(read_text_log):
     assert doubts["over range", ("output_current",)].spans == ((3, 7),)
 
 
+@pytest.mark.parametrize("reading", ["9.9E37", "+9.90000000E+37", "-9.9E+37"])
+@pytest.mark.parametrize("heading", ["Iout (A)", "Iout (mA)"])
+def test_number_sent_for_over_range_bars_the_channel(read_text_log, reading, heading):
+    """In a column of plain numbers, whatever its unit."""
+    rows = "".join(f"{n},12.5,{reading if n in (3, 4) else 1.5}\n" for n in range(9))
+    log = read_text_log(f"t,Vout (V),{heading}\n{rows}")
+
+    (doubt,) = [d for d in log.doubts if d.kind == "over range"]
+    assert (doubt.bars, doubt.channels, doubt.spans) == (True, ("output_current",), ((3, 5),))
+    assert np.isnan(log.samples["output_current"]).tolist() == [n in (3, 4) for n in range(9)]
+
+
+@pytest.mark.parametrize(
+    ("heading", "other"), [("101 a", "102 a"), ("101 <VIN> (VAC)", "102 <IOUT> (ADC)"), ("101", "102"), ("1 A", "2 A")]
+)
+def test_chosen_heading_that_begins_with_a_digit(read_text_log, heading, other):
+    """Under notes, and above data that look like it; and where it comes again."""
+    columns = {"output_voltage": (heading, "V"), "output_current": (other, "A")}
+    text = f"Scanner,Name,Time\n1,x,2\n\nScan,Time (s),{heading},{other}\n1,0,12,1\n2,1,101,102\n"
+    log = read_text_log(text + f"Scan,Time (s),{heading},{other}\n1,0,13,1\n", columns=columns)
+
+    assert log.samples["output_voltage"].tolist() == [12, 101, 13]
+    assert log.samples["output_current"].tolist() == [1, 102, 1]
+    assert log.samples["table"].tolist() == [0, 0, 1]
+
+
+def test_row_with_chosen_headings_is_the_heading_row(read_text_log):
+    """Though another row has more headings that are understood."""
+    text = "t,Vout,Iout,Pin\n0,1,2,3\nA;B;C\nt;101 a;102 a\n0;12;1\n"
+    columns = {"output_voltage": ("101 a", "V"), "output_current": ("102 a", "A")}
+
+    assert read_text_log(text, columns=columns).samples["output_voltage"].tolist() == [12]
+
+
+SUMMED = "load;Vin (V);Pin (W);Vout (V);Iout (A);ripple (mV)\n1;230;26;12;2;40\n2;230;26;12;2;41\n"
+
+
+@pytest.mark.parametrize(
+    "below", ["\n;;Average;0.9;;\n", "\n;;Average\n;;Efficiency;0.9\n", ";;;;;\n;;Average;0.9;;\n"]
+)
+def test_summary_below_the_data_is_left_out_and_said(read_text_log, below):
+    """Words where numbers should be, fewer than half of the columns, and a blank line before."""
+    log = read_text_log(SUMMED + below)
+
+    assert log.samples["line"].tolist() == [2, 3]
+    assert any("Average" in item.reason for item in log.ignored)
+    assert any("a summary below the data" in item.reason and "0.9" in item.reason for item in log.ignored)
+
+
+@pytest.mark.parametrize(
+    "below",
+    [
+        ";;Average;0.9;;\n",
+        "\n;;Average;0.9;12;\n",
+        "\n;;Average;0.9;;\n3;230;26;12;2;40\n",
+        "\nAverage;230;26;12;2;40\n",
+        "Average;230;26;12;2;40\n",
+    ],
+)
+def test_words_that_are_no_clear_summary_are_refused(read_text_log, below):
+    """Without a blank line, filled half or more, or with data after it; also where the word stands in no channel."""
+    with pytest.raises(LogError, match='"Average" under "(Pin .W.|load)"'):
+        read_text_log(SUMMED + below)
+
+
 def test_cut_last_line_is_left_out(read_text_log):
     """Its last number may be cut too."""
     log = read_text_log("t,Vout,Iout\n0,1.5,2\n1,1.5,2\n2,1.5")
@@ -241,7 +307,14 @@ def test_text_is_only_text(read_text_log):
         (["25:00:00", "25:00:10"], [0, 10], None),
         (["11:59:59 AM", "12:00:01 PM"], [0, 2], None),
         (["2026-05-04T12:00:00", "2026-05-04T12:00:00.25"], [0, 0.25], date(2026, 5, 4)),
-        (["2026-05-04 23:59:59", "2026-05-05 00:00:01"], [0, 2], date(2026, 5, 4)),
+        (["2026-05-04 23:59:59", "2026-05-05 00:00:01"], [0, 2], date(2026, 5, 5)),
+        (["4.5.2026 23:59:59", "5.5.2026 00:00:01"], [0, 2], date(2026, 5, 5)),
+        (["2026-05-05 00:00:01", "2026-05-04 23:59:59"], [0, -2], date(2026, 5, 5)),
+        (["05/04/2026 09:00:00:000", "05/04/2026 09:00:00:250"], [0, 0.25], None),
+        (["13/04/2026 09:00:00:000", "13/04/2026 09:00:01:005"], [0, 1.005], date(2026, 4, 13)),
+        (["2026-05-04 09:00:00:000", "2026-05-04 09:00:00:500"], [0, 0.5], date(2026, 5, 4)),
+        (["09:00:00:000", "09:00:00:125"], [0, 0.125], None),
+        (["09:00:00", "09:00:00:125"], [0, 0.125], None),
         (["2026-05-04T23:30:00-05:00", "2026-05-04T23:30:01-05:00"], [0, 1], date(2026, 5, 4)),
         (["2026-05-04T12:00:00Z", "2026-05-04T12:00:02Z"], [0, 2], date(2026, 5, 4)),
         (["2026-10-25T02:59:59+02:00", "2026-10-25T02:00:00+01:00"], [0, 1], date(2026, 10, 25)),
@@ -275,7 +348,7 @@ def test_date_and_clock_in_two_columns_are_joined(read_text_log):
     log = read_text_log("Date;Time;Vout\n04.05.2026;23:59:59;1\n05.05.2026;00:00:02;2\n")
 
     assert log.samples["time"].tolist() == [0, 3]
-    assert log.test_date == date(2026, 5, 4)
+    assert log.test_date == date(2026, 5, 5)
     started = log.evidence[0].started_at
     assert started is not None
     assert started.isoformat() == "2026-05-04T23:59:59"

@@ -15,7 +15,7 @@ from openpyxl.chart import LineChart, Reference
 
 from acceptance.bench import workbook
 from acceptance.bench.read import read_logs
-from acceptance.errors import LogError
+from acceptance.errors import LogError, SeveralSerialsError
 
 
 def put(sheet, rows, at=(1, 1)):
@@ -49,16 +49,14 @@ def test_table_anywhere_with_notes_above_and_beside(read_book, at):
 
 
 def test_sheets_are_stages_and_others_are_left_out(read_book):
-    """Hidden sheets, sheets of charts and sheets of words are tolerated and said."""
+    """Sheets of charts and sheets of words are tolerated and said."""
 
     def fill(book):
         book.active.title = "Steady"
         put(book.active, TABLE)
         put(book.create_sheet("overcurrent"), [["time", "Vout (V)"], [0, 12], [1, 11.5]])
         put(book.create_sheet("Notes"), [["the unit hummed"]])
-        hidden = book.create_sheet("thermal 2")
-        put(hidden, [["T_case (°C)"], [40]])
-        hidden.sheet_state = "hidden"
+        put(book.create_sheet("thermal 2"), [["T_case (°C)"], [40]])
         chart = LineChart()
         chart.add_data(Reference(book.active, min_col=1, min_row=3, max_row=5))
         book.create_chartsheet("curve").add_chart(chart)
@@ -69,6 +67,135 @@ def test_sheets_are_stages_and_others_are_left_out(read_book):
     assert log.stages_from == "sheet name"
     assert log.tables == tuple(f'A-17.xlsx, sheet "{n}"' for n in ("Steady", "overcurrent", "thermal 2"))
     assert {item.what for item in log.ignored} == {'sheet "Notes"', 'sheet "curve"'}
+
+
+@pytest.mark.parametrize("state", ["hidden", "veryHidden"])
+def test_hidden_sheet_is_not_read(read_book, state):
+    """Nobody who looks at the workbook sees it: neither its samples nor its notes."""
+
+    def fill(book):
+        put(book.active, TABLE)
+        put(book.create_sheet("old"), [["serial", "X-1"], [], ["Vout (V)"], [40]])
+        book["old"].sheet_state = state
+
+    log = read_book(fill)
+
+    assert log.samples["output_voltage"].tolist() == [12.5, 12.25, 12]
+    assert (log.serial, log.notes) == ("A-17", {})
+    (item,) = log.ignored
+    assert item.what == 'sheet "old"'
+    assert item.reason == "it is hidden; make it visible if it belongs to the test"
+
+
+def test_table_on_a_hidden_sheet_alone_is_refused(read_book):
+    """With the way out."""
+
+    def fill(book):
+        put(book.active, [["Serial", "X-1"]])
+        put(book.create_sheet("data"), TABLE)
+        book["data"].sheet_state = "hidden"
+
+    with pytest.raises(LogError, match='hidden.*"data".*visible'):
+        read_book(fill)
+
+
+def test_notes_of_a_sheet_without_a_table(read_book):
+    """A cover sheet tells serial, operator and date."""
+
+    def fill(book):
+        book.active.title = "Cover"
+        put(book.active, [
+            ["Test report of a supply"],
+            ["Serial", "X-0071"],
+            [None, "Operator", None, "J. Q."],
+            ["Date", date(2026, 5, 4)],
+            ["bench: 3", None, "room:", "north"],
+            ["Step", "Load", "Limit"],
+            ["one", "50 %", "88 %"],
+            ["Product:", "adapter", "Revision:", "C"],
+        ])  # fmt: skip
+        put(book.create_sheet("data"), TABLE)
+
+    log = read_book(fill)
+
+    assert (log.serial, log.serial_from, log.test_date) == ("X-0071", "note", date(2026, 5, 4))
+    assert log.notes == {
+        "serial": "X-0071", "operator": "J. Q.", "date": "2026-05-04", "bench": "3", "room": "north",
+        "product": "adapter", "revision": "C",
+    }  # fmt: skip
+    (item,) = log.ignored
+    assert item.what == 'sheet "Cover"'
+    assert "no table of readings" in item.reason
+    assert "notes" in item.reason
+
+
+def test_cover_sheet_of_another_unit_is_refused(read_book):
+    """Its serial counts as a note."""
+
+    def fill(book):
+        put(book.active, [["Serial", "X-0071"]])
+        put(book.create_sheet("data"), [["serial", "Vout (V)"], ["X-0072", 12]])
+
+    with pytest.raises(SeveralSerialsError):
+        read_book(fill)
+
+
+def test_formula_without_a_value_in_a_column_that_nothing_needs(read_book):
+    """Left out and said; the workbook is read."""
+    rows = [["Vin (V)", "Vout (V)", "Iout (A)", "Pout (W)", "margin"]]
+    rows += [[230, 12.5, n, f"=B{n + 1}*C{n + 1}", f"=D{n + 1}/60"] for n in (1, 2, 3)]
+    log = read_book(lambda book: put(book.active, rows))
+
+    assert "output_power" not in log.samples
+    assert "output_power" not in {channel.key for channel in log.channels}
+    assert {item.what for item in log.ignored} == {'column "Pout (W)"', 'column "margin"'}
+    (doubt,) = [d for d in log.doubts if d.kind == "formula"]
+    assert not doubt.bars
+    assert "Pout (W)" in doubt.text
+    assert "save it" in doubt.remedy
+
+
+def test_formula_without_a_value_in_a_needed_column_is_refused(read_book):
+    """Also beside one that nothing needs."""
+    rows = [["Vout (V)", "Iout (A)", "Pout (W)", "Pin (W)"]]
+    rows += [[12.5, n, f"=A{n + 1}*B{n + 1}", f"=C{n + 1}*1.1"] for n in (1, 2, 3)]
+
+    with pytest.raises(LogError, match='"Pin .W.".*formula without a stored value'):
+        read_book(lambda book: put(book.active, rows))
+
+
+def test_readings_over_range_in_a_workbook(read_book):
+    """The number that instruments send, whatever the column's unit."""
+    rows = [["Vout (mV)", "Iout (A)"], [12000, 1], [9.9e37, 1], [-9.9e37, "9.90000000E+37"], [12000, 1]]
+    log = read_book(lambda book: put(book.active, rows))
+
+    doubts = {d.channels: d for d in log.doubts if d.kind == "over range"}
+    assert doubts[("output_voltage",)].spans == ((1, 3),)
+    assert doubts[("output_current",)].spans == ((2, 3),)
+    assert all(d.bars for d in doubts.values())
+
+
+def test_heading_that_is_a_number(read_book):
+    """A scanner's channel number, as a number in its cell."""
+    columns = {"output_voltage": ("101", "V"), "output_current": ("102", "A")}
+    log = read_book(lambda b: put(b.active, [["t", 101, 102], [0, 12, 1], [1, 101, 102]]), columns=columns)
+
+    assert log.samples["output_voltage"].tolist() == [12, 101]
+    assert log.samples["output_current"].tolist() == [1, 102]
+
+
+def test_summary_below_the_data_of_a_sheet(read_book):
+    """Left out and said, where a blank row parts it from the data."""
+    head = ["load", "Vin (V)", "Pin (W)", "Vout (V)", "Iout (A)", "ripple (mV)"]
+    rows = [[n, 230, 26, 12, 2, 40] for n in (1, 2, 3)]
+    below = [[None, None, "Average", 0.9], [None, None, "Ripple", 40]]
+    log = read_book(lambda b: put(b.active, [head, *rows, [], *below]))
+
+    assert log.samples["line"].tolist() == [2, 3, 4]
+    told = {item.what: item.reason for item in log.ignored if item.what.startswith("line")}
+    assert set(told) == {"line 6", "line 7"}
+    assert "summary" in told["line 6"]
+    assert "Average 0.9" in told["line 6"]
 
 
 def test_dates_clocks_and_texts_in_cells(read_book):
@@ -83,7 +210,7 @@ def test_dates_clocks_and_texts_in_cells(read_book):
     assert (dated.samples["time"].tolist(), dated.test_date) == ([0, 1.5], date(2026, 5, 4))
     assert dated.samples["output_voltage"].tolist() == [11.5, 3]
     assert clock.samples["time"].tolist() == [0, 2]
-    assert (two.samples["time"].tolist(), two.test_date) == ([0, 13 * 3600], date(2026, 5, 4))
+    assert (two.samples["time"].tolist(), two.test_date) == ([0, 13 * 3600], date(2026, 5, 5))
 
 
 def test_headings_that_come_again_and_blank_rows(read_book):
@@ -104,7 +231,8 @@ def test_headings_that_come_again_and_blank_rows(read_book):
         ([["t", "Vout"], [0, 1], [1, True]], r':3:2: .*"True" under "Vout" is not a number'),
         ([["Iout", "Vout"], [1, "=A2*2"], [2, "=A3*2"]], "formula without a stored value"),
         ([["Vout"], ["=1+1"]], "formula without a stored value"),
-        ([["t", "Vout", "Uout"], [0, 1, 2]], ":1:3: .*both output voltage"),
+        ([["t", "Vout", "Uout"], [0, 1, 2]], ":1:3: .*both output voltage.*log: columns:"),
+        ([["t", "Vout", "vout "], [0, 1, 2]], ":1:3: .*both output voltage; rename one of them in the file"),
         ([["foo", "bar"], [0, 1]], "none of the headings"),
         ([["t", "Vout"]], "no readings"),
         ([["Vout", *["x"] * 3000], [1] * 3001], "3001 columns"),
@@ -196,7 +324,7 @@ import resource, sys
 from pathlib import Path
 import openpyxl, pandas
 from acceptance.bench.read import read_logs
-from acceptance.errors import LogError
+from acceptance.errors import LogError, SeveralSerialsError
 resource.setrlimit(resource.RLIMIT_AS, (2500 << 20, 2500 << 20))
 before = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss
 try:

@@ -127,7 +127,7 @@ def test_bench_file_stands_before_the_limits_file(data, limits):
     assert both.meters["input_power"] == limits.meters["input_power"]
     assert both.meters["winding_resistance"].device == "R-1"
     assert both.columns["ripple main"] == ("Vpp", None)
-    assert both.columns["output_voltage"] == ("U2 [V]", None)
+    assert both.columns["output_voltage main"] == ("U2 [V]", None)
     assert (both.load_mode, both.settle, both.min_dwell) == ("CV", 0.0, 5.0)
     assert both.leads["output aux"] == Wiring(0.008, None)
     assert both.leads["output"] == Wiring(0.012, None)
@@ -198,8 +198,25 @@ def test_load_limits_imports_no_numerical_library(data):
     code = (
         "import sys; from pathlib import Path; from acceptance.limitfile.load import load_limits; "
         f"load_limits(Path({str(data / 'good.yaml')!r}), Path({str(data / 'bench.yaml')!r})); "
-        "bad = {'numpy', 'pandas', 'scipy', 'openpyxl', 'reportlab', 'rich', 'click', 'difflib'} & set(sys.modules); "
+        "bad = {'numpy', 'pandas', 'scipy', 'openpyxl', 'reportlab', 'rich', 'click', 'difflib', "
+        "'acceptance.limitfile.syntax'} & set(sys.modules); "
         "assert not bad, bad"
+    )
+
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=False)
+
+    assert (done.returncode, done.stderr) == (0, "")
+
+
+def test_load_limits_builds_one_validator_for_each_file(data):
+    """That of the file, not others for the parts that it leaves out: each takes longer to build than to use."""
+    code = (
+        "from pathlib import Path; from acceptance.limitfile import model; "
+        "from acceptance.limitfile.fields import Part; from acceptance.limitfile.load import load_limits; "
+        f"load_limits(Path({str(data / 'speed.yaml')!r}).with_name('bare.yaml')); "
+        "built = [c.__name__ for c in vars(model).values() if isinstance(c, type) and issubclass(c, Part) "
+        "and c.__pydantic_complete__]; "
+        "assert built == ['LimitsFile'], built"
     )
 
     done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=False)

@@ -1,0 +1,68 @@
+"""Single zeros that a logger wrote for want of a reading, told from the readings beside them."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+
+import numpy as np
+
+from acceptance.bench.log import Doubt, Span
+from acceptance.bench.standstill import Trace, Values, place_of, words_of
+
+__all__ = ["dropouts"]
+
+_BESIDE = 10  # neighbours looked at on each side of a zero
+_FAR = 20.0  # times their spread that these lie from zero
+_ZEROS = 2  # in one neighbourhood; more of them are the unit's manner, such as bursts
+_CHANGED = 0.2  # of the input power: then the load did change
+
+
+def dropouts(channel: Trace, tables: Sequence[Span], power: Values | None = None) -> Iterator[Doubt]:
+    """Single zeros amid readings far from zero: what some loggers write for a reading that did not come.
+
+    Parameters
+    ----------
+    power
+        Input power or current, which vouches for an output's zero where it changed with it. [any]
+    """
+    values = channel.values
+    zeros = np.flatnonzero(values == 0)
+    if not zeros.size:
+        return
+    found = [
+        row for a, b in tables for row in zeros[(zeros >= a) & (zeros < b)].tolist() if _is_alone(values, row, a, b)
+    ]
+    found = [row for row in found if power is None or not _is_vouched(power, row)]
+    if not found:
+        return
+    count = "a single reading" if len(found) == 1 else f"{len(found)} single readings"
+    text = (
+        f"{words_of(channel.key)} is 0 in {count} amid others far from it, first at {place_of(channel.log, found[0])}"
+    )
+    spans = tuple((row, row + 1) for row in found)
+    remedy = "look to the logger, and measure again or leave the line out"
+    yield Doubt("dropout", text, bars=True, channels=(channel.key,), spans=spans, remedy=remedy)
+
+
+def _is_alone(values: Values, row: int, first: int, stop: int) -> bool:
+    """Whether a zero stands alone amid steady readings of its table."""
+    before, after = (
+        values[max(first, row - _BESIDE - _ZEROS) : row],
+        values[row + 1 : min(stop, row + 1 + _BESIDE + _ZEROS)],
+    )
+    if not (before.size and after.size and before[-1] != 0 and after[0] != 0):
+        return False
+    zeros = 1 + np.count_nonzero(before == 0) + np.count_nonzero(after == 0)
+    sides = [side[np.isfinite(side) & (side != 0)] for side in (before[::-1], after)]
+    if zeros > _ZEROS or any(side.size < _BESIDE for side in sides):
+        return False
+    beside = np.concatenate([side[:_BESIDE] for side in sides])
+    return bool(np.abs(beside).min() > _FAR * beside.std() and (np.sign(beside) == np.sign(beside[0])).all())
+
+
+def _is_vouched(power: Values, row: int) -> bool:
+    """Whether the input took another power in this sample, but took some: then the load did change."""
+    beside = power[[*range(max(0, row - _BESIDE), row), *range(row + 1, min(power.size, row + 1 + _BESIDE))]]
+    typical = float(np.median(beside[np.isfinite(beside)])) if np.isfinite(beside).any() else 0.0
+    here = power[row]
+    return bool(here != 0 and np.isfinite(here) and abs(here - typical) > _CHANGED * abs(typical))
