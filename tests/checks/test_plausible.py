@@ -179,10 +179,10 @@ def test_a_channel_read_every_fourth_sample_is_judged():
 
 
 def test_a_reading_beyond_the_stated_range_is_not_judged():
-    bench = INSTRUMENTS.replace('"0.02 % reading + 2 mV"', '"0.02 % reading + 2 mV", meter_range: 9 V')
+    bench = INSTRUMENTS.replace('"0.02 % reading + 2 mV"', '"0.02 % reading + 2 mV", meter_range: 10 V')
     head = FULL
     limits = limits_from(head, bench=bench)
-    points = points_from([adapter(1.0)], limits)
+    points = points_from([adapter(1.0, volts=12.6)], limits)
     decided = decide(check_output_voltage(limits.requirements, points).outcomes[0], limits.decision)
 
     assert decided.verdict == "not judged"

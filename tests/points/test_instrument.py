@@ -18,6 +18,7 @@ from acceptance.points.propagation import budget, covariance, is_exact, nominal,
 from tests.published.built import limits_of, points_of
 
 ROOT3 = math.sqrt(3)
+SMALL = "{main: {voltage: 12 V, current: 2 A}}"
 TWO_OUTPUTS = "{main: {voltage: 12 V, current: 10 A}, aux: {voltage: 5 V, current: 2 A}}"
 
 INSTRUMENTS = """
@@ -153,7 +154,9 @@ def test_is_stated_of_what_an_accuracy_is_given_for(bench):
 )
 def test_is_stated_of_a_shunt(tmp_path, shunt, more, stated):
     """A shunt needs its tolerance and something that read it."""
-    limits = limits_of(tmp_path, instruments=f'{{output_current: {{device: "L", shunt: {shunt}, {more}}}}}')
+    limits = limits_of(
+        tmp_path, instruments=f'{{output_current: {{device: "L", shunt: {shunt}, {more}}}}}', outputs=SMALL
+    )
     bench = Bench(limits)
 
     assert bench.is_stated("output_current main") is stated

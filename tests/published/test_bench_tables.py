@@ -26,6 +26,8 @@ CONVERTER = [
     ("0.512", "15.625", "4.51", ("0.0156", "0.156", "1.56")),
     ("0.256", "7.8125", "2.26", ("0.0078", "0.078", "0.78")),
 ]
+# a rated current that every span of the table takes across every resistance of it
+SMALL = "{main: {voltage: 12 V, current: 250 mA}}"
 
 
 @pytest.mark.parametrize(("scale", "step", "u", "currents"), CONVERTER, ids=[row[0] for row in CONVERTER])
@@ -47,7 +49,7 @@ def test_correct_reproduces_converter_table_as_current(tmp_path, scale, step, u,
     """Across a shunt without error the step is a current: step over resistance."""
     shunt = f"shunt: {{resistance: {resistance}, tolerance: 0 %}}"
     adc = f"adc: {{bits: 16, span: [-{scale} V, {scale} V]}}"
-    limits = limits_of(tmp_path, instruments=f'{{output_current: {{device: "shunt", {shunt}, {adc}}}}}')
+    limits = limits_of(tmp_path, instruments=f'{{output_current: {{device: "shunt", {shunt}, {adc}}}}}', outputs=SMALL)
 
     reading = Bench(limits).correct("output_current main", 0.2)
 

@@ -57,7 +57,8 @@ def test_split_reproduces_gum_4_3_7_example_2():
 def test_correct_reproduces_gum_5_1_5(tmp_path):
     """The same voltmeter on the bench, with 12 uV of type A: the combined u is 15 uV. Values from memory."""
     meter = '{device: "voltmeter", accuracy: "14 ppm reading + 2 ppm range", meter_range: 1 V}'
-    bench = Bench(limits_of(tmp_path, instruments=f"{{output_voltage: {meter}}}"))
+    cell = "{main: {voltage: 1 V, current: 1 A}}"
+    bench = Bench(limits_of(tmp_path, instruments=f"{{output_voltage: {meter}}}", outputs=cell))
 
     reading = bench.correct("output_voltage main", 0.928571)
     combined = reading + of_source(12e-6, Source("spread", "A", 19))
