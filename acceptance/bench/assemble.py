@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from acceptance.bench.clocks import Times, read_dates, read_times
+from acceptance.bench.digits import logged_step, written_decimals
 from acceptance.bench.headings import Heading, plain, resolve_unit, shown
 from acceptance.bench.log import Channel, Span, channel_key
 from acceptance.bench.table import RawColumn, RawTable, Source
@@ -171,13 +172,25 @@ def _take_numbers(samples: Samples, table: RawTable, column: RawColumn, mode: st
     )
     samples.numbers[heading.key] = readings.values
     _note_gaps(samples, heading.key, readings, place.at)
-    if unit is not None:
-        samples.channels.append(_channel(table, heading, heading.unit or column.unit_below, unit_from, unit))
-    elif readings.cell_unit:
-        samples.channels.append(_channel(table, heading, readings.cell_unit, "cells", None))
-    else:
-        assumed = _assumed(heading, mode)
-        samples.channels.append(_channel(table, heading, assumed, "assumed", UNITS.get(assumed)))
+    symbol, source = heading.unit or column.unit_below, unit_from
+    if unit is None:
+        symbol, source = (readings.cell_unit, "cells") if readings.cell_unit else (_assumed(heading, mode), "assumed")
+    channel = _channel(table, heading, symbol, source, unit if source != "assumed" else UNITS.get(symbol))
+    known = UNITS.get(symbol) or unit
+    factor = abs(known.factor) if known is not None else 1.0
+    samples.channels.append(replace(channel, step=_step(column, readings, factor)))
+
+
+def _step(column: RawColumn, readings: Readings, factor: float) -> float:
+    """What one unit of the last digit written is. [SI]"""
+    cells = column.cells
+    decimals = column.decimals
+    if decimals is None and not isinstance(cells, np.ndarray):
+        texts = [cell for cell in cells[:: max(1, len(cells) // 300)] if isinstance(cell, str)]
+        decimals = written_decimals(texts)
+    if decimals is not None:
+        return factor * 10.0**-decimals
+    return logged_step(readings.values, factor)
 
 
 def _note_gaps(samples: Samples, key: str, readings: Readings, at: object) -> None:

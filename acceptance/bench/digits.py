@@ -1,25 +1,65 @@
-"""The step that a channel was logged in, told from its digits."""
+"""The step that a channel was logged in, told from its digits.
+
+A converter's own step may be larger, and is for the bench file to state.
+"""
 
 from __future__ import annotations
+
+import re
+from collections.abc import Iterable, Sequence
 
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["logged_step"]
+__all__ = ["logged_step", "sampled_cells", "written_decimals"]
 
+_NUMBER = re.compile(r"\s*\"?\s*[-+\u2212]?\d*(?:[.,](?P<fraction>\d*))?(?:[eE](?P<exponent>[-+]?\d{1,3}))?")
 _DECIMALS = range(-3, 9)  # thousands to a hundred-millionth of the unit that was logged
-_LOOKED_AT = 20_000  # samples; the digits of a logger do not change on the way
-_FEWEST = 3  # different values, below which digits tell nothing: 230 V may be 230.000 V
+_LOOKED_AT = 20_000  # values; the digits of a logger do not change on the way
+_LINES = 300  # lines looked at in delimited text
+_FEWEST = 20  # different values, below which a workbook tells nothing: 12 V may be 12.000 V there
 
 
-def logged_step(samples: NDArray[np.float64], factor: float) -> float:
-    """The decimal step all samples are whole multiples of; 0 where there is none, or too few values to tell.
+def written_decimals(cells: Iterable[str]) -> int | None:
+    """Digits behind the decimal mark, the most of all cells; below 0 for whole tens. None without a number.
 
-    A converter's own step may be larger, and is for the bench file to state.
+    "12.050" has three: what stands there was written to a thousandth, whatever the last digit is.
+    """
+    most: int | None = None
+    for cell in cells:
+        match = _NUMBER.match(cell)
+        if match is None or not any(c.isdigit() for c in match.group()):
+            continue
+        decimals = len(match["fraction"] or "") - int(match["exponent"] or 0)
+        most = decimals if most is None else max(most, decimals)
+    return most
+
+
+def sampled_cells(body: bytes, separator: str, width: int) -> list[list[str]]:
+    """Cells of some lines spread over a table, column by column; lines with quotes are passed over."""
+    size = len(body)
+    mark = separator.encode()
+    columns: list[list[str]] = [[] for _ in range(width)]
+    for start in sorted({size * i // _LINES for i in range(_LINES)}):
+        begin = body.rfind(b"\n", 0, start) + 1
+        end = body.find(b"\n", begin)
+        line = body[begin : end if end >= 0 else size]
+        cells = line.split(mark)
+        if b'"' in line or len(cells) < width:
+            continue
+        for column, cell in zip(columns, cells, strict=False):
+            column.append(cell.decode("ascii", errors="replace"))
+    return columns
+
+
+def logged_step(values: Sequence[float] | NDArray[np.float64], factor: float) -> float:
+    """The decimal step that all values are whole multiples of; 0 where there is none, or too few values to tell.
+
+    For workbooks, where a number has lost the zeros at its end.
 
     Parameters
     ----------
-    samples : shape (n,)
+    values : shape (n,)
         A channel as read, NaN where it was not. [SI]
     factor
         What one unit of the file is in SI.
@@ -29,6 +69,7 @@ def logged_step(samples: NDArray[np.float64], factor: float) -> float:
     float
         The step in SI.
     """
+    samples = np.asarray(values, dtype=np.float64)
     finite = samples[np.isfinite(samples)]
     logged = np.unique(finite[:: max(1, finite.size // _LOOKED_AT)] / factor)
     if logged.size < _FEWEST:

@@ -14,6 +14,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 from numpy.typing import NDArray
 
+from acceptance.bench.digits import sampled_cells, written_decimals
 from acceptance.bench.rows import is_summary_word
 from acceptance.bench.table import Layout, RawColumn, RawTable, Row, Source
 from acceptance.bench.values import MISSING, Place, is_reading, settle_decimal
@@ -124,6 +125,7 @@ def _quick_table(
     if any(_has_summary(frame[index]) for index in layout.unread):
         return None
     columns = []
+    written = sampled_cells(body, separator, layout.width)
     for index, heading in layout.columns.items():
         cells: Any = frame[index]
         if cells.dtype.kind in "fi":
@@ -138,7 +140,9 @@ def _quick_table(
                 return None
         else:
             cells = cells.tolist()
-        columns.append(RawColumn(heading, index + 1, layout.units.get(index, ""), cells))
+        columns.append(
+            RawColumn(heading, index + 1, layout.units.get(index, ""), cells, written_decimals(written[index]))
+        )
     if not _all_rows_read(columns):
         return None
     return RawTable(source.file, "", source.file, at[0], tuple(columns), lines, decimal)

@@ -67,6 +67,7 @@ class RawColumn:
     position: int  # from 1, in the file
     unit_below: str  # from the row under the heading, "" where there is none
     cells: Cells  # one a row
+    decimals: int | None = None  # digits written behind the decimal mark, where the text was looked at
 
 
 @dataclass(frozen=True, slots=True)

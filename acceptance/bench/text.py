@@ -211,6 +211,6 @@ def _drop_cut_line(tables: list[RawTable], data: bytes, rows: Sequence[Row], lay
     table = tables[-1]
     if len(cells) >= layout.width or line != table.lines[-1] or len(table.lines) < 2:
         return
-    columns = [RawColumn(c.heading, c.position, c.unit_below, c.cells[:-1]) for c in table.columns]
+    columns = [RawColumn(c.heading, c.position, c.unit_below, c.cells[:-1], c.decimals) for c in table.columns]
     tables[-1] = replace(table, columns=tuple(columns), lines=table.lines[:-1])
     source.ignore(f"line {line}", "the file ends within this line: it was left out")

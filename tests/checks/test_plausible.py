@@ -12,6 +12,7 @@ from acceptance.checks.output_voltage import check_output_voltage
 from acceptance.checks.ripple import check_ripple
 from acceptance.decision import decide
 from acceptance.points.plausible import doubt_points
+from acceptance.points.propagation import expanded
 from tests.checks.built import INSTRUMENTS, adapter, limits_from, points_from
 
 BAND = "  output_voltage: [{name: band, at: {load: any, input: any}, within: 2 %}]"
@@ -203,3 +204,38 @@ def test_a_ripple_reading_above_the_limit_among_the_settling_is_not_passed_over(
 
     assert decided.verdict == "not judged"
     assert "400 mV" in decided.reason
+
+
+def stepped(points, key, step):
+    """The points of a log whose channel was written in such steps."""
+    from dataclasses import replace
+
+    from acceptance.points.point import measure_points
+
+    channels = tuple(replace(c, step=step if c.key == key else 0.0) for c in points.log.channels)
+    log = replace(points.log, channels=channels)
+    return measure_points(log, [point.dwell for point in points.all], points.limits)
+
+
+def test_digits_coarser_than_the_meter_are_in_the_uncertainty():
+    """A voltage written in tenths of a volt is known to 0.1 V / sqrt 12 at best, whatever the meter could do."""
+    limits = limits_from(FULL)
+    points = stepped(
+        points_from([{**adapter(1.0), "output_voltage main": [11.9] * 30}], limits), "output_voltage main", 0.1
+    )
+    (outcome,) = check_output_voltage(limits.requirements, points).outcomes
+
+    meter = (0.0002 * 11.9 + 0.002) / math.sqrt(3)
+    expected = math.hypot(meter, 0.1 / math.sqrt(12))
+    u = expanded(outcome.candidates[0].estimate.value, 0.95).standard
+    assert u == pytest.approx(expected, rel=1e-9)
+
+
+def test_digits_that_the_noise_averages_out_are_not():
+    limits = limits_from(FULL)
+    rng = np.random.default_rng(10)
+    volts = list(np.round(11.9 + rng.normal(0, 0.1, 400), 1))
+    points = stepped(points_from([{**adapter(1.0), "output_voltage main": volts}], limits), "output_voltage main", 0.1)
+    (outcome,) = check_output_voltage(limits.requirements, points).outcomes
+
+    assert expanded(outcome.candidates[0].estimate.value, 0.95).standard < 0.02

@@ -1,0 +1,48 @@
+"""The step that a channel was written in, as the file's digits tell it."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+from acceptance.bench.digits import logged_step, written_decimals
+
+
+@pytest.mark.parametrize(("cells", "decimals"), [
+    (["12.05", "12"], 2), (["12", "230"], 0), (["2.000"], 3), (["1.2e-3", "4"], 4), (["12,5"], 1), (["1e3"], -3),
+    (["24.01 V", "24.0 V"], 2), (["-0.5"], 1), (['"3.25'], 2), ([""], None), (["OL", "n/a"], None), ([], None),
+])  # fmt: skip
+def test_written_decimals(cells, decimals):
+    assert written_decimals(cells) == decimals
+
+
+@given(st.integers(-2, 6), st.sampled_from([1.0, 1e-3]), st.integers(0, 2**32 - 1))
+def test_logged_step_is_that_of_the_rounding(decimals, factor, seed):
+    """Forty noisy values rounded to so many decimals: that step, or a finer one never, a coarser one never."""
+    values = np.unique(
+        np.round(np.random.default_rng(seed).normal(50 * 10.0**-decimals, 30 * 10.0**-decimals, 400), decimals)
+    )
+
+    step = logged_step(values * factor, factor)
+    # some value of forty or more ends in something else than 0
+    assert step == pytest.approx(factor * 10.0**-decimals)
+
+
+def test_logged_step_of_few_values_tells_nothing():
+    assert logged_step(np.array([1.0, 2.0, 4.0]), 1.0) == 0.0
+
+
+@pytest.mark.parametrize(("heading", "cells", "step"), [
+    ("Vout (V)", ["12.05", "11.9"], 0.01),
+    ("Vout (mV)", ["12050", "11900"], 1e-3),
+    ("Vout", ["12.0 V", "11.95 V"], 0.01),
+])  # fmt: skip
+@pytest.mark.parametrize("rows", [1, 200])
+def test_a_channel_knows_its_last_digit(read_text_log, heading, cells, step, rows):
+    """By the quick way and by the careful one."""
+    log = read_text_log(f"Iout (A);{heading}\n" + "".join(f"2.5;{cell}\n" for cell in cells * rows))
+
+    (channel,) = [channel for channel in log.channels if channel.quantity == "output_voltage"]
+    assert channel.step == pytest.approx(step)
