@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from acceptance.bench.clocks import Times, read_dates, read_times
-from acceptance.bench.digits import logged_step, written_decimals
+from acceptance.bench.digits import coarser_step, logged_step, written_decimals
 from acceptance.bench.headings import Heading, plain, resolve_unit, shown
 from acceptance.bench.log import Channel, Span, channel_key
 from acceptance.bench.table import RawColumn, RawTable, Source
@@ -181,6 +181,10 @@ def _take_numbers(samples: Samples, table: RawTable, column: RawColumn, mode: st
     samples.channels.append(replace(channel, step=_step(column, readings, factor)))
 
 
+# what is measured, not set: a load may well read 2.000 A, a voltage that is always a whole tenth was rounded to it
+_NEVER_ROUND = frozenset({"output_voltage", "input_power", "input_current", "ripple"})
+
+
 def _step(column: RawColumn, readings: Readings, factor: float) -> float:
     """What one unit of the last digit written is. [SI]"""
     cells = column.cells
@@ -188,9 +192,12 @@ def _step(column: RawColumn, readings: Readings, factor: float) -> float:
     if decimals is None and not isinstance(cells, np.ndarray):
         texts = [cell for cell in cells[:: max(1, len(cells) // 300)] if isinstance(cell, str)]
         decimals = written_decimals(texts)
-    if decimals is not None:
-        return factor * 10.0**-decimals
-    return logged_step(readings.values, factor)
+    if decimals is None:
+        return logged_step(readings.values, factor)
+    written = factor * 10.0**-decimals
+    if column.heading.quantity not in _NEVER_ROUND:
+        return written
+    return max(written, coarser_step(readings.values, factor, decimals))
 
 
 def _note_gaps(samples: Samples, key: str, readings: Readings, at: object) -> None:

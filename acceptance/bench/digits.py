@@ -11,7 +11,7 @@ from collections.abc import Iterable, Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["logged_step", "sampled_cells", "written_decimals"]
+__all__ = ["coarser_step", "logged_step", "sampled_cells", "written_decimals"]
 
 _NUMBER = re.compile(r"\s*\"?\s*[-+\u2212]?\d*(?:[.,](?P<fraction>\d*))?(?:[eE](?P<exponent>[-+]?\d{1,3}))?")
 _DECIMALS = range(-3, 9)  # thousands to a hundred-millionth of the unit that was logged
@@ -69,10 +69,35 @@ def logged_step(values: Sequence[float] | NDArray[np.float64], factor: float) ->
     float
         The step in SI.
     """
+    logged = _different(values, factor)
+    return _lattice(logged, factor) if logged.size >= _FEWEST else 0.0
+
+
+def coarser_step(values: Sequence[float] | NDArray[np.float64], factor: float, decimals: int) -> float:
+    """A step coarser than the digits that were written, where all values lie on it and chance would not do that.
+
+    12.1000, 12.0000: three digits that say nothing, in two values. Of that many digits one in a thousand logs has
+    three zeros by chance.
+    """
+    logged = _different(values, factor)
+    step = _lattice(logged, factor)
+    if step <= 0:
+        return 0.0
+    zeros = round(np.log10(step / factor)) + decimals
+    return step if zeros * logged.size >= 4 and zeros >= 1 else 0.0
+
+
+def _different(values: Sequence[float] | NDArray[np.float64], factor: float) -> NDArray[np.float64]:
+    """The different values, in the unit of the file, zeros left out: they lie on every step."""
     samples = np.asarray(values, dtype=np.float64)
     finite = samples[np.isfinite(samples)]
     logged = np.unique(finite[:: max(1, finite.size // _LOOKED_AT)] / factor)
-    if logged.size < _FEWEST:
+    return np.asarray(logged[logged != 0], dtype=np.float64)
+
+
+def _lattice(logged: NDArray[np.float64], factor: float) -> float:
+    """The largest decimal step that all values are whole multiples of. [SI]"""
+    if not logged.size:
         return 0.0
     largest = float(np.abs(logged).max())
     for decimals in _DECIMALS:

@@ -222,8 +222,12 @@ def missing_dwell(points: Points, condition: Condition) -> str:
 def _unknown(points: Points, condition: Condition) -> str:
     """What the log does not tell at all, and the condition needs."""
     for output, load in condition.loads.items():
+        turned = [
+            d for d in points.log.doubts if d.kind == "negative" and channel_key("output_current", output) in d.channels
+        ]
+        if load is not None and turned:
+            return f"{turned[0].text}; {turned[0].remedy}"
         if load is not None and all(point.load_fraction(output) is None for point in points.steady) and points.steady:
-            key = channel_key("output_current", output)
             return f"{key} was not logged, so that no load can be told; record it"
     if condition.input is not None and points.steady and all(p.input_voltage() is None for p in points.steady):
         return "the input voltage was neither logged nor stated; record it, or give it under log: stated:"

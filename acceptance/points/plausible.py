@@ -199,15 +199,16 @@ def _far_off(point: Point, key: str) -> int:
 
 
 def _offsets(points: Points) -> Iterator[Doubt]:
-    """A current that reads more than its uncertainty with the load set to nothing: told, since it is small."""
+    """A current that reads more than its uncertainty at no load: told, since it is small."""
     for output, rating in points.limits.ratings.outputs.items():
         key, setting = channel_key("output_current", output), channel_key("load_setting", output)
         for point in points.steady:
-            if not (point.has(key) and point.has(setting)) or (_mean(point, setting) or 0.0) != 0.0:
+            is_set = point.has(setting) and _mean(point, setting) == 0.0
+            if not point.has(key) or not (is_set or point.is_unloaded(output)):
                 continue
             mean, u = _mean(point, key), point.bench.standard_uncertainty(key, 0.0)
             if mean is not None and u > 0 and 2 * u < abs(mean) < _APART * rating.current:
-                text = f"{key} reads {1000 * mean:.3g} mA with the load set to 0, and its U there is {2000 * u:.2g} mA"
+                text = f"{key} reads {1000 * mean:.3g} mA at no load, and its U there is {2000 * u:.2g} mA"
                 remedy = "take the zero of the current before and after the run; it is in every reading"
                 yield Doubt("offset", text, channels=(key,), remedy=remedy)
                 break

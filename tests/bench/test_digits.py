@@ -7,7 +7,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from acceptance.bench.digits import logged_step, written_decimals
+from acceptance.bench.digits import coarser_step, logged_step, written_decimals
 
 
 @pytest.mark.parametrize(("cells", "decimals"), [
@@ -46,3 +46,22 @@ def test_a_channel_knows_its_last_digit(read_text_log, heading, cells, step, row
 
     (channel,) = [channel for channel in log.channels if channel.quantity == "output_voltage"]
     assert channel.step == pytest.approx(step)
+
+
+@pytest.mark.parametrize(("values", "decimals", "step"), [
+    ([12.1, 12.0, 12.1], 4, 0.1),  # twice three digits that say nothing
+    ([12.1, 12.05, 12.1], 2, 0.0),
+    ([12.1, 12.2], 2, 0.0),  # two zeros: chance
+    ([66.0, 65.0, 34.0, 0.0], 3, 1.0),
+    ([0.0, 0.0], 3, 0.0),  # zeros lie on every step
+])  # fmt: skip
+def test_coarser_step(values, decimals, step):
+    assert coarser_step(np.array(values), 1.0, decimals) == pytest.approx(step)
+
+
+def test_a_load_that_reads_whole_amperes_was_set_so(read_text_log):
+    log = read_text_log("Iout (A);Vout (V)\n" + "".join(f"{i}.000;12.{i}000\n" for i in (1, 2, 4) * 40))
+    steps = {channel.quantity: channel.step for channel in log.channels}
+
+    assert steps["output_current"] == pytest.approx(1e-3)
+    assert steps["output_voltage"] == pytest.approx(0.1)

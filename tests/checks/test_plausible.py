@@ -51,7 +51,7 @@ def test_a_sign_turned_about_is_barred(channel):
 
 
 def test_an_offset_below_zero_at_no_load_is_no_sign_turned_about():
-    assert doubts_of([{**GOOD[0], "output_current main": -0.002}, *GOOD[1:]]) == ()
+    assert doubts_of([{**GOOD[0], "output_current main": -0.001}, *GOOD[1:]]) == ()
 
 
 def test_an_input_power_that_is_the_output_power_is_barred():
