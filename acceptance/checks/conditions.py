@@ -222,9 +222,8 @@ def missing_dwell(points: Points, condition: Condition) -> str:
 def _unknown(points: Points, condition: Condition) -> str:
     """What the log does not tell at all, and the condition needs."""
     for output, load in condition.loads.items():
-        turned = [
-            d for d in points.log.doubts if d.kind == "negative" and channel_key("output_current", output) in d.channels
-        ]
+        key = channel_key("output_current", output)
+        turned = [doubt for doubt in points.log.doubts if doubt.kind == "negative" and key in doubt.channels]
         if load is not None and turned:
             return f"{turned[0].text}; {turned[0].remedy}"
         if load is not None and all(point.load_fraction(output) is None for point in points.steady) and points.steady:

@@ -239,3 +239,22 @@ def test_digits_that_the_noise_averages_out_are_not():
     (outcome,) = check_output_voltage(limits.requirements, points).outcomes
 
     assert expanded(outcome.candidates[0].estimate.value, 0.95).standard < 0.02
+
+
+def test_a_log_without_a_current_says_what_to_record():
+    limits = limits_from(FULL)
+    rows = [{k: v for k, v in adapter(load).items() if not k.startswith("output_current")} for load in (0.5, 1.0)]
+    decided = decide(check_output_voltage(limits.requirements, points_from(rows, limits)).outcomes[0], limits.decision)
+
+    assert decided.reason == "output_current main was not logged, so that no load can be told; record it"
+
+
+def test_a_load_that_reads_below_zero_is_named_where_its_condition_is_missed():
+    limits = limits_from(FULL)
+    rows = [{**row, "output_current main": -row["output_current main"]} for row in GOOD]
+    doubts = doubt_points(points_from(rows, limits))
+    points = points_from(rows, limits, doubts=doubts)
+    decided = decide(check_output_voltage(limits.requirements, points).outcomes[0], limits.decision)
+
+    assert decided.verdict == "not judged"
+    assert "below zero" in decided.reason
