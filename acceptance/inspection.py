@@ -11,6 +11,7 @@ import numpy as np
 from acceptance.bench.health import check_health
 from acceptance.bench.log import QUANTITIES, BenchLog, Channel, Doubt, channel_key
 from acceptance.bench.read import read_logs
+from acceptance.limitfile.benchpart import BenchPart
 from acceptance.limitfile.limits import Limits
 from acceptance.points.dwells import Dwell, find_dwells
 from acceptance.points.type_a import type_a
@@ -48,26 +49,25 @@ class Inspection:
     block: str  # YAML to paste, "" where nothing is to be said
 
 
-def inspect_logs(paths: Sequence[Path], limits: Limits | None = None) -> Inspection:
-    """How the logs of one unit are read, with the help of a limits file or without.
+def inspect_logs(paths: Sequence[Path], limits: Limits | None = None, *, bench: BenchPart | None = None) -> Inspection:
+    """How the logs of one unit are read: with a limits file, with a bench file alone, or with neither.
 
     Raises
     ------
     LogError
         If a log cannot be read.
     """
-    if limits is None:
-        log = read_logs(paths)
-        doubts = check_health(log)
-        found = find_dwells(log)
-    else:
+    if limits is not None:
         from acceptance.judge import find_points, read_unit
 
         points = find_points(read_unit(paths, limits), limits)
-        log, doubts = points.log, ()
-        return Inspection(log, _shown(log, [p.dwell for p in points.all]), log.doubts, log_block(log))
-    told = (*log.doubts, *doubts, *found.doubts)
-    return Inspection(log, _shown(log, found.dwells), told, log_block(log))
+        dwells = [point.dwell for point in points.all]
+        return Inspection(points.log, _shown(points.log, dwells), points.log.doubts, log_block(points.log))
+    told = bench or BenchPart()
+    log = read_logs(paths, columns=told.columns, stated=told.stated, load_mode=told.load_mode)
+    found = find_dwells(log, settle=told.settle, min_dwell=told.min_dwell)
+    doubts = (*log.doubts, *check_health(log), *found.doubts)
+    return Inspection(log, _shown(log, found.dwells), doubts, log_block(log))
 
 
 def _shown(log: BenchLog, dwells: Sequence[Dwell]) -> tuple[DwellShown, ...]:

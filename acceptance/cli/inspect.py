@@ -30,17 +30,18 @@ _ROWS = 200  # dwells shown before the table is cut; --json has them all
 def inspect(logs: tuple[Path, ...], limits_path: Path | None, bench_path: Path | None, as_json: bool) -> int:
     """Show how a log is read: columns, units, stages, dwells, doubts, and a log: block to paste."""
     existing([*logs, *([limits_path] if limits_path else []), *([bench_path] if bench_path else [])])
-    if bench_path is not None and limits_path is None:
-        msg = "--bench is of use with --limits only"
-        raise click.UsageError(msg)
-    limits = None
+    limits, bench = None, None
     if limits_path is not None:
         from acceptance.limitfile.load import load_limits
 
         limits = load_limits(limits_path, bench_path)
+    elif bench_path is not None:
+        from acceptance.limitfile.load import load_bench
+
+        bench = load_bench(bench_path)
     from acceptance.inspection import inspect_logs
 
-    seen = inspect_logs(logs, limits)
+    seen = inspect_logs(logs, limits, bench=bench)
     if as_json:
         _print_json(seen)
     else:

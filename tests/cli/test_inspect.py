@@ -51,8 +51,16 @@ def test_the_block_that_inspect_offers_is_yaml_that_a_bench_file_takes(log, tmp_
     assert "Leistung am Eingang X" in block
 
 
-def test_inspect_with_a_bench_file_alone_says_what_it_needs(log):
-    assert acceptance("inspect", log, "--bench", log).status == 2
+def test_inspect_with_a_bench_file_alone_reads_as_it_says(log, tmp_path):
+    """A heading that nobody could guess, told by the bench file."""
+    (tmp_path / "bench.yaml").write_text(
+        'acceptance: 1\nlog: {columns: {input_power: {heading: "Leistung am Eingang X", unit: W}}}\n', encoding="utf-8"
+    )
+    told = json.loads(acceptance("inspect", log, "--bench", tmp_path / "bench.yaml", "--json").out)
+
+    (power,) = [column for column in told["columns"] if column["quantity"] == "input_power"]
+    assert power["unit_from"] == "limits file"
+    assert power["heading"] == "Leistung am Eingang X"
 
 
 def test_limits_schema_accepts_what_limits_check_accepts(tmp_path):
