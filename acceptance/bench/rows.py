@@ -54,7 +54,9 @@ def tables_of(
     for number, row in enumerate(rows[layout.first :]):
         line, cells = row
         walk.meet(line)
-        if walk.has_odd_headings and walk.is_repeated(cells):
+        if number >= _SIDE_ROWS and walk.is_plain(cells):
+            walk.take_plain(row)
+        elif walk.has_odd_headings and walk.is_repeated(cells):
             walk.begin_anew(line)
         elif has_reading(cells, layout.numbers) and not _is_remark(cells, layout):
             if strict_width and len(cells) > layout.width:
@@ -102,6 +104,20 @@ class _Walk:
         if self._sheet and line > self._line + 1:
             self.is_parted = True
         self._line = line
+
+    def is_plain(self, cells: Sequence[object]) -> bool:
+        """Whether a row holds readings and no word at all, as nearly all of a workbook do: no closer look is needed."""
+        return (
+            not self._summary
+            and len(cells) <= self._layout.width
+            and str not in map(type, cells)
+            and has_reading(cells, self._layout.numbers)
+        )
+
+    def take_plain(self, row: Row) -> None:
+        """Take a row without words."""
+        self._data.append(row)
+        self.is_after_heading = self.is_parted = False
 
     def is_repeated(self, cells: Sequence[object]) -> bool:
         """Whether the headings come again."""

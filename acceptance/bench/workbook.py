@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import gc
 import io
 import warnings
 import zipfile
@@ -72,7 +73,8 @@ def read_workbook(raw: bytes, file: str, vocabulary: Vocabulary) -> Source:
                 reason = "it is hidden; make it visible if it belongs to the test"
                 source.ignore(f'sheet "{shown(sheet.title)}"', reason)
                 continue
-            rows, layout = _read_sheet(sheet, file, vocabulary)
+            with _rarely_collected():
+                rows, layout = _read_sheet(sheet, file, vocabulary)
             if layout is None:
                 tried.append((sheet.title, rows[:_HEAD_ROWS]))
                 noted = _take_cover(source, rows[:_COVER_ROWS])
@@ -156,6 +158,17 @@ def _opened(raw: bytes, file: str, *, values: bool = True) -> Iterator[Any]:
 
 
 # --- sheets ---------------------------------------------------------------------------------------------------------
+
+
+@contextmanager
+def _rarely_collected() -> Iterator[None]:
+    """Look for garbage rarely: a million cells are kept on purpose, and to look through them costs a tenth."""
+    kept = gc.get_threshold()
+    gc.set_threshold(1_000_000, 50, 1000)
+    try:
+        yield
+    finally:
+        gc.set_threshold(*kept)
 
 
 def _read_sheet(sheet: Any, file: str, vocabulary: Vocabulary) -> tuple[list[Row], Layout | None]:
