@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 
 from acceptance.limitfile.model import Ratings
+from acceptance.printing import quantity
 from acceptance.record import Hazard
 
 __all__ = ["hazards_of", "waiting_time"]
@@ -46,9 +47,8 @@ def _stored_charge(ratings: Ratings) -> Hazard:
     if charge is None:
         return Hazard("stored charge", "capacitors and their discharge are not stated in the limits file")
     wait = waiting_time(charge.capacitance, charge.voltage, charge.bleeder)
-    words = (
-        f"{charge.capacitance * 1e6:g} µF charged to {charge.voltage:g} V, discharged through {charge.bleeder:g} ohm"
-    )
+    capacitance, bleeder = quantity(charge.capacitance, "F"), quantity(charge.bleeder, "ohm")
+    words = f"{capacitance} charged to {charge.voltage:g} V, discharged through {bleeder}"
     return Hazard("stored charge", words, wait=wait)
 
 

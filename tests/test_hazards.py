@@ -124,7 +124,7 @@ def test_hazards_of_a_known_capacitor_give_a_waiting_time():
     unknown = next(h for h in hazards_of(ratings(supply=AC)) if h.hazard == "stored charge")
 
     assert known.wait == pytest.approx(19.0, abs=0.05)
-    assert all(part in known.basis for part in ("100 µF", "400 V", "100000 ohm"))
+    assert all(part in known.basis for part in ("100 µF", "400 V", "100 kΩ"))
     assert unknown.wait is None
 
 

@@ -65,7 +65,9 @@ def test_script_makes_every_shipped_file_again_to_the_byte(tmp_path: Path) -> No
     )
 
     assert done.returncode == 0, done.stderr
-    shipped = {path.name for path in SAMPLES.iterdir() if path.is_file() and path.suffix and path.suffix not in (".py", ".png")}
+    shipped = {
+        path.name for path in SAMPLES.iterdir() if path.is_file() and path.suffix and path.suffix not in (".py", ".png")
+    }
     assert {path.name for path in tmp_path.iterdir()} == shipped
     for name in sorted(shipped):
         assert (tmp_path / name).read_bytes() == (SAMPLES / name).read_bytes(), name
