@@ -16,6 +16,7 @@ from acceptance.checks.outcome import CheckResult
 from acceptance.decision import decide
 from acceptance.limitfile.limits import Limits
 from acceptance.points.dwells import find_dwells
+from acceptance.points.lost import mostly_unsteady
 from acceptance.points.overload import overloads_told
 from acceptance.points.plausible import doubt_points
 from acceptance.points.point import Points, measure_points
@@ -90,8 +91,9 @@ def find_points(log: BenchLog, limits: Limits) -> Points:
     """The steady points of a log; what cannot be true of them is a doubt."""
     rated = {name: output.current for name, output in limits.ratings.outputs.items()}
     found = find_dwells(log, settle=limits.settle, min_dwell=limits.min_dwell, rated=rated)
-    log = replace(log, doubts=(*log.doubts, *found.doubts))
-    points = measure_points(log, overloads_told(log, found.dwells, limits), limits)
+    called = overloads_told(log, found.dwells, limits)
+    log = replace(log, doubts=(*log.doubts, *found.doubts, *mostly_unsteady(log, called)))
+    points = measure_points(log, called, limits)
     doubts = doubt_points(points)
     if not doubts:
         return points

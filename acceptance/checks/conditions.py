@@ -146,7 +146,10 @@ def untold(points: Points, condition: Condition) -> list[Candidate]:
             what = " and ".join([*(f"the load of {output}" for output in loads), *(["the input voltage"] * inputs)])
             reason = f"{what} is not known at {point.where}, so that it is open whether the condition takes it in"
             found.append(Candidate((Used(point, "condition unknown"),), reason=reason))
-    return found
+    asked = {channel_key("output_current", output) for output, load in condition.loads.items() if load == ANY}
+    if condition.input == ANY:
+        asked.add("input_voltage")
+    return found + [Candidate((), reason=lost.reason) for lost in points.lost if lost.channel in asked]
 
 
 def not_taken_in(points: Points, condition: Condition) -> tuple[str, ...]:
@@ -154,7 +157,7 @@ def not_taken_in(points: Points, condition: Condition) -> tuple[str, ...]:
     if ANY not in (*condition.loads.values(), condition.input):
         return ()
     inside = {id(point) for point in matching(points, condition)}
-    unknown = {id(candidate.used[0].point) for candidate in untold(points, condition)}
+    unknown = {id(used.point) for candidate in untold(points, condition) for used in candidate.used}
     out = [point for point in points.steady if id(point) not in inside | unknown and _is_beyond(point, condition)]
     if not out:
         return ()
@@ -214,7 +217,9 @@ def missing_dwell(points: Points, condition: Condition) -> str:
     if unknown:
         return unknown
     if not points.steady:
-        return "the log has no steady dwell"
+        stages = dict.fromkeys(point.dwell.stage for point in points.all)
+        called = f"; its dwells are of stage {', '.join(stages)} (from: {points.log.stages_from})" if stages else ""
+        return f"the log has no steady dwell{called}"
     nearest = min(points.steady, key=lambda point: _distance(point, condition))
     return f"no dwell at {condition or 'any condition'}; the nearest is at {describe(nearest)} ({nearest.where})"
 

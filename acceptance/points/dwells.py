@@ -27,6 +27,9 @@ INPUT_SHARE = 0.01  # of the input voltage: the tolerance within which a conditi
 BY_HAND_ROWS = 24  # in so short a table a row may be a condition of its own
 ROWS_BY_HAND = 200  # a longer table whose settings all differ was not written by hand, but read back
 FEW = 5  # samples; a log whose settings are mostly held for fewer is kept by hand
+VOLTAGE_MATTERS = 1e-4  # of the reading: a tenth of the tightest regulation that is asked for
+POWER_MATTERS = 1e-3  # of the reading
+STUB = 0.25  # of the usual length: a shorter piece between two settings that do not change together is no condition
 SUSPICIOUS = 0.3  # of a dwell: nothing that has settled moves for so long after the load has arrived
 HALF_LEFT = 8  # samples; below this a half says nothing about settling
 SETTLING_QUANTITIES = ("output_current", "output_voltage", "input_power")
@@ -46,6 +49,12 @@ class Dwell:
     table: int  # index into BenchLog.tables
     from_: str  # "load setting", "found in <channel>", "one row a condition"
     drift: float | None  # end against start, of the first output current, else of the input voltage, in its unit
+    level_from: int | None = None  # where the channels that tell had reached the level; None: at `first`
+
+    @property
+    def reached(self) -> int:
+        """The sample from which on the condition was there, settling included."""
+        return self.first if self.level_from is None else self.level_from
 
 
 @dataclass(frozen=True, slots=True)
@@ -125,7 +134,8 @@ def find_dwells(
             first, stop, slow = _settled_span(samples, steady)
             if first < stop:
                 where = str(stage.iat[first]), int(table[first])
-                dwells.append(Dwell(first, stop, steady.begins, *where, steady.from_, _drift(samples, first, stop)))
+                drift = _drift(samples, first, stop)
+                dwells.append(Dwell(first, stop, steady.begins, *where, steady.from_, drift, steady.first))
                 if slow:
                     doubts.append(_slow_settling(log, steady, first, slow))
                 elif (
@@ -290,7 +300,12 @@ def _declared(samples: _Samples, block: Span, settings: Array) -> list[_Steady]:
         if empty[:, first].all():
             out += _found(samples, (block[0] + first, block[0] + stop))
         elif stop - first > 1 or by_hand:
-            out += _within((block[0] + first, block[0] + stop), inputs)
+            pieces = list(_within((block[0] + first, block[0] + stop), inputs))
+            usual = float(np.median([piece.stop - piece.first for piece in pieces])) if pieces else 0.0
+            whole = [piece for piece in pieces if by_hand or piece.stop - piece.first >= STUB * usual]
+            why = "the load and the input not being set at the same time"
+            samples.left_out.extend(((piece.first, piece.stop), why) for piece in pieces if piece not in whole)
+            out += whole
         else:
             span = (block[0] + first, block[0] + stop)
             samples.left_out.append((span, "a load setting of one sample being part of a ramp"))
@@ -412,8 +427,20 @@ def _settled_span(samples: _Samples, steady: _Steady) -> tuple[int, int, tuple[s
     by_load = max((lead for key, lead in leads.items() if key.startswith("output_current")), default=0)
     whole = stop - first
     enough = 1 if whole < HALF_LEFT else SUSPICIOUS * whole
-    slow = tuple(k for k, lead in leads.items() if not k.startswith("output_current") and lead - by_load >= enough)
-    return first + max(leads.values(), default=0), stop, slow
+    settled = first + max(leads.values(), default=0)
+    suspects = [k for k, lead in leads.items() if not k.startswith("output_current") and lead - by_load >= enough]
+    slow = tuple(k for k in suspects if _matters(samples.channels[k], k, (first + by_load, settled, stop)))
+    return settled, stop, slow
+
+
+def _matters(x: Array, key: str, bounds: tuple[int, int, int]) -> bool:
+    """Whether leaving out what settled moves the mean by more than anybody would be after."""
+    whole, kept = x[bounds[0] : bounds[2]], x[bounds[1] : bounds[2]]
+    if np.isnan(whole).all() or np.isnan(kept).all():
+        return False
+    mean = float(np.nanmean(kept))
+    share = VOLTAGE_MATTERS if key.startswith("output_voltage") else POWER_MATTERS
+    return abs(float(np.nanmean(whole)) - mean) > share * abs(mean)
 
 
 def _after(time: Array, span: Span, wait: float) -> int:

@@ -20,7 +20,10 @@ _LOADED = 0.25  # of rated current: from here on any supply worth testing passes
 _LEAST_EFFICIENCY = 0.05  # below it a factor of a thousand is likelier than a supply
 _MOST_EFFICIENCY = 0.997  # at every load: nothing that converts power does it without loss
 _FAR = 0.2  # of the median: a sample further off is a dropout, or the condition was not steady
+_FAR_VOLTAGE = 0.05  # the same for an output voltage, which is there to stay where it is
 _LIGHT = 0.05  # of rated current: below it an offset of the current alone makes an efficiency impossible
+
+_LEAST_RIPPLE = 1e-5  # of the output voltage; common practice, no source
 
 _SEE_WIRING = "see which column holds which quantity, in which unit, and how the meters are wired, and record it again"
 
@@ -36,6 +39,7 @@ def doubt_points(points: Points) -> tuple[Doubt, ...]:
         *_unsteady(points),
         *_offsets(points),
         *_ripple_beyond_output(points),
+        *_ripple_of_nothing(points),
     )
 
 
@@ -195,7 +199,9 @@ def _far_off(point: Point, key: str) -> int:
     rating = point.limits.ratings.outputs.get(output)
     if quantity == "output_current" and rating is not None and abs(median) < _APART * rating.current:
         return 0
-    return int(np.count_nonzero(np.abs(samples - median) > _FAR * abs(median)))
+    spread = 1.4826 * float(np.median(np.abs(samples - median)))  # a standard deviation that no outlier moves
+    far = _FAR_VOLTAGE if quantity == "output_voltage" else _FAR
+    return int(np.count_nonzero(np.abs(samples - median) > max(far * abs(median), 6 * spread)))
 
 
 def _offsets(points: Points) -> Iterator[Doubt]:
@@ -221,4 +227,20 @@ def _ripple_beyond_output(points: Points) -> Iterator[Doubt]:
         if largest and max(largest) > rating.voltage:
             text = f"{key} reads {max(largest):.4g} V, more than the {rating.voltage:g} V of the output itself"
             remedy = "see the unit of the column: mV lies near; name it in the heading"
+            yield Doubt("scale", text, bars=True, channels=(key,), remedy=remedy)
+
+
+def _ripple_of_nothing(points: Points) -> Iterator[Doubt]:
+    """Ripple that never changes over many readings, or is far too small to be one: a channel that is not connected."""
+    for output, rating in points.limits.ratings.outputs.items():
+        key = channel_key("ripple", output)
+        parts = [s[np.isfinite(s)] for p in points.steady if p.has(key) for s in (p.samples(key),)]
+        readings = np.concatenate(parts) if parts else np.array([])
+        if readings.size >= _MANY and np.ptp(readings) == 0:
+            yield _dead(key, f"of {readings.size}")
+        elif readings.size and float(readings.max()) < _LEAST_RIPPLE * rating.voltage:
+            text = (
+                f"{key} reads {1e6 * float(readings.max()):.3g} µV at most, which no switching or linear supply reaches"
+            )
+            remedy = "see the unit of the column and the probe, and record it again"
             yield Doubt("scale", text, bars=True, channels=(key,), remedy=remedy)

@@ -15,6 +15,7 @@ from acceptance.errors import MeasurementError
 from acceptance.limitfile.limits import Limits, Wiring
 from acceptance.points.dwells import Dwell
 from acceptance.points.instrument import Bench, converter_step_uncertainty
+from acceptance.points.lost import Lost, lost_stretches
 from acceptance.points.propagation import Source, Value, coverage_factor, nominal, of_source
 from acceptance.points.type_a import TypeA, type_a
 
@@ -418,6 +419,7 @@ class Points:
     log: BenchLog
     limits: Limits
     bench: Bench
+    lost: tuple[Lost, ...] = ()  # of the steady test, and in no point
 
     @property
     def steady(self) -> tuple[Point, ...]:
@@ -434,7 +436,8 @@ def measure_points(log: BenchLog, dwells: Sequence[Dwell], limits: Limits) -> Po
         if log.samples[key].dtype.kind in "fiu"
     }
     points = tuple(Point(index, dwell, log, limits, bench, columns) for index, dwell in enumerate(dwells))
-    return Points(points, log, limits, bench)
+    rated = {output: rating.current for output, rating in limits.ratings.outputs.items()}
+    return Points(points, log, limits, bench, lost_stretches(log, dwells, rated))
 
 
 def _words(keys: Sequence[str]) -> str:

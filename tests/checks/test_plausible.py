@@ -258,3 +258,19 @@ def test_a_load_that_reads_below_zero_is_named_where_its_condition_is_missed():
 
     assert decided.verdict == "not judged"
     assert "below zero" in decided.reason
+
+
+@pytest.mark.parametrize("ripple", [0.0, 0.0002, 0.0613])
+def test_ripple_that_never_changes_is_barred(ripple):
+    rows = [{**noisy(row, seed), "ripple main": [ripple] * 40} for seed, row in enumerate(GOOD)]
+
+    assert [(d.kind, d.channels) for d in doubts_of(rows)] == [("never moves", ("ripple main",))]
+
+
+def test_ripple_in_the_wrong_unit_is_barred():
+    """170 mV read as 170 microvolt."""
+    rows = [
+        {**noisy(row, seed), "ripple main": [1.7e-5 + 1e-7 * i for i in range(40)]} for seed, row in enumerate(GOOD)
+    ]
+
+    assert [(d.kind, d.channels) for d in doubts_of(rows)] == [("scale", ("ripple main",))]

@@ -151,3 +151,31 @@ def test_an_overload_by_the_measured_current():
     dwells = overloads_told(log, find_dwells(log, rated={"main": 4.0}).dwells, LIMITS)
 
     assert [dwell.stage for dwell in dwells] == ["steady", "overcurrent"]
+
+
+def test_a_drift_that_no_one_would_notice_bars_nothing():
+    """A millivolt of 24 V with the room's air conditioning: a thirtieth of the tightest regulation asked for."""
+    n = 300
+    wave = 1e-3 * np.sin(2 * np.pi * np.arange(2 * n) * 2 / 600)
+    columns = {
+        "load_setting main": np.r_[np.full(n, 2.0), np.full(n, 4.0)],
+        "output_voltage main": 24 + wave + np.random.default_rng(10).normal(0, 1e-5, 2 * n),
+        "output_current main": np.r_[np.full(n, 2.0), np.full(n, 4.0)],
+    }
+    found = find_dwells(log_of(columns), rated={"main": 4.0})
+
+    assert not [doubt for doubt in found.doubts if doubt.bars]
+
+
+def test_an_input_that_steps_two_samples_after_the_load_makes_no_dwell_of_the_two():
+    n = 160
+    columns = {
+        "input_voltage": np.r_[np.full(n + 2, 230.0), np.full(n - 2, 253.0)],
+        "load_setting main": np.r_[np.full(n, 2.0), np.full(n, 4.0)],
+        "output_voltage main": np.full(2 * n, 12.0) + np.random.default_rng(11).normal(0, 1e-3, 2 * n),
+        "output_current main": np.r_[np.full(n, 2.0), np.full(n, 4.0)],
+    }
+    found = find_dwells(log_of(columns), rated={"main": 4.0})
+
+    assert len(found.dwells) == 2
+    assert [doubt.kind for doubt in found.doubts] == ["dwell left out"]
