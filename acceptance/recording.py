@@ -80,7 +80,7 @@ def make_record(
         points=[_point(point) for point in points.all],
         figures=list(figures),
         instruments=_instruments(log, limits),
-        health=[_health(doubt, log) for doubt in (*log.doubts, *_undated(log, limits))],
+        health=[_health(doubt, log) for doubt in (*log.doubts, *_undated(log, limits), *_sheets_left_out(log))],
         notes=dict(log.notes),
         evidence=[Evidence(one.file, one.sha256, one.bytes, one.rows) for one in log.evidence],
         limits=LimitsUsed(
@@ -243,6 +243,15 @@ def _undated(log: BenchLog, limits: Limits) -> list[Doubt]:
             "the log carries no date, so that no calibration can be compared with it",
             remedy="log the date with the time, or write a note such as # date: 2026-05-04 above the table",
         )
+    ]
+
+
+def _sheets_left_out(log: BenchLog) -> list[Doubt]:
+    """Whole sheets that were not read: the paper says so, since one of them may hold another run."""
+    return [
+        Doubt("left out", f"{one.file}, {one.what}: {one.reason}")
+        for one in log.ignored
+        if one.what.startswith("sheet")
     ]
 
 

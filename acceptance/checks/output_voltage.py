@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 
+import numpy as np
+
+from acceptance.bench.log import channel_key
 from acceptance.checks.conditions import (
     Condition,
     condition_channels,
@@ -52,7 +55,7 @@ def _outcome(requirement: OutputVoltage, points: Points) -> Outcome:
         output=output,
         note=requirement.note or "",
         formula="mean of the output voltage at the terminals",
-        deviations=not_taken_in(points, condition),
+        deviations=(*not_taken_in(points, condition), *_left_out_as_settling(found, output, low, high)),
     )
 
 
@@ -74,3 +77,19 @@ def _candidate(point: Point, output: str, condition: Condition) -> Candidate:
 def _lines(outcomes: Sequence[Outcome]) -> list[LimitLine]:
     lines = [LimitLine(f"{o.name} min", o.low, "min") for o in outcomes if o.low is not None]
     return lines + [LimitLine(f"{o.name} max", o.high, "max") for o in outcomes if o.high is not None]
+
+
+def _left_out_as_settling(found: Sequence[Point], output: str, low: float | None, high: float | None) -> Iterator[str]:
+    """What lay outside the band while it was settling, with the condition there already: for the report to say."""
+    key = channel_key("output_voltage", output)
+    for point in found:
+        if not point.has(key):
+            continue
+        samples = point.columns[key][point.dwell.reached : point.dwell.first]
+        below = np.maximum(0.0, low - samples) if low is not None else np.zeros(samples.size)
+        above = np.maximum(0.0, samples - high) if high is not None else np.zeros(samples.size)
+        beyond = np.nan_to_num(below + above)
+        count = int(np.count_nonzero(beyond))
+        if count:
+            worst = samples[int(np.argmax(beyond))]
+            yield f"{count} readings outside the band, up to {worst:.5g} V, left out as settling before {point.where}"

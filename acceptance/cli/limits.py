@@ -17,12 +17,14 @@ def limits() -> None:
 
 
 @limits.command()
-@click.argument("path", metavar="FILE", type=click.Path(path_type=Path))
+@click.argument("path", metavar="FILE", required=False, type=click.Path(path_type=Path))
 @click.option("--bench", "bench_path", metavar="FILE", type=click.Path(path_type=Path), help="The bench file with it.")
 @click.option("--json", "as_json", is_flag=True, help="Print what was found as JSON.")
-def check(path: Path, bench_path: Path | None, as_json: bool) -> int:
-    """Check a limits file: every fault with file, line and column, all at once."""
-    existing([path, *([bench_path] if bench_path else [])])
+def check(path: Path | None, bench_path: Path | None, as_json: bool) -> int:
+    """Check a limits file, or a bench file alone: every fault with file, line and column, all at once."""
+    existing([one for one in (path, bench_path) if one is not None])
+    if path is None:
+        return _check_bench(bench_path)
     from acceptance.limitfile.load import load_limits
 
     found = load_limits(path, bench_path)
@@ -35,6 +37,17 @@ def check(path: Path, bench_path: Path | None, as_json: bool) -> int:
     else:
         count = len(found.requirements)
         click.echo(f"{path}: no fault; {count} {'requirement' if count == 1 else 'requirements'}")
+    return 0
+
+
+def _check_bench(path: Path | None) -> int:
+    if path is None:
+        msg = "give a limits file, or --bench FILE"
+        raise click.UsageError(msg)
+    from acceptance.limitfile.load import load_bench
+
+    load_bench(path)
+    click.echo(f"{path}: no fault")
     return 0
 
 

@@ -274,3 +274,19 @@ def test_ripple_in_the_wrong_unit_is_barred():
     ]
 
     assert [(d.kind, d.channels) for d in doubts_of(rows)] == [("scale", ("ripple main",))]
+
+
+def test_readings_outside_the_band_among_the_settling_are_said():
+    from dataclasses import replace
+
+    limits = limits_from(FULL)
+    row = noisy(adapter(1.0), 11)
+    row["output_voltage main"] = [12.5] * 4 + row["output_voltage main"][4:]
+    points = points_from([row], limits)
+    (point,) = points.all
+    settled = replace(point, dwell=replace(point.dwell, first=4, level_from=0), _kept={})
+    (outcome,) = check_output_voltage(limits.requirements, replace(points, all=(settled,))).outcomes
+
+    assert outcome.deviations == (
+        f"4 readings outside the band, up to 12.5 V, left out as settling before {settled.where}",
+    )

@@ -74,3 +74,15 @@ def test_limits_check_names_the_count(tmp_path):
 
     assert ran.status == 0
     assert json.loads(ran.out)["requirements"]
+
+
+def test_limits_check_takes_a_bench_file_alone(tmp_path):
+    assert acceptance("limits", "check", "--bench", "limits/bench-start-here.yaml").status == 0
+    assert acceptance("limits", "check").status == 2
+    (tmp_path / "b.yaml").write_text(
+        "acceptance: 1\ninstruments: {output_voltage: {accuracy: 1 %}}\n", encoding="utf-8"
+    )
+    ran = acceptance("limits", "check", "--bench", tmp_path / "b.yaml")
+
+    assert ran.status == 2
+    assert "b.yaml:2:" in ran.err
