@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
+from functools import partial
+from typing import Literal
 
 from acceptance.bench.log import channel_key
 from acceptance.errors import MeasurementError
@@ -30,18 +32,17 @@ def efficiency_figure(requirements: Sequence[Efficiency], points: Points) -> lis
     return [Figure("efficiency", "Efficiency over load", axis, Axis("efficiency", ""), series, lines)]
 
 
-def _limit_lines(requirement: Efficiency, limit: float | None, side: str) -> list[LimitLine]:
+def _limit_lines(requirement: Efficiency, limit: float | None, side: Literal["min", "max"]) -> list[LimitLine]:
     if limit is None:
         return []
-    chosen = "min" if side == "min" else "max"
     label = f"{requirement.name} {side}"
     load = requirement.at.load if requirement.at is not None else None
     if requirement.average is not None:
         ends = min(requirement.average) - _HALF, max(requirement.average) + _HALF
-        return [LimitLine(label, limit, chosen, *ends)]  # type: ignore[arg-type]
+        return [LimitLine(label, limit, side, *ends)]
     if isinstance(load, float):
-        return [LimitLine(label, limit, chosen, load - _HALF, load + _HALF)]  # type: ignore[arg-type]
-    return [LimitLine(label, limit, chosen)]  # type: ignore[arg-type]
+        return [LimitLine(label, limit, side, load - _HALF, load + _HALF)]
+    return [LimitLine(label, limit, side)]
 
 
 def voltage_figures(
@@ -50,7 +51,7 @@ def voltage_figures(
     """The voltage of outputs over their load, a series for each input voltage."""
     figures = []
     for output in outputs:
-        series = _series(points, lambda point, output=output: point.voltage(output), output)  # type: ignore[misc]
+        series = _series(points, partial(_voltage, output), output)
         if series:
             several = f" of {output}" if len(points.limits.outputs) > 1 else ""
             figures.append(
@@ -64,6 +65,10 @@ def voltage_figures(
                 )
             )
     return figures
+
+
+def _voltage(output: str, point: Point) -> Estimate:
+    return point.voltage(output)
 
 
 def merged(figures: Sequence[Figure]) -> list[Figure]:
