@@ -17,6 +17,7 @@ _NUMBER = re.compile(r"\s*\"?\s*[-+\u2212]?\d*(?:[.,](?P<fraction>\d*))?(?:[eE](
 _DECIMALS = range(-3, 9)  # thousands to a hundred-millionth of the unit that was logged
 _LOOKED_AT = 20_000  # values; the digits of a logger do not change on the way
 _LINES = 300  # lines looked at in delimited text
+_FARTHEST = 15  # digits to either side of the point that a reading may have
 _FEWEST = 20  # different values, below which a workbook tells nothing: 12 V may be 12.000 V there
 
 
@@ -31,6 +32,8 @@ def written_decimals(cells: Iterable[str]) -> int | None:
         if match is None or not any(c.isdigit() for c in match.group()):
             continue
         decimals = len(match["fraction"] or "") - int(match["exponent"] or 0)
+        if not -_FARTHEST <= decimals <= _FARTHEST:
+            continue  # an overflow mark such as 9.9E37, or worse, has no digits to speak of
         most = decimals if most is None else max(most, decimals)
     return most
 

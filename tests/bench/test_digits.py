@@ -13,6 +13,7 @@ from acceptance.bench.digits import coarser_step, logged_step, written_decimals
 @pytest.mark.parametrize(("cells", "decimals"), [
     (["12.05", "12"], 2), (["12", "230"], 0), (["2.000"], 3), (["1.2e-3", "4"], 4), (["12,5"], 1), (["1e3"], -3),
     (["24.01 V", "24.0 V"], 2), (["-0.5"], 1), (['"3.25'], 2), ([""], None), (["OL", "n/a"], None), ([], None),
+    (["9.9E37", "1e999", "12.5"], 1), (["1e-400"], None),
 ])  # fmt: skip
 def test_written_decimals(cells, decimals):
     assert written_decimals(cells) == decimals
