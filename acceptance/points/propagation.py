@@ -117,18 +117,19 @@ def effective_degrees_of_freedom(parts: Iterable[tuple[float, float]]) -> float:
     ----------
     JCGM 100:2008, annex G.4.1, equation (G.2b).
     """
-    total, below = 0.0, 0.0
-    for u, freedom in parts:
-        total += u * u
-        if u > 0 and math.isfinite(freedom):
-            below += u**4 / freedom
-    return total**2 / below if below > 0 else INFINITE
+    listed = list(parts)
+    total = math.hypot(*(u for u, _ in listed))
+    if total == 0:
+        return INFINITE
+    # as shares of the whole, so that no fourth power overflows
+    below = sum((u / total) ** 4 / freedom for u, freedom in listed if math.isfinite(freedom))
+    return 1.0 / below if below > 0 else INFINITE
 
 
 def expanded(value: Any, confidence: float) -> Expanded:
     """The expanded uncertainty of a value: U = t(confidence, nu) u; k is 1.96 at 95 % for large nu."""
     parts = [(abs(u), variable.tag.degrees_of_freedom) for variable, u in _components(value).items()]
-    u = math.sqrt(sum(part[0] ** 2 for part in parts))
+    u = math.hypot(*(part[0] for part in parts))
     freedom = effective_degrees_of_freedom(parts)
     k = coverage_factor(confidence, freedom)
     return Expanded(u, freedom, k, k * u)
