@@ -85,7 +85,11 @@ def _left_out_as_settling(found: Sequence[Point], output: str, low: float | None
     for point in found:
         if not point.has(key):
             continue
-        samples = point.columns[key][point.dwell.reached : point.dwell.first]
+        settling = slice(point.dwell.reached, point.dwell.first)
+        samples = point.columns[key][settling]
+        wiring, current = point.limits.wiring("output", output), channel_key("output_current", output)
+        if wiring is not None and point.has(current):
+            samples = samples + wiring.resistance * point.columns[current][settling]
         below = np.maximum(0.0, low - samples) if low is not None else np.zeros(samples.size)
         above = np.maximum(0.0, samples - high) if high is not None else np.zeros(samples.size)
         beyond = np.nan_to_num(below + above)
