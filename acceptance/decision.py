@@ -144,15 +144,30 @@ def _judge(candidate: Candidate, outcome: Outcome, decision: Decision) -> Verdic
         return Verdict(candidate, "not judged", candidate.reason)
     if candidate.text is not None:
         return Verdict(
-            candidate, "pass" if candidate.text_meets else "fail", "" if candidate.text_meets else "not as required"
+            candidate, "pass" if candidate.text_meets else "fail", "" if candidate.text_meets else _unlike(outcome)
         )
     if candidate.estimate is None:
         return Verdict(candidate, "not judged", "there is no value")
     if not math.isfinite(candidate.estimate.nominal):
         return Verdict(candidate, "not judged", "the value is not a finite number")
+    if not _tells(candidate, candidate.estimate.nominal, outcome):
+        return Verdict(candidate, "not judged", candidate.bound_reason)
     if candidate.estimate.unstated:
         return _judge_unstated(candidate, candidate.estimate, outcome, decision)
     return _judge_estimate(candidate, candidate.estimate, outcome, decision)
+
+
+def _unlike(outcome: Outcome) -> str:
+    return f"not {outcome.asked}" if outcome.asked else "not as required"
+
+
+def _tells(candidate: Candidate, value: float, outcome: Outcome) -> bool:
+    """Whether what is known of a value can decide: of a bound only what it already rules out."""
+    if candidate.known == "at least":
+        return not meets(value, None, outcome.high)
+    if candidate.known == "at most":
+        return not meets(value, outcome.low, None)
+    return True
 
 
 def _judge_unstated(candidate: Candidate, estimate: Estimate, outcome: Outcome, decision: Decision) -> Verdict:
@@ -177,6 +192,8 @@ def _judge_estimate(candidate: Candidate, estimate: Estimate, outcome: Outcome, 
     inside = meets(value, low, high)
     verdict = verdict_of(probability, inside, decision)
     reason = _why(verdict, inside, probability, decision)
+    if candidate.known != "value":
+        reason = f"{reason}: the true value is {candidate.known} this ({candidate.bound_reason})"
     return Verdict(candidate, verdict, reason, u, probability, margin(value, low, high))
 
 

@@ -45,11 +45,13 @@ __all__ = [
     "InstrumentUsed",
     "LimitLine",
     "LimitsUsed",
+    "Mark",
     "Output",
     "Point",
     "Ratings",
     "Reading",
     "Record",
+    "Region",
     "Series",
     "TestFacts",
     "Unit",
@@ -194,6 +196,7 @@ class Finding:
     others: list[Alternative] = field(default_factory=list)
     budget: list[BudgetLine] = field(default_factory=list)
     deviations: list[Deviation] = field(default_factory=list)
+    asked: str = ""  # the limit, where it is one in words: "hiccup"
 
 
 @dataclass(frozen=True, slots=True)
@@ -243,7 +246,8 @@ class Series:
     x: list[float]
     y: list[float]
     expanded_uncertainty: list[float | None]  # of y
-    kind: Literal["points", "line"] = "points"
+    # points: marks with error bars, led through; line: no marks; dots: samples that nothing joins
+    kind: Literal["points", "line", "dots"] = "points"
 
 
 @dataclass(frozen=True, slots=True)
@@ -258,6 +262,27 @@ class LimitLine:
 
 
 @dataclass(frozen=True, slots=True)
+class Mark:
+    """A place that a reader must find: a point of the plot, or (without y) a moment or a current."""
+
+    label: str
+    x: float
+    y: float | None = None  # null: a line over the whole height
+    expanded_uncertainty: float | None = None  # of x
+
+
+@dataclass(frozen=True, slots=True)
+class Region:
+    """A part of the plot with a meaning, such as the window that an onset must lie in."""
+
+    label: str
+    x_from: float | None = None  # null: to the edge of the plot
+    x_to: float | None = None
+    y_from: float | None = None
+    y_to: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
 class Figure:
     """Named series that show a characteristic; the report draws them without knowing what they are."""
 
@@ -268,6 +293,8 @@ class Figure:
     series: list[Series]
     limits: list[LimitLine] = field(default_factory=list)
     caption: str = ""
+    marks: list[Mark] = field(default_factory=list)
+    regions: list[Region] = field(default_factory=list)
 
 
 @dataclass(frozen=True, slots=True)

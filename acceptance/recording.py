@@ -134,6 +134,7 @@ def _finding(decided: Decided, points: Points) -> Finding:
         where=by.candidate.where if by is not None else "",
         at=by.candidate.at if by is not None else "",
         note=outcome.note,
+        asked=outcome.asked,
         formula=outcome.formula,
         points=[AtDwell(used.point.index, used.role) for used in by.candidate.used] if by is not None else [],
         others=[_alternative(other) for other in decided.others],

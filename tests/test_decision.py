@@ -643,3 +643,34 @@ def test_decided_by_replaced_limit_changes_nothing_but_the_verdict():
     assert (strict.verdict, loose.verdict) == ("fail", "pass")
     assert strict.by.expanded == loose.by.expanded
     assert strict.by.margin == pytest.approx(loose.by.margin - 0.4)
+
+
+# --- values of which only a bound is known --------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize("decision", [GUARDED, SIMPLE, CONDITIONAL])
+@pytest.mark.parametrize(
+    ("known", "value", "verdict"),
+    [
+        ("at least", 9.0, "not judged"),  # it may lie above the limit
+        ("at least", 12.0, "fail"),
+        ("at least", 1.0, "not judged"),  # below the lower limit so far, and it may still reach it
+        ("at most", 9.0, "not judged"),
+        ("at most", 1.0, "fail"),
+        ("at most", 12.0, "not judged"),
+    ],
+)
+def test_a_bound_fails_what_it_rules_out_and_passes_nothing(decision, known, value, verdict):
+    outcome = outcome_of(replace(candidate(value, 0.01), known=known, bound_reason="still rising"), low=2.0, high=10.0)
+
+    found = decide(outcome, decision)
+
+    assert found.verdict == verdict
+    assert "still rising" in found.reason
+
+
+@given(st.sampled_from(["at least", "at most"]), st.floats(-1e3, 1e3), uncertainties, bounds, rules)
+def test_a_bound_never_passes(known, value, u, limits, rule):
+    outcome = outcome_of(replace(candidate(value, u), known=known, bound_reason="?"), low=limits[0], high=limits[1])
+
+    assert "pass" not in decide(outcome, rule_of(rule)).verdict

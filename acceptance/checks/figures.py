@@ -72,7 +72,7 @@ def _voltage(output: str, point: Point) -> Estimate:
 
 
 def merged(figures: Sequence[Figure]) -> list[Figure]:
-    """The figures, those of one name as one with the limits of all."""
+    """The figures, those of one name as one with the limits, marks and regions of all."""
     found: dict[str, Figure] = {}
     for figure in figures:
         there = found.get(figure.name)
@@ -80,6 +80,8 @@ def merged(figures: Sequence[Figure]) -> list[Figure]:
             found[figure.name] = figure
         else:
             there.limits.extend(line for line in figure.limits if line not in there.limits)
+            there.marks.extend(mark for mark in figure.marks if mark not in there.marks)
+            there.regions.extend(region for region in figure.regions if region not in there.regions)
     return list(found.values())
 
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from typing import Literal
 
 from acceptance.points.point import Estimate, Point
 from acceptance.record import Figure
@@ -32,11 +33,14 @@ class Candidate:
     text: str | None = None  # a value in words, such as a behaviour
     text_meets: bool | None = None
     at: str = ""  # the operating condition that was run, where the requirement's condition leaves it open
+    known: Literal["value", "at least", "at most"] = "value"  # a bound may fail a unit, it never passes one
+    bound_reason: str = ""  # why only a bound of the value is known
+    place: str = ""  # file and lines, where it was formed from samples rather than from points
 
     @property
     def where(self) -> str:
-        """Files and lines of its points, each once."""
-        return "; ".join(dict.fromkeys(used.point.where for used in self.used))
+        """Files and lines that it was formed from, each once."""
+        return self.place or "; ".join(dict.fromkeys(used.point.where for used in self.used))
 
 
 @dataclass(frozen=True, slots=True)
@@ -55,6 +59,7 @@ class Outcome:
     note: str = ""
     formula: str = ""
     deviations: tuple[str, ...] = ()
+    asked: str = ""  # the limit, where it is one in words
     is_magnitude: bool = False  # of a signed value: what is below -high does not meet the limit either
 
     @property

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
+from itertools import pairwise
 from typing import Any, TypeVar
 
 import numpy as np
@@ -426,15 +427,39 @@ class Points:
         """Those of the steady test."""
         return tuple(point for point in self.all if point.dwell.stage == "steady")
 
+    def stretches(self, stage: str) -> tuple[Point, ...]:
+        """Each whole stretch of one stage, settled or not: where samples are looked at, not their means.
 
-def measure_points(log: BenchLog, dwells: Sequence[Dwell], limits: Limits) -> Points:
-    """The points of a log's dwells."""
-    bench = Bench(limits)
-    columns = {
+        A stretch never spans two tables. Its index is that of no dwell.
+        """
+        here = self.log.samples["stage"].to_numpy() == stage
+        if not here.any():
+            return ()
+        table = self.log.samples["table"].to_numpy()
+        columns = next((point.columns for point in self.all), None) or numeric_columns(self.log)
+        edges = np.flatnonzero(np.diff(here.astype(np.int8), prepend=0, append=0))
+        found = []
+        for first, stop in zip(edges[::2].tolist(), edges[1::2].tolist(), strict=True):
+            cuts = (np.flatnonzero(np.diff(table[first:stop])) + first + 1).tolist()
+            for a, b in pairwise([first, *cuts, stop]):
+                dwell = Dwell(a, b, a, stage, int(table[a]), "whole stretch", None)
+                found.append(Point(-1, dwell, self.log, self.limits, self.bench, columns))
+        return tuple(found)
+
+
+def numeric_columns(log: BenchLog) -> dict[str, Floats]:
+    """The channels of a log as arrays, without a copy where the log holds them so."""
+    return {
         key: log.samples[key].to_numpy(dtype=np.float64)
         for key in log.samples.columns
         if log.samples[key].dtype.kind in "fiu"
     }
+
+
+def measure_points(log: BenchLog, dwells: Sequence[Dwell], limits: Limits) -> Points:
+    """The points of a log's dwells."""
+    bench = Bench(limits)
+    columns = numeric_columns(log)
     points = tuple(Point(index, dwell, log, limits, bench, columns) for index, dwell in enumerate(dwells))
     rated = {output: rating.current for output, rating in limits.ratings.outputs.items()}
     return Points(points, log, limits, bench, lost_stretches(log, dwells, rated))
