@@ -29,6 +29,7 @@ __all__ = [
     "Scale",
     "column",
     "count",
+    "difference_unit",
     "duration",
     "limit_range",
     "minus_signs",
@@ -36,6 +37,7 @@ __all__ = [
     "probability",
     "quantity",
     "scale_for",
+    "time_scale",
     "with_uncertainty",
 ]
 
@@ -54,14 +56,20 @@ _SLACK = 1e-12  # a value this near to a limit is equal to it
 
 @dataclass(frozen=True, slots=True)
 class Scale:
-    """One way to show SI values: number shown = value / 10^exponent, followed by the symbol."""
+    """One way to show SI values: number shown = value / (10^exponent x factor), followed by the symbol."""
 
     exponent: int
     symbol: str
+    factor: float = 1.0  # other than 1 only for minutes and hours
+
+    @property
+    def size(self) -> float:
+        """One of the unit shown, in SI."""
+        return 10.0**self.exponent * self.factor
 
     def number(self, value: float) -> Decimal:
         """The exact decimal of a finite value on this scale, binary noise beyond 13 digits left out."""
-        return Decimal(f"{value:.13g}").scaleb(-self.exponent)
+        return Decimal(f"{value / self.factor:.13g}").scaleb(-self.exponent)
 
     def fixed(self, value: float, decimals: int) -> str:
         """A finite value with so many decimals, without its unit; negative decimals round to tens and more."""
@@ -83,7 +91,10 @@ class Scale:
 
 @dataclass(frozen=True, slots=True)
 class Printed:
-    """The texts of one finding on one scale, without units; a dash where there is no number."""
+    """The texts of one finding on one scale, without units; a dash where there is no number.
+
+    U and margin are differences: of a temperature in °C they are in K.
+    """
 
     unit: str
     value: str
@@ -93,8 +104,18 @@ class Printed:
     margin: str
 
     def with_unit(self, number: str) -> str:
-        """A text of this finding with its unit, a dash as it is."""
+        """A value or a limit of this finding with its unit, a dash as it is."""
         return f"{number} {self.unit}" if self.unit and any(c.isdigit() for c in number) else number
+
+    def with_difference_unit(self, number: str) -> str:
+        """Its U or its margin with the unit of a difference, a dash as it is."""
+        unit = difference_unit(self.unit)
+        return f"{number} {unit}" if unit and any(c.isdigit() for c in number) else number
+
+
+def difference_unit(unit: str) -> str:
+    """The unit of a difference, and so of an uncertainty: K for a temperature in °C, else the unit itself."""
+    return "K" if unit == "°C" else unit
 
 
 def scale_for(unit: str, numbers: Iterable[float | None], *, per_cent: bool = True) -> Scale:
@@ -124,6 +145,24 @@ def scale_for(unit: str, numbers: Iterable[float | None], *, per_cent: bool = Tr
     return Scale(power, _PREFIXES[power] + symbol)
 
 
+_LONG, _LONGER = 240.0, 7260.0  # a stretch beyond these is shown in minutes, in hours [s]
+
+
+def time_scale(numbers: Iterable[float]) -> Scale:
+    """The scale of a time axis, from the stretch it shows: "ms" or "s" for short ones, "min" up to two hours, then "h".
+
+    Parameters
+    ----------
+    numbers
+        Finite. A stretch that begins late, seconds at the end of an hour, stays in seconds. [s]
+    """
+    listed = list(numbers)
+    stretch = max(listed, default=0.0) - min(listed, default=0.0)
+    if stretch <= _LONG:
+        return scale_for("s", listed)
+    return Scale(0, "min", 60.0) if stretch <= _LONGER else Scale(0, "h", 3600.0)
+
+
 def quantity(value: float | None, unit: str, *, digits: int = 5, stripped: bool = True, per_cent: bool = True) -> str:
     """A value with its unit, rounded to so many significant digits; trailing zeros are left out where `stripped`."""
     odd = _odd(value)
@@ -151,7 +190,7 @@ def with_uncertainty(value: float | None, expanded: float | None, unit: str, *, 
     texts = printed(value, expanded, unit, per_cent=per_cent)
     if _odd(value) is not None or texts.expanded == DASH:
         return texts.with_unit(texts.value)
-    return f"{texts.with_unit(texts.value)} ± {texts.with_unit(texts.expanded)}"
+    return f"{texts.with_unit(texts.value)} ± {texts.with_difference_unit(texts.expanded)}"
 
 
 def printed(

@@ -21,6 +21,7 @@ from acceptance.printing import (
     probability,
     quantity,
     scale_for,
+    time_scale,
     with_uncertainty,
 )
 
@@ -41,7 +42,7 @@ def number(text: str) -> Decimal:
         (23.9376, 0.0096, "V", "23.9376 V ± 0.0096 V"),
         (0.148, 0.0581, "W", "148 mW ± 58 mW"),
         (4700.0, 23.0, "ohm", "4.700 kΩ ± 0.023 kΩ"),
-        (41.26, 1.5, "°C", "41.3 °C ± 1.5 °C"),
+        (41.26, 1.5, "°C", "41.3 °C ± 1.5 K"),  # an uncertainty is a difference
         (0.5, 0.0996, "K", "0.50 K ± 0.10 K"),  # U rounds up into another decade
         (3e-6, 2e-7, "A", "3.00 µA ± 0.20 µA"),
         (-12.034, 0.021, "V", "−12.034 V ± 0.021 V"),
@@ -105,7 +106,42 @@ def test_column_rounds_to_within_half_a_digit_of_u(values, u):
     for value, text in zip(values, column(values, scale_for("V", [1.0]), expanded=[u] * len(values)), strict=True):
         shown, _, bound = text.partition(" ± ")
         last = Decimal(1).scaleb(number(bound).as_tuple().exponent)
-        assert abs(number(shown) - Decimal(value)) <= last * Decimal("0.500001")
+        noise = abs(Decimal(value)) * Decimal("1e-12")  # binary noise beyond 13 digits is rounded away first
+        assert abs(number(shown) - Decimal(value)) <= last * Decimal("0.500001") + noise
+
+
+@pytest.mark.parametrize(
+    ("first", "last", "symbol", "number"),
+    [
+        (0.0, 0.25, "ms", "250"),
+        (0.0, 3.0, "s", "3"),
+        (7000.0, 7100.0, "s", "7100"),  # a short stretch late in a log
+        (0.0, 240.0, "s", "240"),
+        (0.0, 300.0, "min", "5"),
+        (0.0, 7200.0, "min", "120"),
+        (0.0, 10_800.0, "h", "3"),
+        (-1800.0, 14_400.0, "h", "4"),
+    ],
+)
+def test_time_scale_suits_the_stretch(first, last, symbol, number):
+    """Milliseconds to hours; 60 and 3600 are exact."""
+    scale = time_scale([first, last])
+
+    assert scale.symbol == symbol
+    assert scale.exact(last) == number
+    assert scale.size == pytest.approx(last / float(number))
+
+
+def test_printed_gives_uncertainty_and_margin_of_a_temperature_in_kelvin():
+    """83.6 °C, at most 110 °C: 26.4 K are left."""
+    texts = printed(83.6, 1.8, "°C", high=110.0, margin=26.4)
+
+    assert texts.with_unit(texts.value) == "83.6 °C"
+    assert texts.with_unit(texts.high) == "110 °C"
+    assert texts.with_difference_unit(texts.expanded) == "1.8 K"
+    assert texts.with_difference_unit(texts.margin) == "+26.4 K"
+    assert texts.with_difference_unit(DASH) == DASH
+    assert printed(5.0, 0.1, "V").with_difference_unit("0.1") == "0.1 V"
 
 
 def test_with_uncertainty_shows_a_plain_ratio_when_told():

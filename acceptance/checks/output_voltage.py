@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 
 import numpy as np
+from numpy.typing import NDArray
 
 from acceptance.bench.log import channel_key
 from acceptance.checks.conditions import (
@@ -81,19 +82,36 @@ def _lines(outcomes: Sequence[Outcome]) -> list[LimitLine]:
 
 def _left_out_as_settling(found: Sequence[Point], output: str, low: float | None, high: float | None) -> Iterator[str]:
     """What lay outside the band while it was settling, with the condition there already: for the report to say."""
-    key = channel_key("output_voltage", output)
+    count, worst, furthest = 0, 0.0, 0.0
+    places: dict[str, list[str]] = {}  # table -> lines of the dwells before which it lay
     for point in found:
-        if not point.has(key):
-            continue
-        settling = slice(point.dwell.reached, point.dwell.first)
-        samples = point.columns[key][settling]
-        wiring, current = point.limits.wiring("output", output), channel_key("output_current", output)
-        if wiring is not None and point.has(current):
-            samples = samples + wiring.resistance * point.columns[current][settling]
+        samples = _settling(point, output)
         below = np.maximum(0.0, low - samples) if low is not None else np.zeros(samples.size)
         above = np.maximum(0.0, samples - high) if high is not None else np.zeros(samples.size)
         beyond = np.nan_to_num(below + above)
-        count = int(np.count_nonzero(beyond))
-        if count:
-            worst = samples[int(np.argmax(beyond))]
-            yield f"{count} readings outside the band, up to {worst:.5g} V, left out as settling before {point.where}"
+        if not beyond.any():
+            continue
+        count += int(np.count_nonzero(beyond))
+        if beyond.max() > furthest:
+            worst, furthest = float(samples[int(np.argmax(beyond))]), float(beyond.max())
+        table, _, lines = point.where.rpartition(", line")
+        places.setdefault(table, []).append(lines.removeprefix("s").strip())
+    if count:
+        told = "; ".join(
+            f"{table}, lines {', '.join(lines)}" if table else ", ".join(lines) for table, lines in places.items()
+        )
+        readings = "readings" if count > 1 else "reading"
+        yield f"{count} {readings} outside the band, up to {worst:.5g} V, left out as settling before {told}"
+
+
+def _settling(point: Point, output: str) -> NDArray[np.float64]:
+    """Output voltage at the terminals in what was left out as settling, its condition set already. [V]"""
+    key, current = channel_key("output_voltage", output), channel_key("output_current", output)
+    if not point.has(key):
+        return np.zeros(0)
+    settling = slice(point.dwell.reached, point.dwell.first)
+    samples = point.columns[key][settling]
+    wiring = point.limits.wiring("output", output)
+    if wiring is not None and point.has(current):
+        samples = samples + wiring.resistance * point.columns[current][settling]
+    return samples

@@ -108,8 +108,8 @@ def _line(finding: Finding, names: int) -> str:
     told = [harmless(finding.name).ljust(names), harmless(finding.condition)]
     if finding.value is not None:
         texts = printed(finding.value, finding.expanded_uncertainty, finding.unit, low=finding.min, high=finding.max)
-        uncertainty = "" if finding.expanded_uncertainty is None else f" ± {texts.with_unit(texts.expanded)}"
-        limit = limit_range(finding.min, finding.max, finding.unit)
+        uncertainty = "" if finding.expanded_uncertainty is None else f" ± {texts.with_difference_unit(texts.expanded)}"
+        limit = harmless(finding.asked) or limit_range(finding.min, finding.max, finding.unit)
         told.append(f"{harmless(texts.with_unit(texts.value))}{uncertainty} (limit {limit})")
     if finding.reason:
         told.append(harmless(finding.reason))

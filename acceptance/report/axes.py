@@ -11,7 +11,7 @@ from dataclasses import dataclass
 
 from acceptance.printing import MINUS, Scale
 
-__all__ = ["LinearAxis", "axis_for", "decimate", "nice_step"]
+__all__ = ["LinearAxis", "axis_for", "decimate", "decimate_cloud", "decimate_path", "nice_step"]
 
 _FLATTEST = 1e-9  # a range narrower than this share of its values is shown as one value
 
@@ -42,6 +42,14 @@ def nice_step(span: float, most: int) -> float:
     return 10.0 * power
 
 
+def _minutes(span: float, most: int) -> float:
+    """As `nice_step`, above ten minutes with quarters and halves of an hour."""
+    least = span / most * (1 - 1e-9)
+    if least <= 10.0:
+        return nice_step(span, most)
+    return next((step for step in (15.0, 20.0, 30.0, 60.0) if step >= least), nice_step(span, most))
+
+
 def axis_for(
     values: Iterable[float],
     scale: Scale,
@@ -66,7 +74,7 @@ def axis_for(
     padding
         Share of the range that is left free at both ends.
     from_zero
-        Whether an axis that begins near zero shows zero.
+        Whether an axis that begins near zero shows zero, and one that begins right below it (noise) hardly more.
     """
     listed = list(values)
     low, high = _opened(min(listed), max(listed))
@@ -74,9 +82,12 @@ def axis_for(
         low = 0.0
     free = padding * (high - low)
     # free room below nothing is a lie where nothing is below zero
-    low, high = (0.0 if 0 <= low < free else low - free), (0.0 if -free < high <= 0 else high + free)
-    unit = 10.0**scale.exponent
-    step = nice_step((high - low) / unit, most)
+    begins = 0.0 if 0 <= low < free else low - free
+    if from_zero and -0.02 * high < low < 0:
+        begins = low
+    low, high = begins, (0.0 if -free < high <= 0 else high + free)
+    unit = scale.size
+    step = (_minutes if scale.symbol == "min" else nice_step)((high - low) / unit, most)
     first, last = math.ceil(low / unit / step - 1e-9), math.floor(high / unit / step + 1e-9)
     decimals = max(0, -math.floor(math.log10(step) + 1e-9))
     numbers = [round(n * step, decimals) for n in range(first, last + 1)]
@@ -112,3 +123,39 @@ def decimate(y: Sequence[float], buckets: int = 500) -> list[int]:
         part = y[begin:end]
         kept |= {begin + part.index(min(part)), begin + part.index(max(part))}
     return sorted(kept)
+
+
+def decimate_path(x: Sequence[float], y: Sequence[float], buckets: int = 500) -> list[int]:
+    """Places of the points of a line, in their order; where it turns back in x, the extremes of x are kept as well."""
+    if len(y) <= 2 * buckets:
+        return list(range(len(y)))
+    if all(before <= after for before, after in zip(x, x[1:], strict=False)):
+        return decimate(y, buckets)
+    half = max(1, buckets // 2)
+    return sorted({*decimate(x, half), *decimate(y, half)})
+
+
+def decimate_cloud(x: Sequence[float], y: Sequence[float], most: int = 1000) -> list[int]:
+    """Places of the dots that are drawn: the first in each cell of a grid, so that none that lies apart is lost."""
+    if len(y) <= most:
+        return list(range(len(y)))
+    cells = 400
+    kept = _first_in_cell(x, y, cells)
+    while len(kept) > most and cells > 1:
+        cells //= 2
+        kept = _first_in_cell(x, y, cells)
+    return kept
+
+
+def _first_in_cell(x: Sequence[float], y: Sequence[float], cells: int) -> list[int]:
+    (left, wide), (low, high) = (_range(x), _range(y))
+    found: dict[tuple[int, int], int] = {}
+    for place, (a, b) in enumerate(zip(x, y, strict=True)):
+        found.setdefault((int((a - left) / wide * cells), int((b - low) / high * cells)), place)
+    return list(found.values())
+
+
+def _range(values: Sequence[float]) -> tuple[float, float]:
+    """The lowest value, and how far the others reach above it; 1 where they do not."""
+    low = min(values)
+    return low, (max(values) - low) or 1.0

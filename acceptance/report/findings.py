@@ -99,9 +99,9 @@ def _row(finding: Finding, record: Record) -> Row:
             Cell([Run(fold(below), CELL_MUTED)]),
             limit_text(finding),
             fold(texts.with_unit(texts.value)),
-            texts.with_unit(texts.expanded),
+            texts.with_difference_unit(texts.expanded),
             DASH if finding.coverage_factor is None else f"{finding.coverage_factor:.2f}",
-            texts.with_unit(texts.margin),
+            texts.with_difference_unit(texts.margin),
             probability(finding.conformity_probability, required=record.decision.required_probability),
             Cell([Run(finding.verdict, Type(CELL.size, CELL.leading, "semibold", colour))], verdict_mark(finding)),
         ],
@@ -203,8 +203,8 @@ def _alternative(other: Alternative, finding: Finding, record: Record, number: i
     return [
         Cell(dwell),
         fold(texts.with_unit(texts.value)),
-        texts.with_unit(texts.expanded),
-        texts.with_unit(texts.margin),
+        texts.with_difference_unit(texts.expanded),
+        texts.with_difference_unit(texts.margin),
         probability(other.conformity_probability, required=record.decision.required_probability),
         other.verdict,
     ]

@@ -228,11 +228,13 @@ def _word(finding: Finding) -> Cell:
 def _reason(finding: Finding) -> str:
     """The reason, after the value and what it had to meet."""
     reason = fold(finding.reason) or "no reason is given in the record"
-    if not isinstance(finding.value, (int, float)):
+    if isinstance(finding.value, str):
+        return fold(f"{finding.value}, limit {limit_text(finding)}: {reason}") if finding.asked else reason
+    if finding.value is None:
         return reason
     texts = printed(finding.value, finding.expanded_uncertainty, finding.unit, low=finding.min, high=finding.max)
     value = texts.with_unit(texts.value)
-    value += f" ± {texts.with_unit(texts.expanded)}" if texts.expanded != DASH else ""
+    value += f" ± {texts.with_difference_unit(texts.expanded)}" if texts.expanded != DASH else ""
     return fold(f"{value}, limit {limit_text(finding)}: {reason}")
 
 
@@ -243,7 +245,9 @@ def _shortened(text: str) -> str:
 
 
 def limit_text(finding: Finding) -> str:
-    """What the finding had to meet, in the unit its value is printed in."""
+    """What the finding had to meet, in the unit its value is printed in, or in words."""
+    if finding.asked.strip():
+        return fold(finding.asked)
     numbers = finding.value if isinstance(finding.value, (int, float)) else None
     texts = printed(numbers, finding.expanded_uncertainty, finding.unit, low=finding.min, high=finding.max)
     low, high = texts.with_unit(texts.low), texts.with_unit(texts.high)

@@ -6,9 +6,9 @@ import re
 from collections.abc import Sequence
 from itertools import groupby
 
-from acceptance.printing import DASH, column, count, printed, scale_for
-from acceptance.record import Output, Point, Reading, Record
-from acceptance.report.blocks import Beside, Block, Text, heading
+from acceptance.printing import DASH, column, count, difference_unit, printed, scale_for
+from acceptance.record import Figure, Output, Point, Reading, Record
+from acceptance.report.blocks import Beside, Block, Halves, Text, heading
 from acceptance.report.charts import Chart
 from acceptance.report.style import COLUMN, DENSE, DENSE_BOLD, DENSE_MUTED, SMALL, WIDTH
 from acceptance.report.table import Cell, Column, Row, Table, natural_width
@@ -21,18 +21,74 @@ _HALF = (WIDTH - _GAP) / 2
 
 
 def figures(record: Record) -> list[Block]:
-    """The figures, two side by side; a single one, or the last of an odd number, over the whole width."""
-    if not record.figures:
+    """The figures in the record's order, two side by side; of an odd number the fullest over the whole width."""
+    listed = record.figures
+    if not listed:
         return []
     blocks: list[Block] = [heading("Figures")]
-    listed = record.figures
-    for n in range(0, len(listed) - 1, 2):
-        pair = [Chart(figure, _HALF) for figure in listed[n : n + 2]]
-        blocks.append(Beside([(0.0, pair[0]), (_HALF + _GAP, pair[1])], above=9))
-    if len(listed) % 2:
-        blocks.append(Chart(listed[-1], WIDTH, 142.0, above=9))
-    marks = "Short strokes at a limit stand on the side that is not allowed. Bars: expanded uncertainty."
-    return [*blocks, Text(marks, SMALL, above=6)]
+    alone = _fullest(listed) if len(listed) % 2 else None
+    place = 0
+    while place < len(listed):
+        if place == alone:
+            blocks.append(Chart(listed[place], WIDTH, _WIDE, above=9))
+            place += 1
+            continue
+        pair = listed[place : place + 2]
+        blocks.append(_Pair(pair, _TALL if any(map(_is_annotated, pair)) else _MIDDLE))
+        place += 2
+    return [*blocks, Text(_signs(listed), SMALL, above=6)]
+
+
+_LOW, _MIDDLE, _TALL, _WIDE = 108.0, 128.0, 150.0, 152.0  # heights of plots [pt]
+
+
+class _Pair(Beside):
+    """Two figures, their plots level with one another; lower where that saves half a page from staying empty."""
+
+    def __init__(self, pair: Sequence[Figure], plot_height: float) -> None:
+        self._pair = pair
+        self._plot_height = plot_height
+        charts = [Chart(figure, _HALF, plot_height) for figure in pair]
+        for chart in charts:
+            chart.align(max(each.head for each in charts))
+        super().__init__([(0.0, charts[0]), (_HALF + _GAP, charts[1])], above=9)
+
+    @property
+    def least(self) -> float:
+        return self.height - self._plot_height + _LOW
+
+    def split(self, room: float) -> Halves:
+        if self.height <= room:
+            return self, None
+        if self.least > room:
+            return None, self
+        lower = _Pair(self._pair, self._plot_height - (self.height - room))
+        # a label that no longer finds room takes a line beneath the plot
+        return (lower, None) if lower.height <= room + 1e-6 else (None, self)
+
+
+def _is_annotated(figure: Figure) -> bool:
+    return bool(figure.marks or figure.regions)
+
+
+def _fullest(listed: Sequence[Figure]) -> int:
+    """Place of the figure with the most to be told apart, the last of equals; pairs stay together before it."""
+    fullness = [4 * len(f.marks) + 4 * len(f.regions) + len(f.series) for f in listed]
+    return max(range(0, len(listed), 2), key=lambda place: (fullness[place], place))
+
+
+def _signs(listed: Sequence[Figure]) -> str:
+    """What the figures' signs mean, of those that are there."""
+    texts = []
+    if any(figure.limits for figure in listed):
+        texts.append("Short strokes at a limit stand on the side that is not allowed.")
+    bars = [u for f in listed for s in f.series if s.kind == "points" for u in s.expanded_uncertainty]
+    marks = [mark for figure in listed for mark in figure.marks]
+    if any(u is not None for u in [*bars, *(mark.expanded_uncertainty for mark in marks)]):
+        texts.append("Bars: expanded uncertainty.")
+    if marks:
+        texts.append("Rings and dash-dotted lines: the places named beside them.")
+    return " ".join(texts)
 
 
 # -- points
@@ -203,7 +259,9 @@ def _own_units(title: str, readings: Sequence[Reading | None]) -> Readings:
             texts.append(DASH)
             continue
         found = printed(reading.value, _twice(reading), reading.unit, per_cent=False)
-        texts.append(found.with_unit(found.value if found.expanded == DASH else f"{found.value} ± {found.expanded}"))
+        bare = found.expanded == DASH
+        value = found.value if bare or difference_unit(found.unit) == found.unit else found.with_unit(found.value)
+        texts.append(found.with_unit(value) if bare else f"{value} ± {found.with_difference_unit(found.expanded)}")
     return title, texts
 
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from acceptance.printing import DASH, MINUS, Scale, count, minus_signs, quantity, scale_for
+from acceptance.printing import DASH, MINUS, Scale, count, difference_unit, minus_signs, quantity, scale_for
 from acceptance.record import BudgetLine, DecisionRule, Finding, Record
 from acceptance.report.blocks import Block, Text, heading, subheading
 from acceptance.report.measured import channel_name
@@ -136,7 +136,7 @@ def _row(finding: Finding, record: Record) -> Row:
             Cell([Run(finding.name, DENSE_BOLD)]),
             Cell(value),
             _from(finding, record),
-            DASH if u is None else quantity(u, finding.unit, digits=2, stripped=False),
+            DASH if u is None else quantity(u, difference_unit(finding.unit), digits=2, stripped=False),
             DASH if u is None else _freedom(freedom),
         ]
     )
@@ -193,7 +193,8 @@ def _budget(finding: Finding, record: Record, wide: float) -> Row:
     """A finding's sources, the largest first, in one row; the cells' lines stand level with one another."""
     ordered = sorted(finding.budget, key=lambda line: -abs(line.share))
     shown = _telling(ordered)
-    scale = scale_for(finding.unit, [finding.standard_uncertainty, *(line.contribution for line in shown)])
+    unit = difference_unit(finding.unit)
+    scale = scale_for(unit, [finding.standard_uncertainty, *(line.contribution for line in shown)])
     cells: tuple[list[Run], ...] = ([], [], [], [], [])
     for line in shown:
         source = wrap(_source(line, record), DENSE, wide)

@@ -145,10 +145,7 @@ def _file(name: str, kind: str, digest: str) -> Row:
 
 def doubts(record: Record) -> list[Block]:
     """Deviations of the test, and doubts about the data with what to do about each."""
-    deviations: dict[str, list[str]] = {}
-    for finding in record.findings:
-        for deviation in finding.deviations:
-            deviations.setdefault(fold(deviation.text), []).append(finding.name)
+    deviations = _deviations(record)
     unseen = unprintable(record)
     blocks: list[Block] = [heading("Deviations and doubts about the data")]
     if not deviations and not record.health and not unseen:
@@ -157,12 +154,31 @@ def doubts(record: Record) -> list[Block]:
         columns = [Column("Doubt", WIDTH - 150 - 84), Column("What to do", 150), Column("Effect", 84)]
         blocks.append(Table(columns, [_doubt(doubt) for doubt in record.health], above=2))
     if deviations:
-        rows = [Row([named(names, record), text]) for text, names in deviations.items()]
+        rows = [Row([named(names, record), _listed(texts)]) for names, texts in deviations.items()]
         columns = [Column("Finding", 150), Column("How the test differed from what the requirement asks", WIDTH - 150)]
         blocks.append(Table(columns, rows, above=6))
     if unseen:
         blocks += _unseen(unseen)
     return blocks
+
+
+def _deviations(record: Record) -> dict[tuple[str, ...], list[str]]:
+    """Each text once: by the findings that share it, the texts they share."""
+    findings: dict[str, list[str]] = {}
+    for finding in record.findings:
+        for deviation in finding.deviations:
+            names = findings.setdefault(fold(deviation.text), [])
+            if finding.name not in names:
+                names.append(finding.name)
+    texts: dict[tuple[str, ...], list[str]] = {}
+    for text, names in findings.items():
+        texts.setdefault(tuple(names), []).append(text)
+    return texts
+
+
+def _listed(texts: list[str]) -> Cell:
+    """One text as it is, several each on a line of its own."""
+    return Cell([Run(f"•  {text}" if len(texts) > 1 else text, DENSE if len(texts) > 1 else CELL) for text in texts])
 
 
 def _doubt(doubt: Health) -> Row:

@@ -290,3 +290,26 @@ def test_readings_outside_the_band_among_the_settling_are_said():
     assert outcome.deviations == (
         f"4 readings outside the band, up to 12.5 V, left out as settling before {settled.where}",
     )
+
+
+def test_readings_outside_the_band_of_several_dwells_are_said_together():
+    """All of them counted, the farthest named, each dwell's place given."""
+    from dataclasses import replace
+
+    limits = limits_from(FULL.replace("load: 100 %", "load: any"))
+    rows = [noisy(adapter(load), seed) for load, seed in ((0.5, 11), (1.0, 12))]
+    for row, volts in zip(rows, (12.6, 12.5), strict=True):
+        row["output_voltage main"] = [volts] * 3 + row["output_voltage main"][3:]
+    points = points_from(rows, limits)
+    settled = tuple(
+        replace(
+            point, dwell=replace(point.dwell, first=point.dwell.begins + 3, level_from=point.dwell.begins), _kept={}
+        )
+        for point in points.all
+    )
+    (outcome,) = check_output_voltage(limits.requirements, replace(points, all=settled)).outcomes
+
+    (text,) = outcome.deviations
+    lines = [point.where.rpartition(", lines ")[2] for point in settled]
+    assert text.startswith("6 readings outside the band, up to 12.6 V, left out as settling before ")
+    assert text.endswith(f", lines {lines[0]}, {lines[1]}")

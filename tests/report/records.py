@@ -20,11 +20,13 @@ from acceptance.record import (
     InstrumentUsed,
     LimitLine,
     LimitsUsed,
+    Mark,
     Output,
     Point,
     Ratings,
     Reading,
     Record,
+    Region,
     Series,
     TestFacts,
     Unit,
@@ -505,6 +507,8 @@ def nasty() -> Record:
             reason=hostile,
             where=hostile,
             formula=hostile,
+            asked=hostile if isinstance(each.value, str) else "",
+            deviations=[Deviation(hostile), Deviation(f"{hostile} again")],
         )
         for each in base.findings
     ]
@@ -599,3 +603,266 @@ def degenerate() -> Record:
         one("far limit", [0.0, 1.0], [0.02, 0.03], limits=[LimitLine("ripple", 120.0, "max")]),
     ]
     return replace(typical(), figures=listed)
+
+
+# -- figures of overcurrent and temperature, from closed forms
+
+
+def ripples(count: int, seed: int = 1) -> list[float]:
+    """Numbers between -1 and 1 that look like noise, the same every time."""
+    state, found = seed, []
+    for _ in range(count):
+        state = (1_103_515_245 * state + 12_345) % 2**31
+        found.append(state / 2**30 - 1)
+    return found
+
+
+def foldback() -> Figure:
+    """V over I of a 24 V, 5 A rail: regulated to 6 A, then a straight line back to 1.8 A at nothing."""
+    noise = ripples(900)
+    up = [(6.0 * n / 400, 24.0 - 0.012 * 6.0 * n / 400) for n in range(400)]
+    back = [(6.0 - 4.2 * n / 480, 23.93 * (1 - n / 480)) for n in range(481)]
+    places = [(x + 0.02 * e, y + 0.03 * e) for (x, y), e in zip(up + back, noise, strict=False)]
+    return Figure(
+        "overcurrent main",
+        "Output voltage over load current, input 230 V",
+        Axis("load current", "A"),
+        Axis("output voltage", "V"),
+        [
+            Series("samples", [x for x, _ in places], [y for _, y in places], [None] * len(places), "dots"),
+            Series("regulated branch, fitted", [0.0, 6.5], [24.0, 23.922], [None, None], "line"),
+            Series("5 % of rated below it", [0.0, 6.5], [22.8, 22.722], [None, None], "line"),
+        ],
+        [],
+        "Load swept in CR mode, up and down.",
+        [
+            Mark("onset", 5.79, None, 0.09),
+            Mark("short circuit 1.80 A", 1.80, 0.0),
+        ],
+        [Region("onset allowed, 105 % to 130 %", 5.25, 6.5), Region("below 5 % of rated", y_to=1.2)],
+    )
+
+
+def hiccup() -> Figure:
+    """Output current over a quarter of a second: bursts of 8 ms every 60 ms."""
+    times = [0.25 * n / 1000 for n in range(1000)]
+    noise = ripples(1000, 7)
+    amperes = [(7.2 if (t * 1000 + 12) % 60 < 8 else 0.02) + 0.03 * e for t, e in zip(times, noise, strict=True)]
+    return Figure(
+        "overcurrent main over time",
+        "Output current under overload, input 230 V",
+        Axis("time", "s"),
+        Axis("output current", "A"),
+        [Series("output current", times, amperes, [None] * 1000, "line")],
+        [LimitLine("ocp.short_circuit", 7.5, "max")],
+        "",
+        [Mark("first burst", 0.048), Mark("peak 7.2 A", 0.108, 7.2)],
+        [Region("three bursts", 0.048, 0.176)],
+    )
+
+
+def soak(samples: int = 10_000) -> Figure:
+    """Two probes and the ambient over four hours, a fit, and the moment from which it counts as settled."""
+    times = [14_400.0 * n / samples for n in range(samples)]
+    one, two, three = ripples(samples, 3), ripples(samples, 5), ripples(samples, 11)
+    decays = [2.718281828 ** (-t / 2700) for t in times]
+    coarse = times[:: samples // 60]
+    return Figure(
+        "temperature",
+        "Temperatures of the soak at load 100 %, input 230 V",
+        Axis("time", "s"),
+        Axis("temperature", "°C"),
+        [
+            Series("core", times, [23 + 61 * (1 - d) + 0.2 * e for d, e in zip(decays, one, strict=True)], [], "line"),
+            Series("case", times, [23 + 31 * (1 - d) + 0.2 * e for d, e in zip(decays, two, strict=True)], [], "line"),
+            Series("ambient", times, [23 + 0.4 * e for e in three], [], "line"),
+            Series("core, fitted", coarse, [23 + 61 * (1 - 2.718281828 ** (-t / 2700)) for t in coarse], [], "line"),
+            Series("mean of the last 30 min", [13_500.0], [83.6], [1.8]),
+        ],
+        [LimitLine("hot-core max", 110.0, "max")],
+        "",
+        [Mark("settled: 1 K in 30 min", 10_560.0, None, 300.0)],
+        [Region("last 30 min", 12_600.0, 14_400.0)],
+    )
+
+
+def rise() -> Figure:
+    """The rise of the case over ambient, in K, with its limit."""
+    times = [14_400.0 * n / 500 for n in range(500)]
+    noise = ripples(500, 13)
+    values = [31 * (1 - 2.718281828 ** (-t / 2700)) + 0.3 * e for t, e in zip(times, noise, strict=True)]
+    return Figure(
+        "temperature_rise case",
+        "Rise of the case over ambient",
+        Axis("time", "s"),
+        Axis("rise over ambient", "K"),
+        [Series("case", times, values, [None] * 500, "line")],
+        [LimitLine("rise-case max", 35.0, "max")],
+        "",
+        [Mark("with what is still to come", 14_400.0, 31.2)],
+    )
+
+
+def cooling() -> Figure:
+    """Winding resistance after switch-off, with the line that leads back to it."""
+    times = [6.0 + 5.0 * n for n in range(20)]
+    values = [2.41 * (1 - 0.0011 * t + 1.1e-6 * t * t) for t in times]
+    line = [float(t) for t in range(0, 110, 5)]
+    return Figure(
+        "winding_resistance",
+        "Winding resistance after switch-off",
+        Axis("time from switch-off", "s"),
+        Axis("winding resistance", "ohm"),
+        [
+            Series("readings", times, values, [0.004] * 20),
+            Series("fit", line, [2.41 * (1 - 0.0011 * t + 1.1e-6 * t * t) for t in line], [None] * len(line), "line"),
+        ],
+        [],
+        "",
+        [Mark("switch-off: 2.410 Ω", 0.0, 2.41)],
+    )
+
+
+def recovery() -> Figure:
+    """Output voltage after the overload is removed, with the band it must come back to."""
+    times = [100.0 + 0.002 * n for n in range(400)]
+    volts = [24.0 * (1 - 2.718281828 ** (-max(0.0, t - 100.1) / 0.06)) for t in times]
+    return Figure(
+        "recovery main",
+        "Output voltage after the overload",
+        Axis("time", "s"),
+        Axis("output voltage", "V"),
+        [Series("output voltage", times, volts, [None] * 400, "dots")],
+        [],
+        "",
+        [Mark("overload removed", 100.1), Mark("in the band", 100.376)],
+        [Region("band", y_from=23.76, y_to=24.24)],
+    )
+
+
+def overcurrent_findings() -> list[Finding]:
+    shared = [
+        Deviation("the load was stepped in CR mode; a sweep in CV mode is what the requirement asks"),
+        Deviation("the frequency of the input was not logged"),
+    ]
+    blank = finding(
+        "x", 0.5, 0.88, budget=[], points=[], formula="", min=None, condition="input any", at="input 229.8 V"
+    )
+    text = replace(
+        blank,
+        characteristic="overcurrent",
+        unit="",
+        expanded_uncertainty=None,
+        coverage_factor=None,
+        degrees_of_freedom=None,
+        margin=None,
+        conformity_probability=None,
+        standard_uncertainty=None,
+        deviations=shared,
+    )
+    amperes = replace(blank, characteristic="overcurrent", unit="A", standard_uncertainty=0.045, deviations=shared)
+    warm = replace(blank, condition="load 100 %, input 230 V", at="", degrees_of_freedom=None, margin=26.4, max=110.0)
+    return [
+        replace(text, name="ocp.behaviour", value="hiccup", asked="hiccup"),
+        replace(
+            text,
+            name="ocp-2.behaviour",
+            value="mixed: constant current to 40 % of the voltage, then foldback",
+            asked="constant current",
+            verdict="fail",
+            reason="another behaviour than asked",
+        ),
+        replace(amperes, name="ocp.onset", value=5.79, expanded_uncertainty=0.09, min=5.25, max=6.5, margin=0.54),
+        replace(amperes, name="ocp.short_circuit", value=1.8, expanded_uncertainty=0.02, max=6.5, margin=4.7),
+        replace(amperes, name="ocp.recovery", unit="s", value=0.276, expanded_uncertainty=0.002, max=2.0, margin=1.724),
+        replace(
+            warm,
+            name="hot-core",
+            characteristic="temperature",
+            unit="°C",
+            value=83.6,
+            expanded_uncertainty=1.8,
+            standard_uncertainty=0.9,
+            budget=[BudgetLine("temperature core, TC-4: accuracy", "B", 0.87, 0.93, None)],
+        ),
+        replace(
+            warm, name="rise-case", characteristic="temperature_rise", unit="K", value=31.2, expanded_uncertainty=2.4
+        ),
+    ]
+
+
+def characteristics() -> Record:
+    """Overcurrent and temperature: eight figures, texts and temperatures as values, shared deviations."""
+    base = typical()
+    published = [
+        "the test voltage's distortion was not logged; at most 2 % total harmonic content is asked",
+        "the frequency was not logged; 50 Hz ± 1 % is asked",
+        "warm-up: 12 min at full load are in the log; 30 min are asked",
+        "stability over 5 min was not shown at load 25 %: the log has 2 min there",
+        "air speed near the unit is not logged; at most 0.5 m/s is asked",
+        "the ambient was 26.3 °C at its highest; 23 °C ± 5 K is asked",
+        "the order of loads was 25, 50, 75, 100 %; from the highest to the lowest is asked",
+        "one unit's result is not a represented value for a model",
+    ]
+    of_set = [
+        finding(f"eps.{name}", load, 0.85, deviations=[Deviation(text) for text in published])
+        for name, load in zip(
+            ("average_efficiency", "efficiency-25", "efficiency-50", "efficiency-75", "efficiency-100"),
+            (0.75, 0.25, 0.5, 0.75, 1.0),
+            strict=True,
+        )
+    ]
+    return replace(
+        base,
+        verdict="rejected",
+        joint_conformity_probability=None,
+        findings=[*overcurrent_findings(), *of_set],
+        figures=[*base.figures, foldback(), hiccup(), recovery(), soak(), rise(), cooling()],
+    )
+
+
+def annotated() -> Record:
+    """Figures whose regions, marks and dots a chart could trip over."""
+    amperes, volts, time = Axis("load current", "A"), Axis("output voltage", "V"), Axis("time", "s")
+    nan, inf = float("nan"), float("inf")
+    hostile = " | ".join(NASTY.values())
+    dots = [Series("cloud", ripples(10_000, 3), ripples(10_000, 17), [None] * 10_000, "dots")]
+    one = [Series("a", [1.0], [2.0], [None], "line")]
+    long = [Series("a", [n / 1000 for n in range(10_000)], ripples(10_000), [None] * 10_000, "line")]
+    few = [Series("a", [0.0, 1.0, 2.0], [1.0, 2.0, 1.5], [0.1] * 3)]
+    spread = [Mark(f"place {n}", 1.0 + n / 50, 1.5 + n / 50) for n in range(12)]
+    return replace(
+        typical(),
+        figures=[
+            Figure("cloud", "cloud", amperes, volts, dots, [], "", [Mark("middle", 0.0, 0.0, 0.4)], [Region("all")]),
+            Figure("one point", "one point", amperes, volts, one, [], "", [Mark("it", 1.0, 2.0, inf)]),
+            Figure(
+                "long line", "long line", time, volts, long, [], "", [Mark("half", 5.0)], [Region("early", x_to=3.0)]
+            ),
+            Figure("nothing", "nothing", time, volts, [], [], "", [Mark("moment", 5.0)], [Region("part", 2.0, 3.0)]),
+            Figure("crowded", "crowded", amperes, volts, few, [LimitLine("m", 1.6, "max")], "", spread),
+            Figure(
+                "not finite",
+                "not finite",
+                time,
+                volts,
+                few,
+                [LimitLine("n", nan, "min", inf, nan)],
+                "",
+                [Mark("nan", nan), Mark("inf", 1.0, inf), Mark("whole", 1.0, None, nan), Mark("wide", 1.0, 1.5, 1e9)],
+                [Region("nan", nan, inf, nan, -inf), Region("reversed", 2.0, 1.0, 1.8, 1.2), Region("point", 1.0, 1.0)],
+            ),
+            Figure(
+                "hostile",
+                hostile,
+                replace(amperes, label=hostile),
+                volts,
+                [replace(few[0], name=hostile), replace(few[0], name=hostile, kind="dots")],
+                [LimitLine(hostile, 1.8, "max")],
+                hostile,
+                [Mark(hostile, 1.0, 2.0), Mark(hostile, 1.5), Mark("", 0.5, 1.0)],
+                [Region(hostile, 0.5, 1.0), Region("")],
+            ),
+            Figure("far", "far", time, volts, few, [], "", [Mark("far", 1e6, 1e6)], [Region("huge", 0.0, 1e12)]),
+        ],
+    )
