@@ -51,6 +51,8 @@ _SPAN = {"V": (-9, 3), "A": (-9, 3), "W": (-9, 6), "ohm": (-6, 6), "s": (-9, 0),
 _SYMBOLS = {"ohm": "Ω"}
 
 _MOST_DIGITS = 12  # significant; more than any reading has, and few enough that binary fractions do not show
+_WRITTEN_DIGITS = 9  # a limit of more of them was worked out, not written
+_FORMULA_DIGITS = 7
 _SLACK = 1e-12  # a value this near to a limit is equal to it
 
 
@@ -83,6 +85,12 @@ class Scale:
     def exact(self, value: float) -> str:
         """A finite value in its shortest exact form, without its unit."""
         return _shortest(self.number(value))
+
+    def limit(self, value: float) -> str:
+        """A limit: as it was written, or to seven digits where a formula gave it more than anyone writes."""
+        text = self.exact(value)
+        written = sum(c.isdigit() for c in text.strip(f"{MINUS}0.")) <= _WRITTEN_DIGITS
+        return text if written else self.rounded(value, _FORMULA_DIGITS)
 
     def with_unit(self, number: str) -> str:
         """A number's text with the unit after it."""
@@ -217,22 +225,22 @@ def printed(
     else:
         decimals = _decimals_on_its_side(scale, number, _decimals(scale, number, expanded), limits)
         shown = scale.fixed(number, decimals)
-        if not _is_number(expanded):
+        if not _is_number(expanded) or expanded == 0:  # nothing tells how many digits count
             shown = _stripped(shown)
     return Printed(
         unit=scale.symbol if value is None or not isinstance(value, str) else "",
         value=shown,
         expanded=_expanded_text(scale, number, expanded),
-        low=scale.exact(low) if low is not None and _is_number(low) else DASH,
-        high=scale.exact(high) if high is not None and _is_number(high) else DASH,
-        margin=_margin_text(scale, margin, decimals, stripped=not _is_number(expanded)),
+        low=scale.limit(low) if low is not None and _is_number(low) else DASH,
+        high=scale.limit(high) if high is not None and _is_number(high) else DASH,
+        margin=_margin_text(scale, margin, decimals, stripped=not _is_number(expanded) or expanded == 0),
     )
 
 
 def limit_range(low: float | None, high: float | None, unit: str, *, per_cent: bool = True) -> str:
     """What must be met: "≥ 88 %", "≤ 120 mV", "23.52 V to 24.48 V", or a dash."""
     scale = scale_for(unit, [low, high], per_cent=per_cent)
-    texts = [scale.with_unit(scale.exact(n)) if n is not None and _is_number(n) else "" for n in (low, high)]
+    texts = [scale.with_unit(scale.limit(n)) if n is not None and _is_number(n) else "" for n in (low, high)]
     if all(texts):
         return f"{texts[0]} to {texts[1]}"
     if texts[0]:

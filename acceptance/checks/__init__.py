@@ -12,6 +12,7 @@ from acceptance.checks.no_load_power import check_no_load_power
 from acceptance.checks.not_built import check_not_built
 from acceptance.checks.outcome import CheckResult
 from acceptance.checks.output_voltage import check_output_voltage
+from acceptance.checks.published import check_published
 from acceptance.checks.regulation import check_line_regulation, check_load_regulation
 from acceptance.checks.ripple import check_ripple
 
@@ -21,7 +22,7 @@ Check = Callable[..., CheckResult]
 
 # characteristic -> what looks at it, in the order of the report
 CHECKS: Mapping[str, Check] = {
-    "published": check_not_built,
+    "published": check_published,
     "efficiency": check_efficiency,
     "no_load_power": check_no_load_power,
     "load_regulation": check_load_regulation,

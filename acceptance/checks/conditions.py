@@ -46,6 +46,8 @@ class Condition:
 
     loads: Mapping[str, Load]
     input: float | Literal["any"] | None
+    load_tolerance: float | None = None  # a method's own, of rated current; None: the limits file's, or the usual one
+    input_tolerance: float | None = None  # a method's own, of the input voltage
 
     def __str__(self) -> str:
         return ", ".join([*self._load_words(), *self._input_words()])
@@ -93,8 +95,8 @@ def load_tolerance(load: float, limits: Limits) -> float:
     return _LOAD_TOLERANCE if load > 0.1 + 1e-12 else _LOAD_TOLERANCE / 2
 
 
-def meets_load(point: Point, output: str, load: Load) -> bool:
-    """Whether a point has the load asked for; any: up to the rated current.
+def meets_load(point: Point, output: str, load: Load, tolerance: float | None = None) -> bool:
+    """Whether a point has the load asked for; any: up to the rated current. A tolerance given goes before the usual.
 
     By the mean of the current, or by its median: a dwell whose load dropped out for a while was still run at that
     load, and what is judged there must not be the other dwells alone.
@@ -106,16 +108,18 @@ def meets_load(point: Point, output: str, load: Load) -> bool:
         return any(abs(fraction) <= 1 + load_tolerance(1.0, point.limits) + 1e-12 for fraction in fractions)
     if load == 0:
         return point.is_unloaded(output)
-    return any(abs(fraction - load) <= load_tolerance(load, point.limits) + 1e-12 for fraction in fractions)
+    near = load_tolerance(load, point.limits) if tolerance is None else tolerance
+    return any(abs(fraction - load) <= near + 1e-12 for fraction in fractions)
 
 
-def meets_input(point: Point, voltage: float | Literal["any"] | None) -> bool:
+def meets_input(point: Point, voltage: float | Literal["any"] | None, tolerance: float | None = None) -> bool:
     """Whether a point has the input voltage asked for; any: within the rated range."""
     if voltage is None:
         return True
     measured = point.input_voltage()
-    share = point.limits.decision.tolerance.input
-    tolerance = _INPUT_TOLERANCE if share is None else share
+    if tolerance is None:
+        share = point.limits.decision.tolerance.input
+        tolerance = _INPUT_TOLERANCE if share is None else share
     if isinstance(voltage, str):
         span = point.limits.ratings.input.range
         if measured is None or span is None:
@@ -131,8 +135,8 @@ def matching(points: Points, condition: Condition) -> list[Point]:
     return [
         point
         for point in points.steady
-        if meets_input(point, condition.input)
-        and all(meets_load(point, output, load) for output, load in condition.loads.items())
+        if meets_input(point, condition.input, condition.input_tolerance)
+        and all(meets_load(point, output, load, condition.load_tolerance) for output, load in condition.loads.items())
     ]
 
 

@@ -17,7 +17,7 @@ from acceptance.checks.conditions import (
     not_taken_in,
     untold,
 )
-from acceptance.checks.figures import efficiency_figure
+from acceptance.checks.figures import efficiency_figure, limit_lines
 from acceptance.checks.outcome import Candidate, CheckResult, Outcome, Used
 from acceptance.errors import MeasurementError
 from acceptance.limitfile.limits import Limits
@@ -25,7 +25,7 @@ from acceptance.limitfile.model import Efficiency
 from acceptance.points.point import Estimate, Point, Points
 from acceptance.points.propagation import expanded
 
-__all__ = ["check_efficiency"]
+__all__ = ["check_efficiency", "efficiency_candidate", "least_favourable"]
 
 
 def check_efficiency(requirements: Sequence[Efficiency], points: Points) -> CheckResult:
@@ -35,7 +35,7 @@ def check_efficiency(requirements: Sequence[Efficiency], points: Points) -> Chec
     the condition means, every output otherwise.
     """
     outcomes = [_average(r, points) if r.average else _at_load(r, points) for r in requirements]
-    return CheckResult.of(outcomes, efficiency_figure(requirements, points) if requirements else [])
+    return CheckResult.of(outcomes, efficiency_figure(limit_lines(requirements), points) if requirements else [])
 
 
 def _loaded_outputs(requirement: Efficiency, limits: Limits) -> tuple[str, ...]:
@@ -45,7 +45,7 @@ def _loaded_outputs(requirement: Efficiency, limits: Limits) -> tuple[str, ...]:
 def _at_load(requirement: Efficiency, points: Points) -> Outcome:
     condition = condition_of(requirement.at, points.limits, _loaded_outputs(requirement, points.limits))
     found = [point for point in matching(points, condition) if _is_loaded(point, condition)]
-    candidates = [_candidate([point], [describe(point)], condition) for point in found]
+    candidates = [efficiency_candidate([point], [describe(point)], condition) for point in found]
     return _outcome(
         requirement,
         str(condition),
@@ -83,7 +83,8 @@ def _average(requirement: Efficiency, points: Points) -> Outcome:
             deviations.append(f"at {input_words(group)} load {lacks} was not run, so that no mean was formed there")
             continue
         roles = [f"load {100 * load:g} %" for load in loads]
-        candidates += [_candidate(choice, roles, conditions[0]) for choice in _choices(requirement, found)]
+        choices = least_favourable(found, low=requirement.min, high=requirement.max)
+        candidates += [efficiency_candidate(choice, roles, conditions[0]) for choice in choices]
     if not reason and not candidates:
         reason = "the loads were run, but not all of them at one input voltage"
     words = str(condition_of(requirement.at, limits, ()))
@@ -95,9 +96,11 @@ def _average(requirement: Efficiency, points: Points) -> Outcome:
     )
 
 
-def _choices(requirement: Efficiency, found: Sequence[Sequence[Point]]) -> list[tuple[Point, ...]]:
+def least_favourable(
+    found: Sequence[Sequence[Point]], *, low: float | None, high: float | None = None
+) -> list[tuple[Point, ...]]:
     """Of each load the point that is worst for a limit: by its value, and by what its uncertainty leaves of it."""
-    ways = [sign for sign, limit in ((1.0, requirement.min), (-1.0, requirement.max)) if limit is not None]
+    ways = [sign for sign, limit in ((1.0, low), (-1.0, high)) if limit is not None]
     return list(
         dict.fromkeys(
             tuple(min(group, key=lambda point, sign=sign, k=k: _worth(point, sign, k)) for group in found)  # type: ignore[misc]
@@ -117,14 +120,23 @@ def _worth(point: Point, sign: float, k: float) -> float:
     return sign * efficiency.nominal - k * u
 
 
-def _candidate(used: Sequence[Point], roles: Sequence[str], condition: Condition) -> Candidate:
+def efficiency_candidate(
+    used: Sequence[Point], roles: Sequence[str], condition: Condition, *, weights: Sequence[float] | None = None
+) -> Candidate:
+    """The efficiency of one point, or the mean of several, each with its role; a weighted mean where weights are given.
+
+    The weights add up to 1.
+    """
     named = tuple(Used(point, role) for point, role in zip(used, roles, strict=True))
     try:
         parts = []
         for point in used:
             point.require(*condition_channels(condition))
             parts.append(point.efficiency(point.limits.outputs))
-        value = sum((part.value for part in parts), start=0.0) / len(parts)
+        if weights is None:
+            value = sum((part.value for part in parts), start=0.0) / len(parts)
+        else:
+            value = sum((w * part.value for w, part in zip(weights, parts, strict=True)), start=0.0)
         return Candidate(named, Estimate.of(value, *parts), at=describe(used[0]) if len(used) == 1 else "")
     except MeasurementError as problem:
         return Candidate(named, reason=str(problem))

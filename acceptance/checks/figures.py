@@ -13,36 +13,41 @@ from acceptance.points.point import Estimate, Point, Points
 from acceptance.points.propagation import expanded
 from acceptance.record import Axis, Figure, LimitLine, Series
 
-__all__ = ["efficiency_figure", "merged", "voltage_figures"]
+__all__ = ["efficiency_figure", "limit_line", "limit_lines", "merged", "voltage_figures"]
 
 _HALF = 0.03  # half the width a limit at one load is drawn with, as a fraction of rated current
 
 
-def efficiency_figure(requirements: Sequence[Efficiency], points: Points) -> list[Figure]:
-    """Efficiency over load, a series for each input voltage; none where no point has an efficiency."""
+def efficiency_figure(lines: Sequence[LimitLine], points: Points) -> list[Figure]:
+    """Efficiency over load with these limits, a series for each input voltage; none where no point has one."""
     limits = points.limits
     series = _series(points, lambda point: point.efficiency(limits.outputs), limits.outputs[0])
     if not series:
         return []
+    axis = Axis(_load_label(points, limits.outputs[0]), "")
+    return [Figure("efficiency", "Efficiency over load", axis, Axis("efficiency", ""), series, list(lines))]
+
+
+def limit_lines(requirements: Sequence[Efficiency]) -> list[LimitLine]:
+    """The limits of efficiency requirements, each over the loads that it is about."""
     lines: list[LimitLine] = []
     for requirement in requirements:
-        lines += _limit_lines(requirement, requirement.min, "min")
-        lines += _limit_lines(requirement, requirement.max, "max")
-    axis = Axis(_load_label(points, limits.outputs[0]), "")
-    return [Figure("efficiency", "Efficiency over load", axis, Axis("efficiency", ""), series, lines)]
+        load = requirement.at.load if requirement.at is not None else None
+        loads = requirement.average or ((load,) if isinstance(load, float) else ())
+        sides: tuple[tuple[Literal["min", "max"], float | None], ...] = (
+            ("min", requirement.min),
+            ("max", requirement.max),
+        )
+        for side, limit in sides:
+            if limit is not None:
+                lines.append(limit_line(requirement.name or "", limit, side, loads))
+    return lines
 
 
-def _limit_lines(requirement: Efficiency, limit: float | None, side: Literal["min", "max"]) -> list[LimitLine]:
-    if limit is None:
-        return []
-    label = f"{requirement.name} {side}"
-    load = requirement.at.load if requirement.at is not None else None
-    if requirement.average is not None:
-        ends = min(requirement.average) - _HALF, max(requirement.average) + _HALF
-        return [LimitLine(label, limit, side, *ends)]
-    if isinstance(load, float):
-        return [LimitLine(label, limit, side, load - _HALF, load + _HALF)]
-    return [LimitLine(label, limit, side)]
+def limit_line(name: str, limit: float, side: Literal["min", "max"], loads: Sequence[float]) -> LimitLine:
+    """A limit over the loads that it is about, or over all where none is given."""
+    ends = (min(loads) - _HALF, max(loads) + _HALF) if loads else ()
+    return LimitLine(f"{name} {side}", limit, side, *ends)
 
 
 def voltage_figures(

@@ -23,7 +23,9 @@ from acceptance.limitfile.model import NoLoadPower
 from acceptance.points.point import Point, Points
 from acceptance.printing import duration
 
-__all__ = ["check_no_load_power"]
+__all__ = ["NO_LOAD_FORMULA", "check_no_load_power", "no_load_candidate", "unseen_outputs", "whole_stretches"]
+
+NO_LOAD_FORMULA = "mean input power over the whole no-load stretch after settling"
 
 
 def check_no_load_power(requirements: Sequence[NoLoadPower], points: Points) -> CheckResult:
@@ -41,19 +43,20 @@ def _outcome(requirement: NoLoadPower, points: Points) -> Outcome:
         condition=str(condition),
         unit="W",
         high=requirement.max,
-        candidates=(*(_candidate(point, condition) for point in stretches), *untold(points, condition)),
+        candidates=(*(no_load_candidate(point, condition) for point in stretches), *untold(points, condition)),
         reason="" if stretches else missing_dwell(points, condition),
         output=requirement.output or "",
         note=requirement.note or "",
-        formula="mean input power over the whole no-load stretch after settling",
-        deviations=()
-        if _logs_outputs(points)
-        else ("no output voltage was logged: that the unit was on is not shown",),
+        formula=NO_LOAD_FORMULA,
+        deviations=unseen_outputs(points),
     )
 
 
-def _logs_outputs(points: Points) -> bool:
-    return all(channel_key("output_voltage", output) in points.log.samples for output in points.limits.outputs)
+def unseen_outputs(points: Points) -> tuple[str, ...]:
+    """What to say where the log does not show that the unit was on."""
+    if all(channel_key("output_voltage", output) in points.log.samples for output in points.limits.outputs):
+        return ()
+    return ("no output voltage was logged: that the unit was on is not shown",)
 
 
 def whole_stretches(found: Sequence[Point]) -> list[Point]:
@@ -85,7 +88,8 @@ def _close(first: float | None, second: float | None) -> bool:
     return first is not None and second is not None and abs(first - second) <= 0.005 * abs(first)
 
 
-def _candidate(point: Point, condition: Condition) -> Candidate:
+def no_load_candidate(point: Point, condition: Condition) -> Candidate:
+    """The mean input power of one no-load stretch, or why it is none."""
     lasts = point.starts()[1]
     over = f"mean over {duration(lasts)}" if lasts else f"mean of {point.readings} readings"
     used = (Used(point, f"no load, {over}"),)

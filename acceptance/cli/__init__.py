@@ -22,7 +22,7 @@ COMMANDS: dict[str, tuple[str, str]] = {
     "judge": ("acceptance.cli.judge:judge", "Judge one unit: its logs against a limits file; record and report."),
     "inspect": ("acceptance.cli.inspect:inspect", "Show how a log is read: columns, units, stages, dwells, doubts."),
     "report": ("acceptance.cli.report:report", "Draw the report of a record again."),
-    "limits": ("acceptance.cli.limits:limits", "Check a limits file, or print its JSON Schema."),
+    "limits": ("acceptance.cli.limits:limits", "Check a limits file, print its JSON Schema, or show published limits."),
 }
 
 UNFORESEEN = "something unforeseen went wrong"

@@ -13,7 +13,7 @@ __all__ = ["limits"]
 
 @click.group()
 def limits() -> None:
-    """Check a limits file, or print its JSON Schema."""
+    """Check a limits file, print its JSON Schema, or show the published sets of limits."""
 
 
 @limits.command()
@@ -61,3 +61,39 @@ def schema(of_bench: bool) -> int:
 
     click.echo(json.dumps(bench_schema() if of_bench else limits_schema(), ensure_ascii=False, indent=2))
     return 0
+
+
+@limits.command()
+@click.argument("name", required=False)
+@click.option("--voltage", "voltages", metavar="VOLTAGE", multiple=True, help="Rated output voltage, such as 12V.")
+@click.option("--current", "currents", metavar="CURRENT", multiple=True, help="Rated output current, such as 2A.")
+@click.option("--power", metavar="POWER", help="Rated output power; default: volts times amperes of all outputs.")
+@click.option("--class", "class_name", metavar="CLASS", help="Default: told from the ratings.")
+@click.option("--ports", metavar="N", type=click.IntRange(1), help="Adaptive ports and different fixed voltages.")
+@click.option("--json", "as_json", is_flag=True, help="Print it as JSON.")
+def published(
+    name: str | None,
+    voltages: tuple[str, ...],
+    currents: tuple[str, ...],
+    power: str | None,
+    class_name: str | None,
+    ports: int | None,
+    as_json: bool,
+) -> int:
+    """List the published sets of limits, or show the set NAME and what it asks of a product.
+
+    \b
+    acceptance limits published                                                every set
+    acceptance limits published us-eps-level-vi                                one set, all of its classes
+    acceptance limits published us-eps-level-vi --voltage 12V --current 2A     its limits for a product
+    Several outputs: --voltage and --current again for each.
+    """
+    from acceptance.cli import published as show  # the sets and their words are read only here
+
+    rated = show.Plate(voltages, currents, power, class_name, ports)
+    if name is None:
+        if rated.is_given:
+            msg = "give the NAME of a set, such as us-eps-level-vi, beside the ratings"
+            raise click.UsageError(msg)
+        return show.every_set(as_json=as_json)
+    return show.limits_for(name, rated, as_json=as_json) if rated.is_given else show.one_set(name, as_json=as_json)

@@ -8,6 +8,7 @@ from dataclasses import dataclass
 from typing import Any
 
 from acceptance.limitfile.faults import Source, unknown
+from acceptance.limitfile.insulation import CLASSES, insulation_class
 from acceptance.limitfile.model import (
     Efficiency,
     InputRating,
@@ -74,9 +75,22 @@ def check_requirements(source: Source, requirements: Sequence[Placed], plate: Pl
             _check_output(source, path, entry, outputs=plate.outputs)
         _check_inputs(source, path, entry, rating=plate.input)
         check_rated(source, path, entry, plate)
+        if isinstance(entry, Published):
+            _check_published(source, path, entry, plate)
+        _check_class(source, path, entry)
         if plate.ambient_is_missing and isinstance(entry, Temperature) and entry.adjust == "rated ambient":
             expected = "expected ambient: under ratings:, such as ambient: 40 °C"
             source.refuse((*path, "adjust"), "no rated ambient is given to adjust to", expected)
+
+
+def _check_class(source: Source, path: Path, entry: Requirement) -> None:
+    """Note an insulation class that no table knows."""
+    if isinstance(entry, Temperature) and entry.class_ is not None and insulation_class(entry.class_) is None:
+        known = ", ".join(
+            f"{one.name} ({one.temperature:g} °C)" if one.name.isalpha() else one.name for one in CLASSES.values()
+        )
+        expected = f"expected one of {known}, or max:"
+        source.refuse((*path, "class"), f"{quoted(entry.class_)} is no insulation class", expected)
 
 
 def _check_names(source: Source, requirements: Sequence[Placed]) -> None:
@@ -131,6 +145,12 @@ def _check_other_loads(
         example = ", ".join(f"{name}: 50 %" for name in missing)
         found = f"no load is given for {' and '.join(missing)}"
         source.refuse((*path, "at", "load"), found, f'expected it under at:, such as load: {{{example}}}, or "any"')
+
+
+def _check_published(source: Source, path: Path, entry: Published, plate: Plate) -> None:
+    from acceptance.limitfile.setcheck import check_set  # the sets are read only where one is asked
+
+    check_set(source, path, entry, plate)
 
 
 def _loads(entry: Requirement) -> Mapping[str, Any]:

@@ -7,7 +7,7 @@ import json
 from collections.abc import Sequence
 
 from acceptance.limitfile.fields import Part
-from acceptance.limitfile.model import Decision, Ratings, Requirement
+from acceptance.limitfile.model import Decision, Published, Ratings, Requirement
 from acceptance.units import Rate
 
 __all__ = ["requirements_sha256"]
@@ -33,7 +33,16 @@ def requirements_sha256(ratings: Ratings, decision: Decision, requirements: Sequ
 def _line(entry: Requirement, default: str) -> dict[str, object]:
     line = {"output": default, **_dumped(entry)}
     line.pop("note", None)
+    if isinstance(entry, Published):  # another version may know the set's numbers otherwise
+        line["numbers"] = _numbers(entry.set_)
     return {"characteristic": entry.characteristic, **line}
+
+
+def _numbers(name: str) -> str:
+    from acceptance.limitfile.published import published_set  # the sets are read only where one is asked
+
+    asked = published_set(name)
+    return hashlib.sha256(repr((asked.test, asked.classes, asked.weights)).encode()).hexdigest()
 
 
 def _dumped(part: Part) -> dict[str, object]:

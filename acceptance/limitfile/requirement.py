@@ -8,6 +8,7 @@ from pydantic import Field
 
 from acceptance.limitfile.fields import (
     Average,
+    Current,
     Degrees,
     Frequency,
     InputOrAny,
@@ -25,6 +26,7 @@ from acceptance.limitfile.fields import (
     Time,
     Voltage,
     VoltageFromZero,
+    Whole,
 )
 from acceptance.units import Rate
 
@@ -275,6 +277,21 @@ class Overcurrent(Requirement):
             yield Problem(f"a droop of {100 * self.droop:g} % is no droop", "expected one such as 5 %", ("droop",))
 
 
+def _winding(method: str, material: str | None) -> Iterator[Problem]:
+    """A winding's material where its resistance tells the temperature, and only there."""
+    if method == "resistance" and material is None:
+        yield Problem("the winding's material is not given", "expected material: copper, or aluminium")
+    if method == "probe" and material is not None:
+        yield Problem("a material is given for a probe", "expected method: resistance beside it", ("material",))
+
+
+Method = Annotated[
+    Literal["probe", "resistance"],
+    Field(description="resistance: the mean of a winding, by stages cold, thermal and cooling"),
+]
+Material = Annotated[Literal["copper", "aluminium"] | None, Field(description="of the winding; method: resistance")]
+
+
 class TemperatureRise(Requirement):
     """Rise of a probe or winding over the ambient at the same moment."""
 
@@ -284,40 +301,41 @@ class TemperatureRise(Requirement):
     at: At = None
     max: Kelvin
     settled: Settled = Rate(1.0, 1800.0)
-    method: Literal["probe", "resistance"] = "probe"
-    material: Literal["copper", "aluminium"] | None = Field(
-        default=None, description="of the winding; method: resistance"
-    )
+    method: Method = "probe"
+    material: Material = None
 
     def problems(self) -> Iterator[Problem]:
         """The winding's material where its resistance tells the temperature."""
         yield from super().problems()
-        if self.method == "resistance" and self.material is None:
-            yield Problem("the winding's material is not given", "expected material: copper, or aluminium")
-        if self.method == "probe" and self.material is not None:
-            yield Problem("a material is given for a probe", "expected method: resistance beside it", ("material",))
+        yield from _winding(self.method, self.material)
 
 
 class Temperature(Requirement):
-    """Temperature of a probe, adjusted to the rated ambient where asked."""
+    """Temperature of a probe or winding, adjusted to the rated ambient where asked."""
 
     characteristic = "temperature"
     needs = ("load", "input")
     probe: Text = Field(description="the probe's name in the log: core for temperature core")
     at: At = None
     max: Degrees | None = None
-    class_: Annotated[Text | None, Field(alias="class")] = None
+    class_: Annotated[
+        Text | None,
+        Field(alias="class", description="insulation class of a winding, whose limit is taken: A, E, B, F, H"),
+    ] = None
     settled: Settled = Rate(1.0, 1800.0)
     adjust: Literal["rated ambient", "none"] = Field(
         default="none", description="rated ambient: to what it would be at the highest rated ambient temperature"
     )
+    method: Method = "probe"
+    material: Material = None
 
     def problems(self) -> Iterator[Problem]:
-        """One limit."""
+        """One limit; the winding's material where its resistance tells the temperature."""
         yield from super().problems()
         yield from _lacks(self, "max", "class_")
         if self.max is not None and self.class_ is not None:
             yield Problem("max and class are both given", "expected one of them", ("class",))
+        yield from _winding(self.method, self.material)
 
 
 class Ripple(Requirement):
@@ -335,9 +353,29 @@ class Published(Requirement):
     """A named set of published limits."""
 
     characteristic = "published"
-    takes = ()
+    takes = ("input",)
     set_: Text = Field(alias="set", description="one of those that `acceptance limits published` lists")
     class_: Annotated[Text | None, Field(alias="class", description="default: told from the ratings")] = None
+    power: Power | None = Field(
+        default=None, description="rated output power; default: volts times amperes of all outputs together"
+    )
+    ports: Whole | None = Field(
+        default=None, description="adaptive ports and different fixed voltages, where they count"
+    )
+    minimum_current: dict[str, Current] | None = Field(
+        default=None, description="output -> the smallest current it can be run at, where the method knows one"
+    )
+    min: Ratio | None = Field(default=None, description="of a weighted efficiency, for which no limit is published")
+    at: At = None  # of a weighted efficiency: the input voltage; every other set brings its own
+
+    def problems(self) -> Iterator[Problem]:
+        """An efficiency that can be met, and that not every unit meets."""
+        yield from super().problems()
+        if self.min is not None and self.min > 1:
+            yield Problem(f"an efficiency of {100 * self.min:g} % cannot be", "expected at most 100 %", ("min",))
+        if self.min is not None and self.min < _LOWEST_EFFICIENCY:
+            found = f"an efficiency of {100 * self.min:g} % as min lets any pass"
+            yield Problem(found, "expected one such as 88 %", ("min",))
 
 
 class Requirements(Part):

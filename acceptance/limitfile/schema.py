@@ -8,6 +8,7 @@ from pydantic.json_schema import GenerateJsonSchema, JsonSchemaValue
 from pydantic_core import core_schema
 
 from acceptance.limitfile.model import BenchFile, LimitsFile
+from acceptance.limitfile.published import known_sets
 
 __all__ = ["bench_schema", "limits_schema"]
 
@@ -47,4 +48,6 @@ def bench_schema() -> dict[str, Any]:
 
 def _schema(model: type[BenchFile], title: str) -> dict[str, Any]:
     made = model.model_json_schema(by_alias=True, schema_generator=_FileSchema)
+    if "Published" in made["$defs"]:
+        made["$defs"]["Published"]["properties"]["set"] |= {"type": "string", "enum": list(known_sets())}
     return {"$schema": _DIALECT, **made, "title": title}

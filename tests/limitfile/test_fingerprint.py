@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import random
 import re
+from dataclasses import replace
 from pathlib import Path
 
 import pytest
@@ -12,6 +13,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from acceptance.limitfile.load import load_limits
+from acceptance.limitfile.published import published_set
 from acceptance.limitfile.yamltree import read_tree
 
 GOOD = (Path(__file__).parent / "data" / "good.yaml").read_text(encoding="utf-8")
@@ -112,8 +114,8 @@ def test_requirements_sha256_stays(fingerprint, old, new):
         ("adjust: rated ambient", "adjust: none"),
         ("kind: p-p", "kind: rms"),
         ("bandwidth: 20 MHz", "bandwidth: 100 MHz"),
-        ("set: us-eps-level-vi", "set: eu-eps"),
-        ("set: us-eps-level-vi", "set: us-eps-level-vi, class: low"),
+        ("set: us-eps-level-vi", "set: eu-eps-2019-1782"),
+        ("set: us-eps-level-vi", "set: us-eps-level-vi, class: multiple voltage"),
         ("ambient: 40 °C\n", "ambient: 45 °C\n"),
         ("current: 5 A", "current: 5.1 A"),
         ("voltage: 230 V, range", "voltage: 231 V, range"),
@@ -146,3 +148,16 @@ def test_requirements_sha256_of_every_limit_differs(fingerprint):
 
     assert len(hashes) > 40
     assert len(set(hashes)) == len(hashes)
+
+
+def test_requirements_sha256_holds_the_numbers_of_a_published_set(fingerprint, monkeypatch):
+    """Records of two versions that know a set otherwise are not records of one set of requirements."""
+    before = fingerprint(GOOD)
+
+    def other(name):
+        return replace(published_set(name), classes={})
+
+    monkeypatch.setattr("acceptance.limitfile.published.published_set", other)
+
+    assert "us-eps" in GOOD
+    assert fingerprint(GOOD) != before

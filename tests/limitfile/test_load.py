@@ -60,7 +60,9 @@ def test_requirements_keep_the_order_of_the_file(data, tmp_path, good_text):
     """Not that of the models."""
     path = tmp_path / "limits.yaml"
     head, _, tail = good_text.partition("  published:\n    - {name: set-a, set: us-eps-level-vi}\n")
-    path.write_text(head + tail.replace("\nlot:", "  published: [{name: set-a, set: x}]\n\nlot:"), encoding="utf-8")
+    path.write_text(
+        head + tail.replace("\nlot:", "  published: [{name: set-a, set: us-eps-level-vi}]\n\nlot:"), encoding="utf-8"
+    )
 
     names = [r.name for r in load_limits(path).requirements]
 
