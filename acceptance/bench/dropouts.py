@@ -13,6 +13,7 @@ __all__ = ["dropouts"]
 
 _BESIDE = 10  # neighbours looked at on each side of a zero
 _FAR = 20.0  # times their spread that these lie from zero
+_DIGITS = 3  # of the channel: a reading of no more is no reading far from zero
 _ZEROS = 2  # in one neighbourhood; more of them are the unit's manner, such as bursts
 _CHANGED = 0.2  # of the input power: then the load did change
 
@@ -32,6 +33,9 @@ def dropouts(channel: Trace, tables: Sequence[Span], power: Values | None = None
     found = [
         row for a, b in tables for row in zeros[(zeros >= a) & (zeros < b)].tolist() if _is_alone(values, row, a, b)
     ]
+    # an offset that shows one digit is 0 in the next reading for good reason
+    digit = _last_digit(values) if found else 0.0
+    found = [row for row in found if _DIGITS * digit < float(np.abs(values[[row - 1, row + 1]]).min())]
     found = [row for row in found if power is None or not _is_vouched(power, row)]
     if not found:
         return
@@ -58,6 +62,13 @@ def _is_alone(values: Values, row: int, first: int, stop: int) -> bool:
         return False
     beside = np.concatenate([side[:_BESIDE] for side in sides])
     return bool(np.abs(beside).min() > _FAR * beside.std() and (np.sign(beside) == np.sign(beside[0])).all())
+
+
+def _last_digit(values: Values) -> float:
+    """The smallest step between readings other than 0; 0 where they are all alike."""
+    steps = np.diff(np.unique(values[np.isfinite(values) & (values != 0)]))
+    steps = steps[steps > 1e-9 * float(np.nanmax(np.abs(values)))] if steps.size else steps
+    return float(steps.min()) if steps.size else 0.0
 
 
 def _is_vouched(power: Values, row: int) -> bool:

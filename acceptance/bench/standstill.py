@@ -20,6 +20,7 @@ Values = NDArray[np.float64]
 
 _FROZEN_RUN = 50  # samples
 _CLIPPED_RUN = 5
+_NEAR_RAIL = 0.05  # of the reading
 _PILED = 5  # readings
 _PILED_SHARE = 0.05  # of a table's
 _STEPS_BELOW = 3  # lattice steps under the largest, which together must be three times rarer
@@ -118,7 +119,7 @@ def _clipped_spans(channel: Trace, at_rail: NDArray[np.bool_], tables: Sequence[
     found: list[Span] = []
     for a, b in tables:
         values, mask = channel.values[a:b], at_rail[a:b]
-        noise, count = _noise(values, ~mask)
+        noise, count = _noise(values, ~mask & _comparable(channel, (a, b), mask))
         if (
             count < 20
             or step == 0
@@ -134,6 +135,16 @@ def _clipped_spans(channel: Trace, at_rail: NDArray[np.bool_], tables: Sequence[
         kept = (last - first >= _CLIPPED_RUN) | _pile(values)[first]
         found += [(a + int(i), a + int(j)) for i, j in zip(first[kept], last[kept], strict=True)]
     return tuple(found)
+
+
+def _comparable(channel: Trace, table: Span, at_rail: NDArray[np.bool_]) -> NDArray[np.bool_]:
+    """The readings whose noise tells that of the rail: under overload, where bursts are no noise, those near it."""
+    values = channel.values[slice(*table)]
+    under_overload = (channel.log.samples["stage"].iloc[slice(*table)] == "overcurrent").to_numpy()
+    if not under_overload.any() or not at_rail.any():
+        return np.ones(values.size, bool)
+    rail = float(values[at_rail][0])
+    return ~under_overload | (np.abs(values - rail) <= _NEAR_RAIL * abs(rail))
 
 
 def _is_loaded(channel: Trace, start: int, first: NDArray[np.intp], last: NDArray[np.intp]) -> bool:
@@ -160,7 +171,9 @@ def piled(channel: Trace, tables: Sequence[Span], told: Iterable[Span] = ()) -> 
     for a, b in tables:
         if any(first < b and last > a for first, last in told):
             continue
-        rows = _pile(channel.values[a:b])
+        values = channel.values[a:b]
+        at_top = values == np.max(values, where=np.isfinite(values), initial=-np.inf)
+        rows = _pile(np.where(_comparable(channel, (a, b), at_top), values, np.nan))
         first, last = runs_of(rows)
         if not first.size or not _is_loaded(channel, a, first, last):
             continue

@@ -136,7 +136,8 @@ def find_dwells(
                 where = str(stage.iat[first]), int(table[first])
                 drift = _drift(samples, first, stop)
                 dwells.append(Dwell(first, stop, steady.begins, *where, steady.from_, drift, steady.first))
-                if slow:
+                # what a mean must wait for: whether an overload settles is looked at sample by sample
+                if slow and where[0] != "overcurrent":
                     doubts.append(_slow_settling(log, steady, first, slow))
                 elif (
                     settle is None and stop - first >= HALF_LEFT and first - steady.first >= (stop - steady.first) // 2
