@@ -9,13 +9,13 @@ from collections.abc import Callable, Mapping
 
 from acceptance.checks.efficiency import check_efficiency
 from acceptance.checks.no_load_power import check_no_load_power
-from acceptance.checks.not_built import check_not_built
 from acceptance.checks.outcome import CheckResult
 from acceptance.checks.output_voltage import check_output_voltage
 from acceptance.checks.overcurrent import check_overcurrent
 from acceptance.checks.published import check_published
 from acceptance.checks.regulation import check_line_regulation, check_load_regulation
 from acceptance.checks.ripple import check_ripple
+from acceptance.checks.temperature import check_temperature, check_temperature_rise
 
 __all__ = ["CHECKS"]
 
@@ -30,7 +30,7 @@ CHECKS: Mapping[str, Check] = {
     "line_regulation": check_line_regulation,
     "output_voltage": check_output_voltage,
     "overcurrent": check_overcurrent,
-    "temperature_rise": check_not_built,
-    "temperature": check_not_built,
+    "temperature_rise": check_temperature_rise,
+    "temperature": check_temperature,
     "ripple": check_ripple,
 }

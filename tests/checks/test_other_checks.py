@@ -8,7 +8,6 @@ import numpy as np
 import pytest
 
 from acceptance.checks.no_load_power import check_no_load_power
-from acceptance.checks.not_built import check_not_built
 from acceptance.checks.output_voltage import check_output_voltage
 from acceptance.checks.ripple import check_ripple
 from acceptance.decision import decide
@@ -129,15 +128,6 @@ def test_ripple_that_was_not_logged_is_not_judged():
     outcome, limits = outcome_of(check_ripple, RIPPLE, [row])
 
     assert "ripple main was not logged" in decide(outcome, limits.decision).reason
-
-
-def test_what_is_not_built_is_said_and_never_passes():
-    requirement = "  temperature_rise: [{name: rise, probe: case, at: {load: 100 %, input: any}, max: 35 K}]"
-    outcome, limits = outcome_of(check_not_built, requirement, [adapter(1.0)])
-
-    decided = decide(outcome, limits.decision)
-    assert decided.verdict == "not judged"
-    assert decided.reason == "this version does not judge temperature rise"
 
 
 def test_a_value_without_stated_accuracy_is_judged_only_under_simple():

@@ -1,0 +1,1 @@
+"""How a unit warms up and cools down: curves, soaks, settling, windings. Nothing is held against a limit here."""
