@@ -31,6 +31,7 @@ class Case:
     fails: tuple[str, ...] = ()  # every finding that is to fail
     not_judged: tuple[str, ...] = ()  # every finding that is not to be judged
     open: tuple[str, ...] = ()  # every finding that is to pass or fail on condition
+    because: tuple[tuple[str, str], ...] = ()  # finding, and words that its reason must hold
 
     @property
     def unit(self) -> str:
@@ -41,11 +42,21 @@ class Case:
 ADAPTER, SUPPLY = "quillfen-adapter.yaml", "wrenlow-bench-supply.yaml"
 CONVERTER, TWO_OUTPUT = "pellmarsh-converter.yaml", "skerrow-two-output.yaml"
 BENCH_2, BENCH_3 = "tarnbeck-bench-2.yaml", "tarnbeck-bench-3.yaml"
-ALL_STAGES = tuple(f"A-17_{stage}.csv" for stage in ("steady", "overcurrent", "cold", "thermal", "cooling"))
+ADAPTER_FULL, SUPPLY_FULL = "quillfen-adapter-full.yaml", "wrenlow-bench-supply-full.yaml"
+CONVERTER_FULL = "pellmarsh-converter-full.yaml"
+STAGES = ("cold", "cooling", "overcurrent", "steady", "thermal")  # as a shell sorts the files
+ALL_STAGES = tuple(f"A-17_{stage}.csv" for stage in STAGES)
 
 CASES = (
     Case(("A-17_steady.csv",), ADAPTER, "accepted", "the main demo: comma, decimal point, UTF-8, date-times with zone"),
-    Case(ALL_STAGES, ADAPTER, "accepted", "five files as stages of one unit; only the steady one is judged here"),
+    Case(
+        ALL_STAGES,
+        ADAPTER_FULL,
+        "accepted",
+        "every kind of requirement, five files as stages: a published set, hiccup seen in a CR sweep, a settled soak "
+        "of 4 h in a room that warms by 1 K, the winding by its resistance",
+    ),
+    Case(ALL_STAGES, ADAPTER, "accepted", "the same five files where only the steady stage is asked for"),
     Case(
         ("A-17_steady.csv",),
         "start-here.yaml",
@@ -97,6 +108,13 @@ CASES = (
         bench=BENCH_2,
     ),
     Case(
+        ("B-203.xlsx", "B-203_thermal.txt"),
+        SUPPLY_FULL,
+        "accepted",
+        "constant current seen in a CR sweep on a sheet of its own; the soak in a file beside the workbook",
+        bench=BENCH_2,
+    ),
+    Case(
         ("B-204.tsv",),
         SUPPLY,
         "rejected",
@@ -111,6 +129,15 @@ CASES = (
         "the voltmeter hung from full load on; bars",
         bench=BENCH_2,
         not_judged=("band", "eff-100", "linereg", "loadreg"),
+    ),
+    Case(
+        ("B-206_overcurrent.tsv", "B-206_steady.tsv", "B-206_thermal.tsv"),
+        SUPPLY_FULL,
+        "undecided",
+        "slots full of dust: its soak, stopped after 50 min, has not settled; in the end it would go beyond the limit",
+        bench=BENCH_2,
+        not_judged=("rise-case",),
+        because=(("rise-case", "not settled"),),
     ),
     Case(
         ("D-0412.csv",),
@@ -141,6 +168,23 @@ CASES = (
         "a good unit, but a shunt past its due date; tabs, units in a row",
         bench=BENCH_3,
         not_judged=("calibration.SH-10",),
+    ),
+    Case(
+        tuple(f"D-0416_{stage}.csv" for stage in STAGES),
+        CONVERTER_FULL,
+        "accepted",
+        "foldback seen in a CR sweep, a settled soak of 2.5 h, class B, the winding by its resistance",
+        bench=BENCH_3,
+    ),
+    Case(
+        ("D-0417_overcurrent.csv", "D-0417_steady.csv"),
+        CONVERTER_FULL,
+        "rejected",
+        "swept in CV mode: it holds its current into the short, where it was to fold back; not gone on to the soak",
+        bench=BENCH_3,
+        fails=("ocp.behaviour", "ocp.short_circuit"),
+        not_judged=("hot-core", "rise-case", "rise-winding"),
+        because=(("ocp.behaviour", "not foldback"), ("rise-case", "no thermal stage")),
     ),
     Case(
         ("M-31.txt",),
@@ -176,13 +220,15 @@ def readme() -> str:
             "their stated accuracy (`workshop/`). The limits and bench files named here stand in `limits/`.",
             "",
             "    acceptance judge sample_logs/A-17_steady.csv --limits limits/quillfen-adapter.yaml --out out",
+            "    acceptance judge sample_logs/A-17_*.csv --limits limits/quillfen-adapter-full.yaml --out out",
             "",
             "| log | what it shows | limits | bench | verdict |",
             "|---|---|---|---|---|",
             *rows,
             "",
-            "Products: A, a 24 V 2.5 A mains adapter; B, a 30 V 3 A bench supply with constant current limit; D, a",
-            "48 V to 12 V 8 A converter; M, a supply with two outputs, 5 V 4 A and 12 V 1.5 A.",
+            "Products: A, a 24 V 2.5 A mains adapter that protects itself by hiccup; B, a 30 V 3 A bench supply with",
+            "constant current limit; D, a 48 V to 12 V 8 A converter with foldback; M, a supply with two outputs,",
+            "5 V 4 A and 12 V 1.5 A.",
             "",
         ]
     )

@@ -1,22 +1,16 @@
-"""Logs of the mains adapter, bench 1."""
+"""Logs of the mains adapter, bench 1: its steady test."""
 
 from __future__ import annotations
 
 from collections.abc import Sequence
-from datetime import datetime, timedelta, timezone
-
-import numpy as np
-import pandas as pd
+from datetime import timedelta, timezone
 
 from workshop.dialects import Column, Dialect, text_log
 from workshop.logfile import LogFile, at, sweep
-from workshop.overload import run_overload, run_winding
 from workshop.products import Product
 from workshop.sequence import Step, run_sequence
 from workshop.units import (
     ADAPTER,
-    ADAPTER_LIMITER,
-    ADAPTER_WINDING,
     BENCH_1,
     BENCH_4,
     with_port,
@@ -37,8 +31,8 @@ def adapter_steps(seconds: float, loads: Sequence[float] = ADAPTER_LOADS) -> lis
     return sweep(ADAPTER, loads, 230.0, seconds) + lines
 
 
-_A17_START = at(2026, 5, 4, 9, 10, SUMMER)
-_A17_NOTES = ("# workshop: Tarnbeck Bench Works", "# serial: A-17", "# operator: J. Q.", "# bench: 1")
+A17_START = at(2026, 5, 4, 9, 10, SUMMER)
+A17_NOTES = ("# workshop: Tarnbeck Bench Works", "# serial: A-17", "# operator: J. Q.", "# bench: 1")
 
 
 def a17_steady() -> LogFile:
@@ -58,73 +52,9 @@ def a17_steady() -> LogFile:
         Column("temperature case", "T_case (°C)", decimals=2),
         Column("temperature core", "T_core (°C)", decimals=2),
     ]
-    notes = (*_A17_NOTES, "# warm-up: 30 min at full load before the first row")
-    data = text_log(run.samples, columns, dialect=Dialect(above=notes), start=_A17_START)
+    notes = (*A17_NOTES, "# warm-up: 30 min at full load before the first row")
+    data = text_log(run.samples, columns, dialect=Dialect(above=notes), start=A17_START)
     return LogFile(data, ADAPTER, BENCH_1, run)
-
-
-def a17_overcurrent() -> LogFile:
-    """The same unit swept into hiccup by a resistive load, and back."""
-    loads = (12.0, 9.6, 9.0, 8.6, 8.2, 7.9, 7.8, 7.7, 7.4, 6.6, 5.0, 3.0, 1.2, 0.3, 9.6, 9.6)
-    samples = run_overload(ADAPTER, BENCH_1, ADAPTER_LIMITER, loads=loads, seconds=7.0, rate=10.0, seed=1702)
-    columns = [
-        Column("time", "timestamp"),
-        Column("load_mode", "load mode"),
-        Column("load_setting main", "load setting (ohm)", decimals=2),
-        Column("input_voltage", "Vin (V)", decimals=2),
-        Column("input_power", "Pin (W)", decimals=3),
-        Column("output_voltage main", "Vout (V)", decimals=3),
-        Column("output_current main", "Iout (A)", decimals=4),
-    ]
-    start = _A17_START + timedelta(minutes=20)
-    return LogFile(text_log(samples, columns, dialect=Dialect(above=_A17_NOTES), start=start), ADAPTER, BENCH_1)
-
-
-def a17_cold() -> LogFile:
-    """The winding's resistance before the soak, all at the temperature of the room."""
-    times = [float(t) for t in range(0, 60, 10)]
-    samples = run_winding(ADAPTER_WINDING, np.zeros_like, BENCH_1, times=times, seed=1703)
-    return LogFile(_winding_log(samples, _A17_START + timedelta(hours=21)), ADAPTER, BENCH_1)
-
-
-def a17_thermal() -> LogFile:
-    """Three hours at full load from cold, sampled every 30 s."""
-    steps = sweep(ADAPTER, [1.0], 230.0, 3 * 3600.0)
-    run = run_sequence(ADAPTER, BENCH_1, steps, rate=1 / 30, seed=1704, warm=False)
-    columns = [
-        Column("time", "timestamp"),
-        Column("input_voltage", "Vin (V)", decimals=2),
-        Column("input_power", "Pin (W)", decimals=3),
-        Column("output_voltage main", "Vout (V)", decimals=3),
-        Column("output_current main", "Iout (A)", decimals=4),
-        Column("ambient_temperature", "T_amb (°C)", decimals=2),
-        Column("temperature case", "T_case (°C)", decimals=2),
-        Column("temperature core", "T_core (°C)", decimals=2),
-    ]
-    start = _A17_START + timedelta(hours=21, minutes=5)
-    return LogFile(text_log(run.samples, columns, dialect=Dialect(above=_A17_NOTES), start=start), ADAPTER, BENCH_1)
-
-
-def a17_cooling() -> LogFile:
-    """The winding's resistance after the soak; time counts from switch-off."""
-    hot = ADAPTER.heat.rise(ADAPTER.loss({"main": 2.5}, 230.0), np.array([3 * 3600.0]), np.zeros(2))[0]
-
-    def falling(seconds: np.ndarray) -> np.ndarray:
-        return ADAPTER.heat.rise(0.0, seconds, hot)[:, 0]
-
-    times = [float(t) for t in range(12, 312, 10)]
-    samples = run_winding(ADAPTER_WINDING, falling, BENCH_1, times=times, seed=1705)
-    return LogFile(_winding_log(samples, _A17_START + timedelta(hours=24, minutes=5)), ADAPTER, BENCH_1)
-
-
-def _winding_log(samples: pd.DataFrame, start: datetime) -> bytes:
-    columns = [
-        Column("time", "time (s)"),
-        Column("winding_resistance", "winding resistance (mohm)", scale=1e3, decimals=2),
-        Column("ambient_temperature", "T_amb (°C)", decimals=2),
-    ]
-    notes = (*_A17_NOTES, f"# date: {start:%Y-%m-%d}")
-    return text_log(samples, columns, dialect=Dialect(clock="seconds", above=notes), start=start)
 
 
 def a18() -> LogFile:

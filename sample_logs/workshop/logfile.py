@@ -6,20 +6,25 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import UTC, datetime, timezone
 
+from workshop.overload import OverloadRun
 from workshop.products import Product
 from workshop.sequence import Bench, Run, Step
+from workshop.soak import SoakRun, WindingRun
 
 __all__ = ["LogFile", "at", "sweep"]
 
 
 @dataclass(frozen=True, slots=True)
 class LogFile:
-    """One file: its bytes, and where it shows a steady test, the product and the run behind it."""
+    """One file: its bytes, the product and the bench, and the truth behind each stage that it shows."""
 
     data: bytes
     product: Product
     bench: Bench
-    run: Run | None = None
+    run: Run | None = None  # steady
+    overload: OverloadRun | None = None
+    soak: SoakRun | None = None
+    winding: WindingRun | None = None  # cold, or cooling
 
 
 def sweep(product: Product, loads: Sequence[float], input_voltage: float, seconds: float) -> list[Step]:

@@ -38,9 +38,8 @@ class Port:
 class Network:
     """Heat from the core (winding and hot spot) to the case, and from the case to the ambient.
 
-    With rises x over the ambient and power P:
-    C1 x1' = P - (x1 - x2)/R1,  C2 x2' = (x1 - x2)/R1 - x2/R2. Solved exactly for constant P; a slow change of
-    the ambient is followed at once.
+    With rises x over the ambient, power P and an ambient that drifts by d [K/s]:
+    C1 (x1' + d) = P - (x1 - x2)/R1,  C2 (x2' + d) = (x1 - x2)/R1 - x2/R2. Solved exactly for constant P and d.
     """
 
     core_to_case: float  # R1 [K/W]
@@ -48,9 +47,11 @@ class Network:
     core_capacity: float  # C1 [J/K]
     case_capacity: float  # C2 [J/K]
 
-    def settled(self, power: float) -> Array:
-        """Rises of core and case after a long time. [K]"""
-        return np.array([power * (self.core_to_case + self.case_to_ambient), power * self.case_to_ambient])
+    def settled(self, power: float, *, drift: float = 0.0) -> Array:
+        """Rises of core and case after a long time, in an ambient that drifts [K/s]. [K]"""
+        from_core = power - self.core_capacity * drift  # what the ambient takes along stays in the bodies
+        case = self.case_to_ambient * (from_core - self.case_capacity * drift)
+        return np.array([case + self.core_to_case * from_core, case])
 
     def rates(self) -> tuple[float, float]:
         """The two decay rates, the slower one first. [1/s]"""
@@ -58,17 +59,18 @@ class Network:
         half, root = -(a + d) / 2, math.sqrt(((a - d) / 2) ** 2 + b * c)
         return half - root, half + root
 
-    def rise(self, power: float, seconds: Array, start: Array) -> Array:
+    def rise(self, power: float, seconds: Array, start: Array, *, drift: float = 0.0) -> Array:
         """Rises of core and case, shape (n, 2), after `seconds` at constant `power`, beginning at `start`. [K]
 
         exp(A t) = ((s2 exp(-s1 t) - s1 exp(-s2 t)) I + (exp(-s1 t) - exp(-s2 t)) A) / (s2 - s1)
         """
         slow, fast = self.rates()
         one, two = np.exp(-slow * seconds), np.exp(-fast * seconds)
-        away = start - self.settled(power)
+        settled = self.settled(power, drift=drift)
+        away = start - settled
         turned = np.array(self._matrix()) @ away
         moved = np.outer(fast * one - slow * two, away) + np.outer(one - two, turned)
-        return self.settled(power) + moved / (fast - slow)
+        return settled + moved / (fast - slow)
 
     def _matrix(self) -> tuple[tuple[float, float], tuple[float, float]]:
         c1, c2, r1, r2 = self.core_capacity, self.case_capacity, self.core_to_case, self.case_to_ambient

@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from workshop.instruments import Meter, MeterInUse
 from workshop.products import OperatingPoint, Product
 
-__all__ = ["Bench", "DwellTruth", "Run", "Step", "run_sequence"]
+__all__ = ["Bench", "DwellTruth", "Run", "Step", "run_sequence", "wander"]
 
 Array = NDArray[np.float64]
 SETTLING = 4.0  # the truth of a dwell leaves out as much of its beginning [s]
@@ -127,8 +127,8 @@ def _true_samples(
     random: np.random.Generator,
 ) -> pd.DataFrame:
     """What truly is at each sample of one step, the load's and the output's settling included."""
-    currents, wander = _currents(product, step), _wander(len(local), random)
-    table: dict[str, Array] = {"input_voltage": step.input_voltage * (1 + bench.supply_wander * wander)}
+    currents, wandering = _currents(product, step), wander(len(local), random)
+    table: dict[str, Array] = {"input_voltage": step.input_voltage * (1 + bench.supply_wander * wandering)}
     settling = np.exp(-local / 0.35)
     output_power = np.zeros(len(local))
     for name, port in product.outputs.items():
@@ -159,7 +159,7 @@ def _columns(product: Product, name: str, current: Array, volts: Array) -> dict[
     return {f"output_current {name}": current, f"output_voltage {name}": volts, f"ripple {name}": ripple}
 
 
-def _wander(n: int, random: np.random.Generator) -> Array:
+def wander(n: int, random: np.random.Generator) -> Array:
     """A slow wander of about unit size that sums to zero over the step, so that the step's truth stays closed."""
     phases = random.uniform(0, 2 * np.pi, 3)
     turns = np.arange(n) / max(n, 1)

@@ -1,4 +1,4 @@
-"""Logs of the bench supply, bench 2."""
+"""Logs of the bench supply, bench 2: a workbook, and steady tests."""
 
 from __future__ import annotations
 
@@ -10,9 +10,10 @@ import numpy as np
 import pandas as pd
 
 from workshop.dialects import Column, Dialect, cells, text_log
-from workshop.logfile import LogFile, at, sweep
+from workshop.logfile import LogFile, at
 from workshop.overload import run_overload
-from workshop.sequence import Step, run_sequence
+from workshop.sequence import run_sequence
+from workshop.supply_stages import bench_supply_steps, limiter_steps
 from workshop.units import (
     BENCH_2,
     BENCH_SUPPLY,
@@ -22,17 +23,10 @@ from workshop.units import (
 from workshop.workbook import Cell, workbook
 
 
-def bench_supply_steps(seconds: float) -> list[Step]:
-    """The bench supply's programme at 30 V: no load up to full load, then the input from 207 V to 253 V."""
-    lines = [step for volts in (207.0, 253.0) for step in sweep(BENCH_SUPPLY, [1.0], volts, seconds)]
-    return sweep(BENCH_SUPPLY, [0.0, 0.1, 0.25, 0.5, 0.75, 1.0], 230.0, seconds) + lines
-
-
 def b203() -> LogFile:
     """A workbook: the table off the corner, notes beside it, sheets as stages, date and time in the cells."""
     run = run_sequence(BENCH_SUPPLY, BENCH_2, bench_supply_steps(32.0), rate=2.0, seed=20301)
-    loads = (20.0, 12.0, 10.0, 9.6, 9.4, 9.2, 8.5, 7.4, 6.0, 4.5, 3.4, 2.2, 1.2, 0.6, 0.1, 10.0)
-    samples = run_overload(BENCH_SUPPLY, BENCH_2, BENCH_SUPPLY_LIMITER, loads=loads, seconds=5.0, rate=4.0, seed=20302)
+    swept = run_overload(BENCH_SUPPLY, BENCH_2, BENCH_SUPPLY_LIMITER, steps=limiter_steps(), rate=4.0, seed=20302)
     steady = [
         Column("time", "Timestamp"),
         Column("load_setting main", "I set [A]", decimals=2),
@@ -49,10 +43,10 @@ def b203() -> LogFile:
     sheets: dict[str, Sequence[Sequence[Cell]]] = {
         "about": [["Tarnbeck Bench Works"], ["Bench supply, final test"], ["Table sheets are named after their stage"]],
         "steady": _placed(_table(run.samples, steady, start), notes),
-        "overcurrent": _placed(_table(samples, overload, start + timedelta(minutes=12)), {}),
+        "overcurrent": _placed(_table(swept.samples, overload, start + timedelta(minutes=12)), {}),
     }
     data = workbook(sheets, author="Tarnbeck Bench Works", created=start)
-    return LogFile(data, BENCH_SUPPLY, BENCH_2, run)
+    return LogFile(data, BENCH_SUPPLY, BENCH_2, run, overload=swept)
 
 
 def _table(samples: pd.DataFrame, columns: Sequence[Column], start: datetime) -> list[list[Cell]]:

@@ -8,9 +8,10 @@ from __future__ import annotations
 from dataclasses import replace
 
 from workshop.instruments import Meter
-from workshop.overload import ConstantCurrent, Hiccup, Winding
+from workshop.overload import ConstantCurrent, Foldback, Hiccup
 from workshop.products import Network, Port, Product
 from workshop.sequence import Bench
+from workshop.soak import Winding
 
 __all__ = [
     "ADAPTER",
@@ -22,7 +23,10 @@ __all__ = [
     "BENCH_4",
     "BENCH_SUPPLY",
     "BENCH_SUPPLY_LIMITER",
+    "BLOCKED",
     "CONVERTER",
+    "CONVERTER_LIMITER",
+    "CONVERTER_WINDING",
     "TWO_OUTPUT",
     "with_port",
 ]
@@ -53,7 +57,7 @@ ADAPTER = Product(
     copper_line=0.6,
     power_factor=0.58,
 )
-ADAPTER_LIMITER = Hiccup(onset=3.08, burst=3.6, period=1.4, on=0.3)
+ADAPTER_LIMITER = Hiccup(onset=3.08, burst=3.6, period=0.83, on=0.17, rise=0.015)
 ADAPTER_WINDING = Winding(resistance=0.412)
 
 BENCH_SUPPLY = Product(
@@ -80,7 +84,10 @@ BENCH_SUPPLY = Product(
     copper_line=-0.4,
     power_factor=0.69,
 )
-BENCH_SUPPLY_LIMITER = ConstantCurrent(limit=3.21, slope=0.0012)
+BENCH_SUPPLY_LIMITER = ConstantCurrent(limit=3.21, slope=0.0012, rise=0.06)
+BLOCKED = Network(
+    core_to_case=0.9, case_to_ambient=1.65, core_capacity=420.0, case_capacity=1100.0
+)  # dust in its slots
 
 CONVERTER = Product(
     name="Pellmarsh D12-8",
@@ -105,6 +112,8 @@ CONVERTER = Product(
     core_line=0.7,
     copper_line=0.2,
 )
+CONVERTER_LIMITER = Foldback(knee=9.45, short=3.4, rise=0.04)
+CONVERTER_WINDING = Winding(resistance=0.0286)
 
 TWO_OUTPUT = Product(
     name="Skerrow M38",
@@ -202,6 +211,7 @@ BENCH_3 = Bench(
         "ripple": Meter(gain=0.03, offset=0.001, noise=0.0005, step=0.0001),
         "temperature": Meter(offset=1.5, noise=0.05, step=0.1),
         "ambient_temperature": Meter(offset=1.5, noise=0.04, step=0.1),
+        "winding_resistance": Meter(gain=0.001, offset=5e-6, noise=2e-6, step=1e-6),
     },
     ambient=24.3,
     supply_wander=0.0008,
