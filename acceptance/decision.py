@@ -174,7 +174,7 @@ def _judge_unstated(candidate: Candidate, estimate: Estimate, outcome: Outcome, 
     """A value without a known uncertainty: only the simple rule can judge it, and the finding says so."""
     missing = "uncertainty not stated: no accuracy is given for " + ", ".join(sorted(estimate.unstated))
     if decision.rule != "simple":
-        return Verdict(candidate, "not judged", f"{missing}; give it under instruments: (± for a lead resistance)")
+        return Verdict(candidate, "not judged", f"{missing}; give it under instruments:, or ± beside a lead resistance")
     inside = meets(estimate.nominal, outcome.low, outcome.high)
     distance = margin(estimate.nominal, outcome.low, outcome.high)
     return Verdict(candidate, "pass" if inside else "fail", missing, margin=distance)

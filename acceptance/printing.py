@@ -281,7 +281,7 @@ def column(
         if odd is not None or value is None:
             texts.append(odd or DASH)
         elif u is None or not 0 < u < math.inf:
-            zero = f" ± {_expanded_text(scale, value, u)}" if u is not None else ""
+            zero = f" ± {_expanded_text(scale, value, u)}" if u else ""
             texts.append(scale.fixed(value, min(plain, usual) if sure else plain) + zero)
         else:
             own = _decimals(scale, value, u)
@@ -424,8 +424,8 @@ def _decimals_on_its_side(scale: Scale, value: float, decimals: int, limits: Ite
 def _expanded_text(scale: Scale, value: float | None, expanded: float | None, decimals: int | None = None) -> str:
     if expanded is None or not math.isfinite(expanded):
         return DASH if expanded is None else "not a number"
-    if expanded == 0:
-        return "0"
+    if expanded == 0:  # a bound, such as the end of a sampling interval
+        return DASH
     if decimals is None:
         decimals = _decimals(scale, value if value is not None and math.isfinite(value) else expanded, expanded)
     text = scale.fixed(expanded, decimals)

@@ -198,6 +198,11 @@ class Finding:
     deviations: list[Deviation] = field(default_factory=list)
     asked: str = ""  # the limit, where it is one in words: "hiccup"
 
+    @property
+    def in_per_cent(self) -> bool:
+        """Whether a ratio is spoken of in per cent; a power factor is not."""
+        return self.characteristic != "power_factor"
+
 
 @dataclass(frozen=True, slots=True)
 class Reading:

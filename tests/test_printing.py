@@ -46,7 +46,7 @@ def number(text: str) -> Decimal:
         (0.5, 0.0996, "K", "0.50 K ± 0.10 K"),  # U rounds up into another decade
         (3e-6, 2e-7, "A", "3.00 µA ± 0.20 µA"),
         (-12.034, 0.021, "V", "−12.034 V ± 0.021 V"),
-        (24.0, 0.0, "V", "24 V ± 0 V"),
+        (24.0, 0.0, "V", "24 V"),
         (24.0, None, "V", "24 V"),
         (-1e-9, 0.01, "V", "0 mV ± 10 mV"),  # no negative zero
         (90.1, 1234.0, "V", "0.1 kV ± 1.2 kV"),

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Sequence
+from difflib import get_close_matches
 
 import numpy as np
 from numpy.typing import NDArray
@@ -44,6 +45,8 @@ _STAGED = re.compile(
     r"(?:[_\-. ]+\d{1,3})?",
     re.IGNORECASE,
 )
+_NEAR = 0.8  # likeness of two words, as difflib counts it: two letters of nine that changed places
+_SLIPPABLE = 5  # letters; "old" and "warm" are words of their own
 _LISTED = 8  # values named in a doubt
 _SPANS = 200  # spans kept of a doubt without a bar
 
@@ -94,7 +97,19 @@ def stages_of(samples: Samples, *, in_name: str, in_note: str) -> tuple[RowStage
     fault = ""
     if noted and in_name and not of_sheet and noted != in_name:
         fault = f'{samples.file}: its name says the stage {in_name}, and its note says "{shown(in_note, 30)}"'
+    if origin == "none told" and (slip := _slip(samples.file)):
+        fault = f'{samples.file}: "{shown(slip[0], 30)}" in its name is nearly "{slip[1]}", and no stage'
     return default or "steady", origin, fault
+
+
+def _slip(name: str) -> tuple[str, str] | None:
+    """The word at the end of a file's name that misses a stage by a slip of the pen, and that stage's word."""
+    words = [word for word in re.split(r"[_\-. ]+", name.rpartition(".")[0].casefold()) if not word.isdigit()]
+    if not words or not words[-1].isalpha() or len(words[-1]) < _SLIPPABLE:
+        return None
+    alike = [word for word in _BY_WORD if word[0] == words[-1][0]]  # "ready" is no slip of "steady"
+    close = get_close_matches(words[-1], alike, n=1, cutoff=_NEAR)
+    return (words[-1], close[0]) if close else None
 
 
 def _of_cell(text: str) -> str:

@@ -71,7 +71,7 @@ def _average(requirement: Efficiency, points: Points) -> Outcome:
     limits, outputs = points.limits, _loaded_outputs(requirement, points.limits)
     loads = requirement.average or ()
     conditions = [condition_of(requirement.at, limits, outputs, load=load) for load in loads]
-    reason = "; ".join(missing_dwell(points, c) for c in conditions if not matching(points, c))
+    reason = "; ".join(dict.fromkeys(missing_dwell(points, c) for c in conditions if not matching(points, c)))
     every = [point for condition in conditions for point in matching(points, condition)]
     candidates: list[Candidate] = []
     deviations: list[str] = []

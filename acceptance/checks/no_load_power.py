@@ -21,7 +21,7 @@ from acceptance.checks.outcome import Candidate, CheckResult, Outcome, Used
 from acceptance.errors import MeasurementError
 from acceptance.limitfile.model import NoLoadPower
 from acceptance.points.point import Point, Points
-from acceptance.printing import duration
+from acceptance.printing import duration, quantity
 
 __all__ = ["NO_LOAD_FORMULA", "check_no_load_power", "no_load_candidate", "unseen_outputs", "whole_stretches"]
 
@@ -98,8 +98,9 @@ def no_load_candidate(point: Point, condition: Condition) -> Candidate:
         _see_to_output(point)
         power = point.input_power()
         if not power.nominal > 0:
+            reads = quantity(power.nominal, "W", digits=2)
             msg = (
-                f"the mean no-load power reads {power.nominal:.4g} W, not above zero: the meter does not resolve it; "
+                f"the mean no-load power reads {reads}, not above zero: the meter does not resolve it; "
                 "use a lower range, or a meter that does"
             )
             raise MeasurementError(msg)

@@ -36,7 +36,8 @@ def power_factor(point: Point) -> Estimate:
     else:
         missing = [key for key in ("input_power", "input_voltage", "input_current") if not point.has(key)]
         if missing:
-            msg = f"no power factor was logged, and no {' and no '.join(missing)}; record the power factor, or these"
+            instead = "record the power factor, or input power, voltage and current together"
+            msg = f"no power factor was logged, and no {' and no '.join(missing)} to work it out from; {instead}"
             raise MeasurementError(msg)
         power, voltage, current = (point.reading(k) for k in ("input_power", "input_voltage", "input_current"))
         if not (voltage.nominal > 0 and current.nominal > 0):

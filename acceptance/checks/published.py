@@ -6,7 +6,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 from acceptance.bench.log import channel_key
-from acceptance.checks.conditions import Condition, describe, matching, meets_input, missing_dwell
+from acceptance.checks.conditions import Condition, describe, load_tolerance, matching, meets_input, missing_dwell
 from acceptance.checks.efficiency import efficiency_candidate, least_favourable
 from acceptance.checks.figures import efficiency_figure, limit_line
 from acceptance.checks.method_conditions import dates, of_the_loads, of_the_whole
@@ -24,6 +24,7 @@ from acceptance.record import LimitLine
 
 __all__ = ["check_published"]
 
+AC_OUTPUT = "the output power is volts times amperes, which is true of an a.c. output with a resistive load only"
 ONE_UNIT = "one unit's result is not a represented value for a model"
 
 
@@ -55,18 +56,26 @@ class _Asking:
         """The points at a load of the set."""
         return matching(self.points, self.condition(load))
 
-    def missing(self, load: float) -> str:
-        """Why no point is at a load of the set."""
-        condition = self.condition(load)
-        near = f"; a load is met within ± {100 * (condition.load_tolerance or 0.0):g} % of rated current"
-        return f"{missing_dwell(self.points, condition)}{near}"
+    def missing(self, loads: Sequence[float]) -> str:
+        """Why no point is at these loads of the set; what is the same for all of them once."""
+        conditions = [self.condition(load) for load in loads]
+        told = dict.fromkeys(missing_dwell(self.points, condition) for condition in conditions)
+        if told and self.points.steady:
+            told[f"a load is met within ± {100 * (conditions[0].load_tolerance or 0.0):g} % of rated current"] = None
+        return "; ".join(told)
 
     def words(self, loads: str) -> str:
         """The condition in words."""
         scaled = f", currents scaled by {self.asked.derating:.6g}" if self.asked.derating < 1 else ""
         smallest = self.requirement.minimum_current
         least = f", {' and '.join(smallest)} not below its smallest current" if smallest else ""
-        return f"{loads}, input {self.published.test.input:g} V{scaled}{least}"
+        return f"{loads}, input {self.published.test.input:g} V{scaled}{least}{self._tolerance()}"
+
+    def _tolerance(self) -> str:
+        """How near a load must be, where that is not what the limits file asks of every load."""
+        limits = self.points.limits
+        own = self.published.test.tolerance(1.0, several=len(limits.ratings.outputs) > 1)
+        return "" if own == load_tolerance(1.0, limits) else f", each load within ± {100 * own:g} % of rated current"
 
 
 def check_published(requirements: Sequence[Published], points: Points) -> CheckResult:
@@ -147,7 +156,7 @@ def _average(asking: _Asking, limit: AskedLimit) -> _Formed:
     loads = asking.published.test.loads
     conditions = [asking.condition(load) for load in loads]
     found = [asking.found(load) for load in loads]
-    missing = [asking.missing(load) for load, there in zip(loads, found, strict=True) if not there]
+    missing = [load for load, there in zip(loads, found, strict=True) if not there]
     roles = [f"load {100 * load:g} %" for load in loads]
     choices = [] if missing else least_favourable(found, low=limit.low)
     candidates = [efficiency_candidate(choice, roles, conditions[0]) for choice in choices]
@@ -158,7 +167,7 @@ def _average(asking: _Asking, limit: AskedLimit) -> _Formed:
     return _Formed(
         asking.words(f"mean over load {', '.join(f'{100 * load:g} %' for load in loads)}"),
         candidates,
-        "; ".join(missing),
+        asking.missing(missing),
         "mean of the efficiencies at the loads, each measured",
         swept,
     )
@@ -172,7 +181,7 @@ def _at_load(asking: _Asking, limit: AskedLimit, load: float) -> _Formed:
         candidates = [efficiency_candidate([point], [describe(point)], condition) for point in found]
         formula = "mean(V × I) / mean(P), sample by sample"
     words = asking.words(f"load {100 * load:g} %")
-    return _Formed(words, candidates, asking.missing(load), formula)
+    return _Formed(words, candidates, asking.missing([load]), formula)
 
 
 def _no_load(asking: _Asking) -> _Formed:
@@ -205,13 +214,13 @@ def _note(asking: _Asking, limit: AskedLimit) -> str:
     """What the limit is, where it stands, and how well that is known."""
     published, asked = asking.published, asking.asked
     parts = [
-        f"{published.clause}: {limit.band.formula} for {limit.band}, P = {asked.power:g} W",
-        asked.reason,
+        asking.requirement.note,
+        f"{published.clause}: {limit.quantity.limit(limit.band)} for {limit.band}",
+        f"P, the rated output power, is {asked.power:g} W",
+        asked.reason if len(published.classes) > 1 else None,
         EVIDENCE[limit.band.evidence],
     ]
-    if asking.requirement.note:
-        parts.insert(0, asking.requirement.note)
-    return "; ".join(parts)
+    return "; ".join(filter(None, parts))
 
 
 def _deviations(asking: _Asking, limit: AskedLimit, formed: _Formed, *, is_first: bool) -> tuple[str, ...]:
@@ -223,9 +232,7 @@ def _deviations(asking: _Asking, limit: AskedLimit, formed: _Formed, *, is_first
     if limit.band.evidence == "unconfirmed":
         told.append(f"the limit is unconfirmed: compare it with {asking.published.clause} before relying on it")
     if "ac-ac" in asking.asked.class_name and limit.quantity.characteristic == "efficiency":
-        told.append(
-            "the output power is volts times amperes, which is true of an a.c. output with a resistive load only"
-        )
+        told.append(AC_OUTPUT)
     if is_first:
         told += [*_reported(asking), *dates(asking.published, asking.points), *_adaptive(asking), ONE_UNIT]
     return tuple(told)
@@ -280,9 +287,9 @@ def _weighted(requirement: Published, published: PublishedSet, points: Points) -
         candidates=tuple(efficiency_candidate(choice, roles, condition, weights=weights) for choice in choices),
         reason=_missing_power(points, condition, missing),
         output=requirement.output or "",
-        note="; ".join(filter(None, [requirement.note, published.document, EVIDENCE[published.evidence]])),
+        note="; ".join(filter(None, [requirement.note, published.document])),  # which says how well it is known
         formula=f"sum of efficiency × weight: {terms}",
-        deviations=(ONE_UNIT,),
+        deviations=(AC_OUTPUT, ONE_UNIT),  # an inverter's output is a.c.
     )
 
 

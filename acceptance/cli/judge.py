@@ -93,7 +93,9 @@ def _print_words(record: Record, record_path: Path, report_path: Path) -> None:
         click.echo(f"  {verdict_words(finding.verdict, 18)}  {_line(finding, names)}")
     for text in dict.fromkeys(doubt.text for doubt in record.health if doubt.bars):
         click.echo(harmless(f"  doubt: {text}"))
-    others = dict.fromkeys(doubt.kind for doubt in record.health if not doubt.bars)
+    others = list(dict.fromkeys(doubt.kind for doubt in record.health if not doubt.bars))
+    if differed := sum(bool(finding.deviations) for finding in record.findings):
+        others.append(f"how the test differed from what is asked, for {differed} finding{'s' if differed > 1 else ''}")
     if others:
         click.echo(harmless(f"  also told in the report: {', '.join(others)}"))
     unit = harmless(f"{record.unit.product}, serial {record.unit.serial}")
@@ -103,13 +105,15 @@ def _print_words(record: Record, record_path: Path, report_path: Path) -> None:
 
 
 def _line(finding: Finding, names: int) -> str:
-    from acceptance.printing import limit_range, printed
+    from acceptance.printing import DASH, limit_range, printed
 
     told = [harmless(finding.name).ljust(names), harmless(finding.condition)]
     if finding.value is not None:
-        texts = printed(finding.value, finding.expanded_uncertainty, finding.unit, low=finding.min, high=finding.max)
-        uncertainty = "" if finding.expanded_uncertainty is None else f" ± {texts.with_difference_unit(texts.expanded)}"
-        limit = harmless(finding.asked) or limit_range(finding.min, finding.max, finding.unit)
+        per_cent, low, high = finding.in_per_cent, finding.min, finding.max
+        u, unit = finding.expanded_uncertainty, finding.unit
+        texts = printed(finding.value, u, unit, low=low, high=high, per_cent=per_cent)
+        uncertainty = "" if texts.expanded == DASH else f" ± {texts.with_difference_unit(texts.expanded)}"
+        limit = harmless(finding.asked) or limit_range(low, high, unit, per_cent=per_cent)
         told.append(f"{harmless(texts.with_unit(texts.value))}{uncertainty} (limit {limit})")
     if finding.reason:
         told.append(harmless(finding.reason))

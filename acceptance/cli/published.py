@@ -144,9 +144,7 @@ def one_set(name: str, *, as_json: bool) -> int:
 
 
 def _cells(quantity: Quantity, band: Band) -> list[str]:
-    sign = "≤" if quantity.characteristic == "no_load_power" else "≥"
-    unit = f" {quantity.unit}" if quantity.unit else ""
-    return [quantity.key, str(band), f"{sign} {band.formula}{unit}", band.evidence]
+    return [quantity.key, str(band), quantity.limit(band), band.evidence]
 
 
 def _method(one: PublishedSet) -> Iterator[str]:

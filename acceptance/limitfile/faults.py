@@ -59,7 +59,8 @@ def nearest(word: str, known: Iterable[str]) -> str:
 
     if len(word) < 3:
         return ""
-    return next(iter(get_close_matches(word[:60], list(known), n=1, cutoff=0.6)), "")
+    folded = {one.casefold(): one for one in known}
+    return next((folded[one] for one in get_close_matches(word[:60].casefold(), folded, n=1, cutoff=0.6)), "")
 
 
 def unknown(word: str, known: Iterable[str]) -> str:

@@ -127,6 +127,11 @@ class Quantity:
         """SI unit; "" for a ratio."""
         return "W" if self.characteristic == "no_load_power" else ""
 
+    def limit(self, band: Band) -> str:
+        """A band's limit in words: "≤ 0.100 W"."""
+        sign, unit = ("≤", " W") if self.characteristic == "no_load_power" else ("≥", "")
+        return f"{sign} {band.formula}{unit}"
+
     def band(self, power: float) -> Band | None:
         """The band that a rated output power lies in; None where nothing is asked there."""
         return next((band for band in self.bands if band.holds(power)), None)

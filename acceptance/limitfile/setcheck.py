@@ -29,13 +29,13 @@ def check_set(source: Source, path: Path, entry: Published, plate: Plate) -> Non
 
 def _problems(published: PublishedSet, entry: Published, plate: Plate) -> Iterator[Problem]:
     if entry.output is not None and len(plate.outputs) > 1:
-        yield Problem("a published set is about all outputs together", "expected output left out", ("output",))
+        yield Problem("a published set is about all outputs together", "expected no output:", ("output",))
     if published.kind == "weights":
         yield from _weights(published, entry)
         return
     for key in ("min", "at"):
         if getattr(entry, key) is not None:
-            yield Problem(f"{published.name} brings its own limits and conditions", f"expected {key} left out", (key,))
+            yield Problem(f"{published.name} brings its own limits and conditions", f"expected no {key}:", (key,))
     yield from _minimum_current(published, entry, plate)
     if plate.input is not None and published.supply and plate.input.supply != published.supply:
         found = f"{published.name} is for an a.c. input, and the ratings say supply: {plate.input.supply}"

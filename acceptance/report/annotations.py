@@ -13,6 +13,7 @@ from typing import TypeGuard
 from acceptance.printing import duration, limit_range, quantity
 from acceptance.record import Axis, Figure, LimitLine, Mark, Region
 from acceptance.report.axes import LinearAxis
+from acceptance.report.fonts import printable, string_width
 from acceptance.report.pen import Pen
 from acceptance.report.placing import Box, Crowd, Label
 from acceptance.report.style import INK, MUTED, RED, Colour, Type
@@ -96,8 +97,12 @@ def draw_borders(pen: Pen, figure: Figure, plot: Plot) -> None:
 
 def _region_label(region: Region, plot: Plot) -> Label:
     box = _box(region, plot)
-    lines, is_cut = _broken(fold(region.label), _REGION, min(_WIDEST, max(46.0, box[2] - box[0] - 4)))
-    label = Label(lines, _REGION, box, (), f"region “{fold(region.label)}”", is_cut, is_region=True)
+    text = fold(region.label)
+    word = max(
+        string_width(printable(part), _REGION.size, _REGION.weight) for part in text.split() or [""]
+    )  # a name is not broken for a narrow region; it stands beside it
+    lines, is_cut = _broken(text, _REGION, min(_WIDEST, max(46.0, word, box[2] - box[0] - 4)))
+    label = Label(lines, _REGION, box, (), f"region “{text}”", is_cut, is_region=True)
     wide, high = label.size
     lefts = (box[0] + 2, box[2] - wide - 2, (box[0] + box[2] - wide) / 2)
     lows = (box[3] - high - 1, box[1] + 2)

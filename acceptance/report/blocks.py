@@ -63,7 +63,8 @@ class Text(Block):
 
     @property
     def least(self) -> float:
-        return min(len(self._lines), 2) * self._style.leading
+        lines = len(self._lines)
+        return (lines if lines <= 3 else 2) * self._style.leading  # three are not split: one would be left alone
 
     def split(self, room: float) -> Halves:
         fitting = int(room / self._style.leading + 1e-6)

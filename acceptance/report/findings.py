@@ -85,6 +85,7 @@ def _row(finding: Finding, record: Record) -> Row:
         low=finding.min,
         high=finding.max,
         margin=finding.margin,
+        per_cent=finding.in_per_cent,
     )
     kind = finding.characteristic.replace("_", " ")
     several = len(record.ratings.outputs) > 1 and finding.output not in finding.condition
@@ -147,7 +148,7 @@ def _remarks(record: Record) -> list[Block]:
     return [subheading("Remarks to the findings"), Table(columns, rows, head=False, above=1)]
 
 
-_LEADS = ("Reason", "Uncertainty", "Note of the limits file")
+_LEADS = ("Reason", "Uncertainty", "Note")
 
 
 def _remarks_to(finding: Finding) -> list[tuple[str, str]]:
@@ -193,7 +194,13 @@ def _other_columns(rows: Sequence[Row]) -> list[Column]:
 
 def _alternative(other: Alternative, finding: Finding, record: Record, number: int | None) -> list[str | Cell]:
     texts = printed(
-        other.value, other.expanded_uncertainty, finding.unit, low=finding.min, high=finding.max, margin=other.margin
+        other.value,
+        other.expanded_uncertainty,
+        finding.unit,
+        low=finding.min,
+        high=finding.max,
+        margin=other.margin,
+        per_cent=finding.in_per_cent,
     )
     place = fold(other.where) if number is None else str(number)
     at = f":  {minus_signs(fold(other.at))}" if other.at and number is None else ""

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections import Counter
 from collections.abc import Sequence
 
-from acceptance.printing import DASH, printed, probability, quantity
+from acceptance.printing import DASH, Printed, printed, probability, quantity
 from acceptance.printing import duration as printed_duration
 from acceptance.record import Finding, FindingVerdict, Hazard, Ratings, Record
 from acceptance.report.blocks import Beside, Block, Panel, Rule, Stack, Text
@@ -132,13 +132,14 @@ class _Verdict(Block):
     def __init__(self, record: Record) -> None:
         self._verdict = record.verdict
         width = WIDTH - self._SIDE - 26
-        self._words = Stack(
-            [
-                Text(SCOPE, _SCOPE, width=width),
-                Text(_summary(record.findings), BODY, width=width, above=3),
-                Text(_joint(record), BODY_MUTED, width=width, above=1),
-            ]
-        )
+        words = [
+            Text(SCOPE, _SCOPE, width=width),
+            Text(_summary(record.findings), BODY, width=width, above=3),
+            Text(_joint(record), BODY_MUTED, width=width, above=1),
+        ]
+        if differed := _differed(record.findings):
+            words.append(Text(differed, BODY, width=width, above=1))
+        self._words = Stack(words)
         self.height = max(64.0, self._words.height + 22)
 
     def draw(self, pen: Pen, x: float, y: float) -> None:
@@ -165,6 +166,15 @@ def _summary(findings: list[Finding]) -> str:
     counted = Counter(finding.verdict for finding in findings)
     total = f"{len(findings)} finding{'s' if len(findings) != 1 else ''}"
     return f"{total}: {', '.join(f'{counted[verdict]} {verdict}' for verdict in _ORDER if counted[verdict])}."
+
+
+def _differed(findings: list[Finding]) -> str:
+    """Where to read how the test differed from what was asked: a verdict is not to be read without it."""
+    count = sum(bool(finding.deviations) for finding in findings)
+    if not count:
+        return ""
+    of = f"{count} of the findings" if count > 1 else "one finding"
+    return f"For {of} the test differed, or may have, from what is asked: see Deviations and doubts about the data."
 
 
 def _joint(record: Record) -> str:
@@ -232,10 +242,21 @@ def _reason(finding: Finding) -> str:
         return fold(f"{finding.value}, limit {limit_text(finding)}: {reason}") if finding.asked else reason
     if finding.value is None:
         return reason
-    texts = printed(finding.value, finding.expanded_uncertainty, finding.unit, low=finding.min, high=finding.max)
+    texts = _printed(finding, finding.value)
     value = texts.with_unit(texts.value)
     value += f" ± {texts.with_difference_unit(texts.expanded)}" if texts.expanded != DASH else ""
     return fold(f"{value}, limit {limit_text(finding)}: {reason}")
+
+
+def _printed(finding: Finding, value: float | None) -> Printed:
+    return printed(
+        value,
+        finding.expanded_uncertainty,
+        finding.unit,
+        low=finding.min,
+        high=finding.max,
+        per_cent=finding.in_per_cent,
+    )
 
 
 def _shortened(text: str) -> str:
@@ -249,7 +270,7 @@ def limit_text(finding: Finding) -> str:
     if finding.asked.strip():
         return fold(finding.asked)
     numbers = finding.value if isinstance(finding.value, (int, float)) else None
-    texts = printed(numbers, finding.expanded_uncertainty, finding.unit, low=finding.min, high=finding.max)
+    texts = _printed(finding, numbers)
     low, high = texts.with_unit(texts.low), texts.with_unit(texts.high)
     if texts.low != DASH and texts.high != DASH:
         return f"{low} to {high}"

@@ -165,7 +165,7 @@ def _source(point: Point, outputs: Sequence[Output]) -> tuple[str, str]:
     found_by = fold(point.found_by)
     lead, mark, channel = found_by.rpartition("found in ")
     if mark and not lead:
-        found_by = mark + channel_name(channel, outputs)
+        found_by = "taken whole" if channel == "no channel" else mark + channel_name(channel, outputs)
     elif found_by:
         found_by = f"told apart by {found_by.replace('_', ' ')}"
     return fold(apart(point.where)[0]), ", ".join(part for part in (stage, found_by) if part)

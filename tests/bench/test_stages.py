@@ -177,3 +177,23 @@ def test_sample_logs_have_known_stages(path):
     log = read_logs([path], columns=columns)
 
     assert not [d for d in log.doubts if d.kind.startswith("stage")]
+
+
+@pytest.mark.parametrize("name", ["A-17_overlaod.csv", "A-17_stready.csv", "A-17-termal-2.csv", "colling.csv"])
+def test_slip_of_the_pen_in_a_file_name_bars_everything(tmp_path, name):
+    path = tmp_path / name
+    path.write_text("# serial: A-17\nVout (V),Iout (A)\n24.0,1.0\n23.9,2.0\n", encoding="utf-8")
+
+    log = read_logs([path])
+
+    doubt = next(doubt for doubt in log.doubts if doubt.kind == "stage unknown")
+    assert doubt.bars
+    assert "is nearly" in doubt.text
+
+
+@pytest.mark.parametrize("name", ["A-17.csv", "A-17_ready.csv", "A-17_old.csv", "A-17_warm.csv", "studio.csv"])
+def test_words_of_their_own_in_a_file_name_are_no_slip(tmp_path, name):
+    path = tmp_path / name
+    path.write_text("# serial: A-17\nVout (V),Iout (A)\n24.0,1.0\n23.9,2.0\n", encoding="utf-8")
+
+    assert not [doubt for doubt in read_logs([path]).doubts if doubt.kind == "stage unknown"]

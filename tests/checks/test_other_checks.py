@@ -87,13 +87,14 @@ def test_a_no_load_stretch_that_a_spike_cut_in_two_is_one_stretch():
     assert candidate.used[0].point.readings == 100
 
 
-@pytest.mark.parametrize("power", [0.0, -0.01])
-def test_a_no_load_power_that_the_meter_does_not_resolve_is_not_judged(power):
+@pytest.mark.parametrize(("power", "printed"), [(0.0, "0 W"), (-0.01, "−10 mW"), (-4.7e-5, "−47 µW")])
+def test_a_no_load_power_that_the_meter_does_not_resolve_is_not_judged(power, printed):
     outcome, limits = outcome_of(check_no_load_power, STANDBY, [{**adapter(0.0), "input_power": power}])
 
     decided = decide(outcome, limits.decision)
     assert decided.verdict == "not judged"
     assert "does not resolve" in decided.reason
+    assert f"reads {printed}, not above zero" in decided.reason
 
 
 @pytest.mark.parametrize(("current", "met"), [(0.0, True), (0.0079, True), (-0.0079, True), (0.0085, False)])

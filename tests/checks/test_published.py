@@ -85,6 +85,11 @@ def test_level_vi_gives_its_findings():
     assert average.outcome.condition == "mean over load 100 %, 75 %, 50 %, 25 %, input 115 V"
     assert no_load.by.candidate.estimate.nominal == pytest.approx(0.08, rel=1e-12)
     assert (no_load.outcome.high, no_load.verdict, no_load.outcome.unit) == (0.1, "pass", "W")
+    where, formula = "10 CFR 430.32(w)(1)(ii)", "≥ 0.071 lnP − 0.0014 P + 0.67"
+    assert average.outcome.note.startswith(
+        f"{where}: {formula} for 1 W < P ≤ 49 W; P, the rated output power, is 24 W; "
+    )
+    assert no_load.outcome.note.startswith(f"{where}: ≤ 0.100 W for P ≤ 49 W; P, the rated output power, is 24 W; ")
 
 
 @pytest.mark.parametrize(("eta", "verdict"), [(0.87, "pass"), (0.8623, "fail"), (0.861, "fail"), (0.85, "fail")])
@@ -210,6 +215,16 @@ def test_a_load_that_was_not_run_is_not_averaged_away(lost):
     assert f"no dwell at load {100 * LOADS[lost]:g} %" in average.reason
 
 
+def test_a_reason_that_is_the_same_for_every_load_is_told_once():
+    """No load at all; and two loads missing, with how near one must be."""
+    none = judged("set: us-eps-level-vi", [reading(0.0, 1)])["eps.average_efficiency"].reason
+    two_missing = judged("set: us-eps-level-vi", [reading(load, 0.88) for load in (1.0, 0.5, 0.0)])
+    reason = two_missing["eps.average_efficiency"].reason
+
+    assert none.count("a load is met within ± 2 % of rated current") == 1
+    assert [reason.count(words) for words in ("load 75 %", "load 25 %", "a load is met within")] == [1, 1, 1]
+
+
 def test_of_two_dwells_at_a_load_the_worse_one_counts():
     found = judged("set: us-eps-level-vi", [*sweep(0.90), reading(1.0, 0.70)])
 
@@ -247,6 +262,7 @@ def test_several_outputs_are_of_multiple_voltage():
 
     assert average.outcome.low == printed("0.83577")
     assert "multiple voltage: outputs of 5 and 12 V" in average.outcome.note
+    assert average.outcome.condition.endswith(", input 115 V, each load within ± 0.5 % of rated current")
     assert average.by.candidate.estimate.nominal == pytest.approx(0.86, rel=1e-12)
 
 
@@ -447,7 +463,7 @@ def test_a_logged_power_factor_goes_before_the_quotient():
 
 
 @pytest.mark.parametrize(("change", "words"), [
-    ({"input_current": None}, "no power factor was logged, and no input_current; record"),
+    ({"input_current": None}, "no power factor was logged, and no input_current to work it out from; record"),
     ({"input_current": 0.0}, "no input current flows"),
     ({"input_current": 1.0}, "cannot be"),
     ({"power_factor": 1.2}, "a power factor of 1.2 cannot be"),
@@ -478,6 +494,9 @@ def test_weighted_efficiency_is_the_weighted_sum(name, value):
     decided = found["eps.weighted_efficiency"]
     assert decided.by.candidate.estimate.nominal == printed(value)
     assert (decided.verdict, decided.outcome.low) == ("pass", 0.95)
+    assert "no edition of a standard was read" in decided.outcome.note
+    assert "legal text" not in decided.outcome.note
+    assert "a.c. output with a resistive load only" in told(decided)  # volts times amperes are no watts
 
 
 def test_weighted_loads_are_shares_of_the_power():

@@ -58,6 +58,16 @@ def test_the_exit_status_is_the_verdict(bench, minimum, power, verdict, status):
     assert f"{verdict} (performance limits only; no safety approval)" in ran.out
 
 
+def test_what_differed_from_what_is_asked_is_told_beside_the_verdict(bench, tmp_path):
+    """One row a condition: single readings, said with the finding in the report."""
+    ran = bench()
+
+    record = json.loads((tmp_path / "K-1.record.json").read_text(encoding="utf-8"))
+    assert record["findings"][0]["deviations"]
+    assert "also told in the report: " in ran.out
+    assert "how the test differed from what is asked, for 1 finding\n" in ran.out
+
+
 def test_record_and_report_are_written_and_named(bench, tmp_path):
     ran = bench("--out", "done", "--json")
 

@@ -251,6 +251,14 @@ def test_region_lies_between_its_edges(lines):
     assert any(s == pytest.approx(edges[1]) for s in borders)
 
 
+@pytest.mark.parametrize("name", ["limiter.recovery", "limiter.short_circuit"])
+def test_a_name_is_not_broken_for_a_narrow_region(name, lines):
+    """It stands beside a region that is too narrow for it."""
+    drawn(lines, regions=[Region(name, 1.95, 2.0, 0.5, 1.0)])
+
+    assert name in [text for _, _, text in lines.texts]
+
+
 def test_region_without_edges_fills_the_plot(lines):
     """Null means the edge of the plot, and such an edge has no line of its own."""
     drawn(lines, regions=[Region("", None, None, 0.5, None)])

@@ -112,6 +112,19 @@ def test_heading_is_not_left_alone_at_the_foot():
     assert len(pages[1]) == 2
 
 
+@pytest.mark.parametrize("free", range(1, 8))
+@pytest.mark.parametrize("count", range(1, 7))
+def test_heading_never_ends_a_page_however_long_what_it_heads(count, free):
+    """A paragraph of three lines cannot be split, and takes its heading with it."""
+    filler = Stack([Text("line", BODY) for _ in range(int(ROOM / BODY.leading) - free)])
+    headed = Text(" ".join(["word"] * count), BODY, width=20.0)
+
+    pages = paginate([filler, heading("Next"), headed], ROOM)
+
+    assert headed.height == count * BODY.leading
+    assert not any(page[-1].block.keep_next for page in pages)
+
+
 def test_stack_kept_together_moves_whole():
     """It is not split while it fits on a page, and is when it cannot."""
     filler = Stack([Text("line", BODY) for _ in range(40)])

@@ -187,6 +187,19 @@ def test_report_puts_the_deciding_reasons_on_the_first_page():
             assert bare(finding.reason) in first
 
 
+def test_front_points_to_how_the_test_differed():
+    """With the number of findings, and not where nothing differed."""
+    record = make("typical")
+    plain = replace(record, findings=[replace(finding, deviations=[]) for finding in record.findings])
+    odd = replace(plain.findings[0], deviations=[Deviation("run in CR mode"), Deviation("no warm-up")])
+    two = replace(plain, findings=[odd, replace(odd, name="other"), *plain.findings[1:]])
+
+    firsts = [" ".join(reader(one).pages[0].extract_text().split()) for one in (plain, two)]
+
+    assert "from what is asked" not in firsts[0]
+    assert "For 2 of the findings the test differed, or may have, from what is asked: see Deviations" in firsts[1]
+
+
 def test_report_shows_every_kind_of_finding():
     """Words for all five verdicts, a text as a value, and a value without uncertainty."""
     text = text_of(make("every_verdict"))
@@ -282,7 +295,7 @@ def test_findings_with_the_same_remark_share_it():
     text = text_of(replace(record, findings=[*findings, *record.findings[2:]]))
 
     assert text.count("data sheet") == 1
-    assert "eff-50, eff-avg Note of the limits file data sheet" in text
+    assert "eff-50, eff-avg Note data sheet" in text
 
 
 def test_front_says_value_and_limit_of_what_failed_and_groups_what_is_alike():
@@ -687,3 +700,31 @@ def test_write_report_takes_the_place_of_a_report_only(tmp_path):
     assert (
         write_report(record, tmp_path / "r.pdf").read_bytes() == write_report(record, tmp_path / "r.pdf").read_bytes()
     )
+
+
+def test_power_factor_is_printed_as_a_number_not_in_per_cent():
+    """0.985 against 0.9, as the trade writes it."""
+    of_power = replace(
+        records.finding("eps.power_factor", 1.0, 0.9),
+        characteristic="power_factor",
+        value=0.985,
+        expanded_uncertainty=0.0031,
+    )
+
+    text = text_of(replace(make("typical"), findings=[of_power]))
+
+    assert "0.9850" in text
+    assert "≥ 0.9 " in text
+    assert "98.5" not in text
+
+
+def test_value_without_uncertainty_of_its_own_is_printed_as_it_is():
+    """The end of a sampling interval is a bound: no ± 0."""
+    recovery = replace(
+        records.finding("ocp.recovery", 1.0, 0.9), value=0.4, unit="s", min=None, max=3.0, expanded_uncertainty=0.0
+    )
+
+    text = text_of(replace(make("typical"), findings=[recovery]))
+
+    assert "0.4 s" in text
+    assert "0.40" not in text
