@@ -17,7 +17,7 @@ from acceptance.printing import duration
 from acceptance.thermal.soak import Soak, blocks_starts, calm, means_of, thermal_stretches
 from acceptance.thermal.warming import WINDOW
 
-__all__ = ["Found", "soaks_at"]
+__all__ = ["Found", "is_same_level", "soaks_at"]
 
 Floats = NDArray[np.float64]
 Mask = NDArray[np.bool_]
@@ -26,6 +26,7 @@ _LEAD_IN = 300.0  # while the load is being set nothing is asked of it [s]
 _LEVELS = 8  # that one stretch may hold under `any`
 _IDLE = 0.005  # of rated current: no load
 _INPUT = 0.01
+_FED, _DOWN = 0.5, 0.5  # of the rated voltages: an input that is there, an output that is not
 _BRIDGED = 10  # blocks without a reading of load or input, to either side
 
 
@@ -78,8 +79,32 @@ def soaks_at(points: Points, condition: Condition) -> Found:
         seen += [told] if told else []
     if soaks:
         return Found(tuple(soaks))
-    nearest = f"; {seen[0]}" if seen else ""
+    nearest = f"; {seen[0]}: run it as asked, and record the soak again" if seen else ""
     return Found((), f"no soak at {condition or 'any condition'}{nearest}")
+
+
+def is_same_level(first: Soak, second: Soak) -> bool:
+    """Whether two soaks were run at one load of every output and at one input, within the tolerances of both."""
+    limits = first.parts[0].limits
+    widths = {
+        channel_key("output_current", name): 2 * load_tolerance(1.0, limits) * rated.current
+        for name, rated in limits.ratings.outputs.items()
+    }
+    share = limits.decision.tolerance.input
+    widths["input_voltage"] = 2 * (_INPUT if share is None else share) * limits.ratings.input.voltage
+    for key, width in widths.items():
+        levels = [_level(soak, key) for soak in (first, second)]
+        if np.isfinite(levels).any() and not abs(levels[0] - levels[1]) <= width:
+            return False
+    return True
+
+
+def _level(soak: Soak, key: str) -> float:
+    """The middle reading of a channel, or what was stated of it; NaN where it is not known."""
+    if soak.has(key):
+        samples = soak.samples(key)
+        return float(np.nanmedian(samples)) if np.isfinite(samples).any() else np.nan
+    return soak.parts[0].log.stated.get(key, np.nan)
 
 
 def _dwells(points: Points, condition: Condition) -> Found:
@@ -106,7 +131,8 @@ def _runs_in(stretch: Soak, condition: Condition) -> tuple[list[Soak], str]:
     asked = _asked(stretch, condition, starts)
     missing = [one.word for one in asked if not np.isfinite(one.levels).any()]
     if missing:
-        fault = f"{' and '.join(missing)} was not logged in the soak ({stretch.where}); record it beside the probes"
+        told = f"{' and '.join(missing)} {'were' if len(missing) > 1 else 'was'} not logged in the soak"
+        fault = f"{told} ({stretch.where}); record {'them' if len(missing) > 1 else 'it'} beside the probes"
         return [replace(stretch, fault=fault)], ""
     if not asked:
         return [replace(stretch, condition=_described(asked))], ""
@@ -115,6 +141,8 @@ def _runs_in(stretch: Soak, condition: Condition) -> tuple[list[Soak], str]:
         inside = np.all([one.near(target) for one, target in zip(asked, targets, strict=True)], axis=0)
         found += _soaks(stretch, asked, inside, starts)
     told = ", ".join(one.shown(float(np.nanmedian(one.levels))) for one in asked)
+    # between two levels lies the block in which the load was set
+    found = [soak for soak in found if soak.fault or soak.lasts >= _LEAD_IN] or found
     return found, f"{stretch.where} was run at {told}"
 
 
@@ -212,8 +240,29 @@ def _soaks(stretch: Soak, asked: Sequence[_Asked], inside: Mask, starts: NDArray
         first, stop = int(starts[group[0][0]]), int(ends[group[-1][1]])
         soak = replace(stretch.cut(first, stop), condition=_described(asked, slice(group[-1][0], group[-1][1])))
         fault = _left(stretch, asked, group, starts) if len(group) > 1 else ""
-        found.append(replace(soak, fault=fault))
+        found.append(replace(soak, fault=fault, ended=_went_off(stretch, stop)))
     return found
+
+
+def _went_off(stretch: Soak, stop: int) -> str:
+    """Why the unit seems to have gone off by itself at the end of a soak: no output, with its input still there."""
+    after = slice(stop, int(np.searchsorted(stretch.time, stretch.time[min(stop, stretch.time.size - 1)] + _LEAD_IN)))
+    ratings = stretch.parts[0].limits.ratings
+    outputs = {channel_key("output_voltage", name): rated.voltage for name, rated in ratings.outputs.items()}
+    there = stretch.has("input_voltage") and all(stretch.has(key) for key in outputs)
+    if not there or after.stop - after.start < 1:
+        return ""
+    levels = {key: stretch.samples(key)[after] for key in ("input_voltage", *outputs)}
+    if not all(np.isfinite(samples).any() for samples in levels.values()):
+        return ""
+    is_fed = float(np.nanmedian(levels["input_voltage"])) > _FED * ratings.input.voltage
+    down = [key for key, rated in outputs.items() if abs(float(np.nanmedian(levels[key]))) < _DOWN * abs(rated)]
+    if not is_fed or len(down) < len(outputs):
+        return ""
+    return (
+        f"the output went down at {stretch.place(stop)} with the input still there, as when the unit protects itself "
+        "from heat; see why, and record the soak again (if it was switched off by hand, leave out the rows from there)"
+    )
 
 
 def _left(stretch: Soak, asked: Sequence[_Asked], group: Sequence[tuple[int, int]], starts: NDArray[np.intp]) -> str:

@@ -8,7 +8,7 @@ from typing import Literal
 
 from acceptance.checks.conditions import Condition, condition_of, output_of
 from acceptance.checks.outcome import Candidate, CheckResult, Outcome
-from acceptance.checks.soaks import Found, soaks_at
+from acceptance.checks.soaks import Found, is_same_level, soaks_at
 from acceptance.checks.temperature_figures import cooling_figure, soak_figure
 from acceptance.checks.warm import Warm, probe_key, warm_probe
 from acceptance.checks.winding import Cooling, warm_winding, winding_key
@@ -22,6 +22,8 @@ from acceptance.thermal.soak import Soak
 __all__ = ["check_temperature", "check_temperature_rise"]
 
 _COOLEST_RATED = 25.0  # the rated ambient counts as at least this (IEC 60950-1, 1.4.12.2, from memory) [°C]
+
+_COOLER = 2.0  # than rated: the report says so [K]
 
 Asked = TemperatureRise | Temperature
 Known = Literal["value", "at least", "at most"]
@@ -100,7 +102,11 @@ def _temperature_outcome(
         output=requirement.output or "",
         note=requirement.note or "",
         formula=_formula(requirement),
-        deviations=(*_of_class(known, requirement), *_deviations(found, judged)),
+        deviations=(
+            *_of_class(known, requirement),
+            *_cooler_room(requirement, points, judged),
+            *_deviations(found, judged),
+        ),
     )
 
 
@@ -126,6 +132,16 @@ def _of_class(known: InsulationClass | None, requirement: Temperature) -> tuple[
         "memory), which is not taken off here"
     )
     return known.source, probe
+
+
+def _cooler_room(requirement: Temperature, points: Points, judged: Sequence[_Judged]) -> tuple[str, ...]:
+    """That a temperature as measured says nothing of the highest rated ambient."""
+    rated = points.limits.ratings.ambient
+    rooms = [one.warm.ambient.nominal for one in judged if one.warm is not None and one.warm.ambient is not None]
+    if requirement.adjust != "none" or rated is None or not rooms or max(rooms) > rated - _COOLER:
+        return ()
+    told = f"as measured, in an ambient of {max(rooms):.1f} °C; in the highest rated one, {rated:g} °C, it would be"
+    return (f"{told} warmer by about their difference (adjust: rated ambient reckons with it)",)
 
 
 def _deviations(found: Found, judged: Sequence[_Judged]) -> tuple[str, ...]:
@@ -173,13 +189,13 @@ def _known(warm: Warm, estimate: Estimate, requirement: Asked) -> tuple[Known, s
     if warm.settling.began_warm and (warm.bound_reason or (limit is not None and estimate.nominal > limit)):
         # heat from before the soak tells of another condition, neither for the unit nor against it
         reason = (
-            f"the soak began warmer than it ends (a rise of {warm.settling.reached:.4g} K at first): what was reached "
+            f"the soak began warmer than it ends (a rise of {warm.settling.reached:.1f} K at first): what was reached "
             "came from before it; let the unit cool down, and record the soak from its beginning"
         )
         return "at most", reason
     if warm.bound_reason:
         unit = "K" if isinstance(requirement, TemperatureRise) else "°C"
-        return "at least", f"{warm.bound_reason} (reached: {estimate.nominal:.4g} {unit})"
+        return "at least", f"{warm.bound_reason} (so far {estimate.nominal:.1f} {unit})"
     return "value", ""
 
 
@@ -199,19 +215,19 @@ def _value(warm: Warm, requirement: Asked, points: Points) -> Estimate:
 
 
 def _without_cut_short(judged: Sequence[_Judged]) -> list[_Judged]:
-    """Without soaks that were cut short, where another one at the same condition settled above what they reached."""
-    settled = [one.candidate for one in judged if one.candidate.known == "value" and one.candidate.estimate is not None]
-    kept = []
-    for one in judged:
-        mine = one.candidate
-        higher = [
-            other
-            for other in settled
-            if mine.known == "at least" and mine.estimate is not None and _is_higher(other, mine.estimate)
-        ]
-        if not higher:
-            kept.append(one)
-    return kept
+    """Without soaks that were cut short, where another one at the same load and input settled above what they reached.
+
+    Under `any` what settled at one load tells nothing of another.
+    """
+    settled = [one for one in judged if one.candidate.known == "value" and one.candidate.estimate is not None]
+    return [one for one in judged if not any(_supersedes(other, one) for other in settled)]
+
+
+def _supersedes(other: _Judged, one: _Judged) -> bool:
+    mine = one.candidate
+    if mine.known != "at least" or mine.estimate is None or not is_same_level(other.soak, one.soak):
+        return False
+    return _is_higher(other.candidate, mine.estimate)
 
 
 def _is_higher(other: Candidate, estimate: Estimate) -> bool:

@@ -16,6 +16,7 @@ from acceptance.points.point import RESOLUTION_COVERS, Estimate, Point
 from acceptance.points.propagation import Source, Value, of_source
 from acceptance.printing import duration
 from acceptance.thermal.probes import probe_readings, see_to_contact, step_of
+from acceptance.thermal.rooms import ambient_doubt, see_to_room_level
 from acceptance.thermal.settling import Settling, settling_of
 from acceptance.thermal.soak import Soak
 from acceptance.thermal.warming import WINDOW, Warming, blocks_of
@@ -26,6 +27,7 @@ __all__ = ["AMBIENT", "Warm", "ambient_of", "probe_key", "probe_warming", "warm_
 Floats = NDArray[np.float64]
 
 AMBIENT = "ambient_temperature"
+_LEAST_TOLD = 0.01  # [K]
 _SHOWN = 0.5  # u of the logarithm of a time constant: less well known, it is none
 
 
@@ -108,7 +110,7 @@ def warm_probe(soak: Soak, key: str, *, settled: Rate, absolute: bool = False) -
         _ambient(part, soak, ambient, steps[1]),
         settling,
         warming,
-        _bound(settling, settled),
+        soak.ended or _bound(settling) or ("" if absolute else ambient_doubt(warming)),
         _told(settling, peak),
         notes,
     )
@@ -120,6 +122,8 @@ def probe_warming(soak: Soak, key: str) -> tuple[Warming, tuple[float, float], t
     readings = probe_readings(soak, key)
     ambient = ambient_of(soak)
     others = {name: soak.samples(name) for name in soak.parts[0].log.keys("temperature") if name != key}
+    rated = soak.parts[0].limits.ratings.ambient
+    see_to_room_level(soak, key, readings.values, ambient=ambient, rated=rated)
     see_to_contact(soak, key, readings.values, ambient=0.0 if ambient is None else ambient, others=others)
     log = soak.parts[0].log
     notes = []
@@ -228,11 +232,8 @@ def _rounding(part: Point, key: str, step: float) -> Value:
     return of_source(converter_step_uncertainty(step), Source(f"{key}: steps of its readings", "B"))
 
 
-def _bound(settling: Settling, settled: Rate) -> str:
-    if settling.settled:
-        return ""
-    least = f"{settled.difference:g} K in {settled.interval / 60:g} min"
-    return f"not settled: {settling.reason}; let it run on until it moves by less than {least}, and record all of it"
+def _bound(settling: Settling) -> str:
+    return "" if settling.settled else f"not settled: {settling.reason}"
 
 
 def _told(settling: Settling, peak: float | None) -> str:
@@ -242,8 +243,13 @@ def _told(settling: Settling, peak: float | None) -> str:
         return f"highest mean over {duration(WINDOW / 6)}, in a warmer room than at the end"
     if settling.overshot:
         return "the highest that it held, before it fell"
-    change = f"{(settling.slope.rate if settling.slope else 0.0) * WINDOW:.2g} K in the last {duration(WINDOW)}"
-    return f"moved {change}; mean over it, and {settling.to_come:.2g} K still to come{_taus(settling)}"
+    change = f"{_kelvins((settling.slope.rate if settling.slope else 0.0) * WINDOW)} in the last {duration(WINDOW)}"
+    return f"moved {change}; mean over it, and {_kelvins(settling.to_come)} still to come{_taus(settling)}"
+
+
+def _kelvins(difference: float) -> str:
+    """A small difference; what no thermometer reads is told as less than that."""
+    return f"{difference:.2g} K" if abs(difference) >= _LEAST_TOLD else f"less than {_LEAST_TOLD:g} K"
 
 
 def _taus(settling: Settling) -> str:

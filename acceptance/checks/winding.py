@@ -10,11 +10,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from acceptance.bench.log import channel_key
+from acceptance.checks.cold_winding import Cold, ambient_at, cold_winding
 from acceptance.checks.warm import AMBIENT, Warm, ambient_of, probe_warming
 from acceptance.errors import MeasurementError
 from acceptance.limitfile.model import Temperature, TemperatureRise
 from acceptance.points.point import Estimate, Point, Points
-from acceptance.points.propagation import Source, Value, of_source
+from acceptance.points.propagation import Source, Value, coverage_factor, of_source
 from acceptance.printing import duration
 from acceptance.thermal.resistance import (
     MATERIALS,
@@ -23,6 +24,7 @@ from acceptance.thermal.resistance import (
     temperature_by_resistance,
     to_switch_off,
 )
+from acceptance.thermal.rooms import ambient_doubt
 from acceptance.thermal.settling import Settling, settling_of
 from acceptance.thermal.soak import Soak, seconds_of, thermal_stretches
 from acceptance.thermal.warming import WINDOW, Warming, blocks_of
@@ -31,18 +33,10 @@ __all__ = ["Cooling", "warm_winding", "winding_key"]
 
 Floats = NDArray[np.float64]
 
-_STEADY_COLD = 0.5  # the cold winding may move by so much [K]
-_SAME_COLD = 2.0  # the probes may differ from the ambient by so much while cold [K]
 _LATEST = 120.0  # the first reading after switch-off [s]
+_OPEN, _OPEN_LEAST = 0.2, 5.0  # of the rise, and in K: so little known it is not told
+_COUNTS_ON = 3600.0  # a first reading so late is rather one of a time that counts on from the soak's start [s]
 _OVER_RANGE = 2.0  # a winding whose resistance doubles is 250 K warmer: it is another one, or another range
-
-
-@dataclass(frozen=True, slots=True)
-class Cold:
-    """The winding before the test."""
-
-    resistance: Estimate  # [ohm]
-    ambient: Estimate  # [°C]
 
 
 @dataclass(frozen=True, slots=True)
@@ -82,7 +76,7 @@ def warm_winding(soak: Soak, points: Points, requirement: TemperatureRise | Temp
         msg = f"{key} was not logged; measure it cold, and while the winding cools after switch-off"
         raise MeasurementError(msg)
     material = MATERIALS[requirement.material or "copper"]
-    cold = _cold(points, key, material)
+    cold = cold_winding(points, key, material)
     stretch = _cooling_of(soak, points, key)
     end = _end(soak)
     cooling = _cooled(stretch, key, cold, material, room=_room(stretch, end))
@@ -93,17 +87,19 @@ def warm_winding(soak: Soak, points: Points, requirement: TemperatureRise | Temp
         cold.ambient,
         Estimate(0.0, frozenset() if stretch.bench.is_stated(key) else frozenset({key})),
     )
-    unsettled = f"not settled ({watched}): {settling.reason}; let it run on, and record all of it"
+    unsettled = f"not settled ({watched}): {settling.reason}"
     late = "" if cooling.drawn is not None else _late(cooling.time)
+    absolute = isinstance(requirement, Temperature) and requirement.adjust == "none"
+    doubted = "" if absolute else ambient_doubt(warming)
     found = Warm(
         soak,
         temperature,
         end,
         settling,
         warming,
-        late or ("" if settling.settled else unsettled),
+        soak.ended or late or ("" if settling.settled else unsettled) or doubted,
         _told(cooling, cold, material),
-        _notes(material, watched),
+        _notes(points, key, material, watched),
     )
     return found, cooling
 
@@ -115,7 +111,22 @@ def _cooled(stretch: Point, key: str, cold: Cold, material: Material, *, room: f
         cold.resistance.nominal, readings, start=cold.ambient.nominal, constant=material.constant
     )
     soon = time[0] <= min(_LATEST, float(time[-1] - time[0]))
-    return Cooling(stretch.where, time, heated, room, to_switch_off(time, heated - room) if soon else None)
+    drawn = to_switch_off(time, heated - room) if soon else None
+    if drawn is not None:
+        _see_to_drawing(drawn, stretch)
+    return Cooling(stretch.where, time, heated, room, drawn)
+
+
+def _see_to_drawing(drawn: Extrapolation, stretch: Point) -> None:
+    """See to it that the readings tell what the winding had at switch-off."""
+    open_by = coverage_factor(0.95, drawn.degrees_of_freedom) * drawn.u
+    if open_by > max(_OPEN_LEAST, _OPEN * drawn.rise):
+        msg = (
+            f"the readings after switch-off ({stretch.where}) leave the rise open by {open_by:.2g} K, too far: see "
+            "whether a contact changed; take the first within 30 s and at least twenty within 5 min, with a meter that "
+            "shows a thousandth of the cold resistance"
+        )
+        raise MeasurementError(msg)
 
 
 def _temperature(cooling: Cooling, stretch: Point, key: str, cold: Cold, material: Material) -> Value:
@@ -137,84 +148,6 @@ def _temperature(cooling: Cooling, stretch: Point, key: str, cold: Cold, materia
 def _resistance_at(temperature: float, cold: Cold, material: Material) -> float:
     """[ohm]"""
     return cold.resistance.nominal * (material.constant + temperature) / (material.constant + cold.ambient.nominal)
-
-
-# --- cold -------------------------------------------------------------------------------------------------------------
-
-
-def _cold(points: Points, key: str, material: Material) -> Cold:
-    stretches = [s for s in points.stretches("cold") if s.has(key) and np.isfinite(s.samples(key)).any()]
-    if not stretches:
-        msg = f"there is no stage cold with {key}: measure the winding and the ambient before the unit is switched on"
-        raise MeasurementError(msg)
-    found = [_one_cold(stretch, key, material) for stretch in stretches]
-    values = [
-        one.resistance.nominal * (material.constant + 20) / (material.constant + one.ambient.nominal) for one in found
-    ]
-    spread = (max(values) / min(values) - 1) * (material.constant + 20)
-    if spread > 2 * _STEADY_COLD:
-        places = " and ".join(stretch.where for stretch in stretches)
-        msg = f"the cold resistances differ by {spread:.2g} K ({places}); leave in the one that belongs to this unit"
-        raise MeasurementError(msg)
-    return found[-1]
-
-
-def _one_cold(stretch: Point, key: str, material: Material) -> Cold:
-    stretch.require(key)
-    resistance = _reading(stretch, key)
-    ambient = _ambient_at(stretch)
-    if not resistance.nominal > 0:
-        msg = f"{key} reads {resistance.nominal:.4g} ohm while cold ({stretch.where}): not above zero"
-        raise MeasurementError(msg)
-    samples = stretch.samples(key)[np.isfinite(stretch.samples(key))]
-    if samples.size >= 4:
-        quarter = max(1, samples.size // 4)
-        change = float(samples[-quarter:].mean() - samples[:quarter].mean())
-        moved = change / resistance.nominal * (material.constant + ambient.nominal)
-        noise = 3 * float(samples.std()) * math.sqrt(2 / quarter) / resistance.nominal * (material.constant + 20)
-        if abs(moved) > max(_STEADY_COLD, noise if noise < 2 * _STEADY_COLD else 0.0):
-            msg = (
-                f"the winding was not at rest while cold: it moved by {moved:.2g} K ({stretch.where}); leave the unit "
-                "off until it has the temperature of the room, and measure it again"
-            )
-            raise MeasurementError(msg)
-    _see_to_probes_cold(stretch, ambient.nominal)
-    return Cold(resistance, ambient)
-
-
-def _see_to_probes_cold(stretch: Point, ambient: float) -> None:
-    for name in stretch.log.keys("temperature"):
-        samples = stretch.samples(name)
-        if np.isfinite(samples).any():
-            apart = float(np.nanmedian(samples)) - ambient
-            if abs(apart) > _SAME_COLD:
-                msg = (
-                    f"{name} stands {abs(apart):.2g} K {'above' if apart > 0 else 'below'} the ambient while cold "
-                    f"({stretch.where}): the winding did not have the room's temperature; leave the unit off for longer"
-                )
-                raise MeasurementError(msg)
-
-
-def _ambient_at(stretch: Point) -> Estimate:
-    """The ambient of a stretch, as logged or as stated."""
-    if stretch.has(AMBIENT) and np.isfinite(stretch.samples(AMBIENT)).any():
-        stretch.require(AMBIENT)
-        return _reading(stretch, AMBIENT)
-    if AMBIENT in stretch.log.stated:
-        unstated = frozenset() if stretch.bench.is_stated(AMBIENT) else frozenset({AMBIENT})
-        return Estimate(stretch.bench.stated(AMBIENT, stretch.log.stated[AMBIENT]), unstated)
-    msg = f"no ambient temperature was logged with the winding ({stretch.where}); record it beside the resistance"
-    raise MeasurementError(msg)
-
-
-def _reading(stretch: Point, key: str) -> Estimate:
-    """Mean of a channel over a stretch, with the errors of its instrument, its digits and its spread."""
-    spread = stretch.mean(key)
-    source = Source(f"spread of {key} while {stretch.dwell.stage}", "A", spread.degrees_of_freedom)
-    value = stretch.bench.correct(key, spread.mean) + stretch.rounding(key, spread.deviation or 0.0)
-    value = value + of_source(spread.standard_uncertainty or 0.0, source)
-    unstated = frozenset() if stretch.bench.is_stated(key) else frozenset({key})
-    return Estimate(value, unstated, single=spread.readings == 1)
 
 
 # --- cooling ----------------------------------------------------------------------------------------------------------
@@ -277,6 +210,11 @@ def _room(stretch: Point, end: Estimate) -> float:
 
 
 def _late(time: Floats) -> str:
+    if time[0] > _COUNTS_ON:
+        return (
+            f"the time of the cooling begins at {time[0]:.5g} s: log the seconds from switch-off, not those from the "
+            "soak's start, and the first reading within 30 s"
+        )
     return (
         f"the first reading after switch-off came after {duration(float(time[0]))}, too late to be drawn back from; "
         "take it within 30 s, and go on for some minutes"
@@ -290,7 +228,7 @@ def _end(soak: Soak) -> Estimate:
     """The ambient over the last part of the soak."""
     last = soak.cut(int(np.searchsorted(soak.time, soak.time[-1] - WINDOW)), soak.time.size).parts[-1]
     last.require("time", *([AMBIENT] if last.has(AMBIENT) else []))
-    return _ambient_at(last)
+    return ambient_at(last)
 
 
 def _soaked(
@@ -355,8 +293,17 @@ def _told(cooling: Cooling, cold: Cold, material: Material) -> str:
     return f"{resistances} at switch-off, drawn back by {drawn.drawn:.2g} K from {first} to {last} by {drawn.method}"
 
 
-def _notes(material: Material, where: str) -> tuple[str, ...]:
-    return (
+def _notes(points: Points, key: str, material: Material, where: str) -> tuple[str, ...]:
+    notes = (
         f"by change of resistance, the mean of the winding; constant {material.source}",
         f"that the soak had settled is told by {where}",
     )
+    cold = [s for s in points.stretches("cold") if s.has(key)]
+    probes = points.log.keys("temperature")
+    if any(s.has(name) and np.isfinite(s.samples(name)).any() for s in cold for name in probes):
+        return notes
+    unseen = (
+        "no probe was logged while cold: that the winding had the room's temperature then is not shown; each kelvin it "
+        "was warmer takes more than one kelvin from the rise"
+    )
+    return (*notes, unseen)

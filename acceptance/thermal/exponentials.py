@@ -129,7 +129,7 @@ def best_curve(time: Floats, values: Floats | Target, *, kind: Kind = "free", ch
     return two if ratio > needed else one
 
 
-def highest_end(time: Floats, values: Floats, curve: Curve, *, slowest: float) -> float:
+def highest_end(time: Floats, values: Floats, curve: Curve, *, slowest: float, inflation: float = 1.0) -> float:
     """How high a free curve may end, at two standard uncertainties, with a part as slow as `slowest` beside it.
 
     For each slow time constant from the curve's own upwards everything else is fitted anew; where that fits about
@@ -144,8 +144,11 @@ def highest_end(time: Floats, values: Floats, curve: Curve, *, slowest: float) -
         A free curve of one or two time constants.
     slowest
         The slowest part that is thought possible. [s]
+    inflation
+        Of variances, where the residuals wander more slowly than their autocorrelation shows.
     """
-    variance = curve.rss / max(1, values.size - 1 - 2 * len(curve.taus)) * curve.inflation
+    freedom = max(1, values.size - 1 - 2 * len(curve.taus))
+    variance = curve.rss / freedom * max(curve.inflation, inflation)
     end, quick = curve.level, curve.taus[0]
     for slow in np.geomspace(_NEXT * curve.slowest, max(2 * curve.slowest, slowest), _SLOW):
         # each from where the one before ended

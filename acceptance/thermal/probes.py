@@ -35,6 +35,8 @@ _STILL = 600.0  # [s]
 _STILL_READINGS = 10
 _OTHERS_MOVE = 5.0  # [K]
 _STEPS = 3.0  # of its display, that a probe ought to have moved by
+_MOVING = 6.0  # steps of its display: so far it had moved before it stood still
+_SEEN = 4.0  # steps: a move that would have been seen
 _NO_RISE = 1.0  # [K]
 _ROOM_LEAPS = 5.0  # that no room does so soon [K]
 
@@ -56,9 +58,17 @@ def step_of(log: BenchLog, key: str, values: Floats) -> float:
         return told
     steps = np.diff(levels)
     steps = steps[steps > 1e-9 * max(1.0, float(np.abs(levels).max()))]
-    seen = float(steps.min()) if steps.size else 0.0
+    seen = _common(steps, told) if steps.size else 0.0
     # digits that never change, such as the zeros of 23.000, tell of no finer step
     return max(told, seen) if levels.size > 2 or seen > told else told
+
+
+def _common(steps: Floats, told: float) -> float:
+    """The largest step that all differences are multiples of; the smallest of them where no digits tell."""
+    if not told > 0:
+        return float(steps.min())
+    counts = np.round(steps / told).astype(np.int64)
+    return max(told, told * float(np.gcd.reduce(counts)))
 
 
 def probe_readings(soak: Soak, key: str) -> Readings:
@@ -212,7 +222,8 @@ def _see_to_standstill(soak: Soak, key: str, values: Floats, *, others: Mapping[
     if lasts < _STILL or readings < _STILL_READINGS:
         return
     step = step_of(soak.parts[0].log, key, values)
-    why = _others_moved(values, run, others, step) or _left_its_curve(soak, values, run, step)
+    stopped = _stopped_at_once(values[known], readings, step)
+    why = _others_moved(values, run, others, step) or _left_its_curve(soak, values, run, step) or stopped
     if why:
         msg = (
             f"{key} stands still at {float(values[first]):.4g} °C for {duration(lasts)} from {soak.place(first)} on, "
@@ -233,6 +244,24 @@ def _others_moved(values: Floats, run: slice, others: Mapping[str, Floats], step
         expected = own * moved / whole if whole > 0 else 0.0
         if moved >= _OTHERS_MOVE and (expected >= max(_STEPS * step, 2.0) or (own == 0 and moved >= 2 * _OTHERS_MOVE)):
             return f"{name} moves by {moved:.3g} K"
+    return ""
+
+
+def _stopped_at_once(values: Floats, still: int, step: float) -> str:
+    """Whether the readings were moving until they stood still at once: what settles slows down first.
+
+    Each move is as much smaller than the one before it as that was than its own forerunner, or less so where there
+    are several time constants: the next one would have been seen.
+    """
+    last = values.size - still
+    width = 1
+    while 2 * width <= last and 3 * width <= still:
+        late = float(values[last] - values[last - width])
+        early = float(values[last - width] - values[last - 2 * width])
+        if abs(late) >= _MOVING * step:
+            next_one = abs(late) * min(1.0, late / early) if late * early > 0 else 0.0
+            return f"it had moved by {abs(late):.2g} K just before" if next_one >= _SEEN * step else ""
+        width *= 2
     return ""
 
 

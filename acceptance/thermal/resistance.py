@@ -26,6 +26,8 @@ Floats = NDArray[np.float64]
 _FEWEST = 3  # readings
 _ENOUGH = 5  # from which on a second time constant may be looked for
 _CHANCE = 0.05  # of taking two where there is one: a winding always has its core beside the room
+_LEAST_JUMP = 2.0  # [K]
+_JUMP = 6.0  # times the usual spread of the moves between readings
 _READ_OVER = 600.0  # readings later than this tell of the room, not of the winding [s]
 _LEAST_READ = 8  # readings that are looked at, however late
 
@@ -124,6 +126,7 @@ def to_switch_off(time: Floats, rises: Floats) -> Extrapolation:
             "the winding does not cool after switch-off; see which column holds its resistance, and which stage this is"
         )
         raise MeasurementError(msg)
+    _see_to_jumps(t, r)
     curve = best_curve(t, r, kind="to zero", chance=_CHANCE) if t.size >= _ENOUGH else None
     if curve is None:
         curve = _log_linear(t, r)
@@ -135,6 +138,32 @@ def to_switch_off(time: Floats, rises: Floats) -> Extrapolation:
     u = math.hypot(u_fit, other)
     method = "two exponentials" if k == 2 else "one exponential (straight in the logarithm)"
     return Extrapolation(rise, u, max(1.0, curve.effective_readings - 2 * k), method, curve, t, r)
+
+
+def _see_to_jumps(time: Floats, rises: Floats) -> None:
+    """A winding that is left alone only cools: a clear step up, or away from all others, is one of the contact."""
+    if time.size < _ENOUGH:
+        return
+    moves = np.diff(rises)
+    some = np.abs(moves[moves != 0])
+    # a display that shows whole kelvins moves by one of its steps, or two
+    step = float(some.min()) / 3 if some.size else 0.0
+    usual = max(1.4826 * float(np.median(np.abs(moves - np.median(moves)))), step)
+    up = moves > max(_LEAST_JUMP, _JUMP * usual)
+    # what falls fast at first falls more slowly from then on, so that a later fall larger than all before is none
+    down = np.zeros(moves.size, dtype=bool)
+    rates = moves / np.diff(time)
+    for at in range(2, moves.size):
+        down[at] = moves[at] < -max(_LEAST_JUMP, _JUMP * usual) and rates[at] < 2 * float(rates[:at].min())
+    jumps = np.flatnonzero(up | down)
+    if jumps.size:
+        at = int(jumps[0])
+        msg = (
+            f"the winding's temperature jumps by {float(moves[at]):+.2g} K between {time[at]:.4g} s and "
+            f"{time[at + 1]:.4g} s after switch-off, as no winding cools: a contact or a range of the meter changed; "
+            "clamp the leads before switch-off, on one range, and record the soak and its cooling again"
+        )
+        raise MeasurementError(msg)
 
 
 def _log_linear(time: Floats, rises: Floats) -> Curve:

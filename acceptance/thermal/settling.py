@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from acceptance.points.propagation import coverage_factor
 from acceptance.thermal.exponentials import Curve, best_curve, highest_end
-from acceptance.thermal.noise import Noise, local_noise, still_slope
+from acceptance.thermal.noise import Noise, local_noise, still_slope, wander_inflation
 from acceptance.thermal.warming import WINDOW, Lag, Warming, line_of, running_means
 
 __all__ = ["Settling", "Slope", "settling_of"]
@@ -27,6 +27,7 @@ _HOLE = 0.4  # of the last part: a longer stretch without a reading leaves its s
 # how far what is to come is believed, and how well it must be known, as shares of what has been reached
 _FARTHEST = 0.25
 _LOOSEST = 0.1
+_LOST = 0.5  # so little known, no curve of warming up fits at all
 _OVERSHOOT = 0.1  # of what the slope may move in the last part: a smaller one is none
 _CLEARLY = 3.0  # standard uncertainties
 _HORIZON = 16.0  # last parts: the slowest part that a unit is thought to hide, 8 h (our choice)
@@ -120,7 +121,7 @@ def _analysed(warming: Warming, criterion: _Criterion) -> Settling:
     last = warming.time >= warming.time[-1] - window * (1 + 1e-9)
     bare = Settling(
         settled=False,
-        reason=_lack(warming, last, window) or "there are fewer readings than a curve can be told from",
+        reason=_lack(warming, last, window) or f"there are too few readings to tell a curve from; {_MORE}",
         allowed=criterion.allowed,
         rise=float(rise[last].mean()),
         reached=float(means[best]),
@@ -146,17 +147,23 @@ def _u_reached(warming: Warming, criterion: _Criterion) -> float:
     return math.hypot(local_noise(warming.rise) / math.sqrt(count), math.hypot(*criterion.steps) / math.sqrt(12))
 
 
+_LONGER = "record it until it has settled"
+_MORE = "read it every few minutes until it has settled"
+
+
 def _lack(warming: Warming, last: NDArray[np.bool_], window: float) -> str:
     """Why no slope of the last part can be formed; "" where it can."""
     minutes = f"{window / 60:g} min"
     if warming.lasts < window * (1 - 0.001):
-        return f"the soak lasts {warming.lasts / 60:.3g} min, and its slope is that of the last {minutes}"
+        return f"the soak lasts {warming.lasts / 60:.3g} min, and its slope is that of the last {minutes}; {_LONGER}"
     times = warming.time[last]
     if times.size < _FEWEST:
-        return f"there are fewer than {_FEWEST} readings in the last {minutes}"
+        return (
+            f"there are fewer than {_FEWEST} readings in the last {minutes}; read it every few minutes, and {_LONGER}"
+        )
     hole = float(np.diff(np.concatenate(([warming.time[-1] - window], times))).max())
     if hole > _HOLE * window and hole > 1.5 * float(np.median(np.diff(warming.time))):
-        return f"there is no reading for {hole / 60:.3g} min of the last {minutes}"
+        return f"there is no reading for {hole / 60:.3g} min of the last {minutes}; {_LONGER}"
     return ""
 
 
@@ -190,7 +197,7 @@ def _judged(
         slope=slope,
         slope_bound=slope.bound(criterion.confidence),
     )
-    reason = _unsettled(found, criterion) or _far(found, curve, criterion)
+    reason = _unsettled(found, warming, criterion) or _far(found, curve, criterion)
     found = replace(found, reason=reason, settled=not reason)
     top = float(running_means(warming.time, freed, window / 3)[0].max())
     least = _CLEARLY * noise.of_mean(window / 3) + _OVERSHOOT * criterion.allowed * window
@@ -226,7 +233,8 @@ def _reaches(
     rows = warming.time >= warming.time[-1] - criterion.window
     level, drift = line_of(warming.time[rows], freed[rows])
     ahead = level + max(0.0, reach * drift)
-    end = highest_end(warming.time, freed, curve, slowest=_HORIZON * criterion.window)
+    wander = wander_inflation(warming.time, curve.residuals, 1 + 2 * len(curve.taus), criterion.window)
+    end = highest_end(warming.time, freed, curve, slowest=_HORIZON * criterion.window, inflation=wander)
     # of a soak shorter than such a part even that tells too little: there all that the slope leaves open counts
     unseen = max(curve.slowest, _HORIZON * criterion.window - lasts)
     return reach, max((end - ahead) / 2, unseen * slope.u), curve.u_log_tau
@@ -246,41 +254,57 @@ def _reach(curve: Curve, time: Floats) -> float:
     return -mean / rate if rate != 0 else curve.slowest
 
 
-def _unsettled(found: Settling, criterion: _Criterion) -> str:
-    """Why the slope does not meet the criterion; "" where it does."""
+def _unsettled(found: Settling, warming: Warming, criterion: _Criterion) -> str:
+    """Why the slope does not meet the criterion, and what to do; "" where it does."""
     assert found.slope is not None
     allowed, window = criterion.allowed, criterion.window
     if found.slope_bound <= allowed * (1 + 1e-12):
         return ""
     rate, minutes = found.slope.rate, f"{window / 60:g} min"
-    told = f"the rise still {'rises' if rate >= 0 else 'falls'} by {abs(rate) * window:.3g} K in {minutes}"
+    least = f"{allowed * window:.3g} K"
+    told = f"the rise still {'rises' if rate >= 0 else 'falls'} by {abs(rate) * window:.2f} K in {minutes}"
     if abs(rate) > allowed:
-        return f"{told}, more than {allowed * window:.3g} K"
+        last = warming.time >= warming.time[-1] - window * (1 + 1e-9)
+        _, drift = line_of(warming.time[last], warming.ambient[last])
+        if abs(drift) > abs(rate) / 2:
+            room = f"the ambient moved by {drift * window:.2g} K meanwhile"
+            return f"{told}, more than {least}; {room}: hold the room steadier, and let it run on"
+        return f"{told}, more than {least}; {_run_on(criterion)}"
     if found.slope_bound > _WANDERS * allowed:
-        return (
-            f"{told}, but it did not get there as what warms up does: it jumped, or wandered on the way, with the "
-            "room, a fan or the load"
-        )
+        return f"{told}, but {_WANDERED}"
     return (
-        f"{told}, and with the spread of the readings this may be up to {found.slope_bound * window:.3g} K, more than "
-        f"{allowed * window:.3g} K"
+        f"{told}, and with the spread of the readings this may be up to {found.slope_bound * window:.2g} K, more than "
+        f"{least}; let it run on for longer, read it with finer digits, and hold the room steadier"
     )
 
 
+_WANDERED = (
+    "it did not get there as what warms up does: it jumped, or wandered on the way, with the room, a fan, the load, or "
+    "the contact of the probe; find out which, and record the soak again"
+)
+
+
+def _run_on(criterion: _Criterion) -> str:
+    least = f"{criterion.allowed * criterion.window:.3g} K in {criterion.window / 60:g} min"
+    return f"let it run on until it moves by less than {least}, and record all of it"
+
+
 def _far(found: Settling, curve: Curve, criterion: _Criterion) -> str:
-    """Why what is still to come cannot be told from this soak; "" where it can."""
+    """Why what is still to come cannot be told from this soak, and what to do; "" where it can."""
     least, reached = 2 * criterion.allowed * criterion.window, max(found.reached, 1e-9)
     bound = coverage_factor(criterion.confidence, found.degrees_of_freedom) * found.u_to_come
-    hours = curve.slowest / 3600
     if found.to_come > max(_FARTHEST * reached, least):
         return (
-            f"the slope is small, but with a time constant of {hours:.2g} h about {found.to_come:.2g} K are still to "
-            "come: too far to reckon ahead"
+            f"the slope is small, but with a time constant of {curve.slowest / 3600:.2g} h about {found.to_come:.2g} K "
+            "are still to come: too far to reckon ahead; let it run on for about two such time constants more"
         )
+    if bound > max(_LOST * reached, least):
+        return f"no curve tells what is still to come, as {_WANDERED}"
     if bound > max(_LOOSEST * reached, least):
         return (
-            "what is still to come cannot be told well enough from so short or so noisy a soak: "
-            f"{found.to_come:.2g} K ± {bound:.2g} K"
+            "it hardly moves any more, but so short or so noisy a soak leaves open whether a slow part of up to "
+            f"{max(0.0, found.to_come) + bound:.2g} K is still to come; let it run on for some hours more, read it "
+            "with finer digits, and hold the room steadier"
         )
     return ""
 

@@ -33,6 +33,7 @@ class Soak:
     dwell: bool = False  # a long steady dwell that serves as one
     fault: str = ""  # why it cannot be judged
     condition: str = ""  # what was run, in words
+    ended: str = ""  # why what it came to is only known at the least: the unit went off by itself
 
     def samples(self, key: str) -> Floats:
         """A channel over all parts; without a copy where there is one part."""

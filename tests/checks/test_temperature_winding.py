@@ -12,7 +12,7 @@ from hypothesis import strategies as st
 from acceptance.checks.temperature import check_temperature, check_temperature_rise
 from acceptance.decision import Decided, decide
 from acceptance.limitfile.limits import Limits
-from acceptance.points.point import Points
+from acceptance.points.point import Points, measure_points
 from tests.checks.built import HEAD, limits_from
 from tests.thermal_logs import HOUR, Body, Table, points_of, soak_table, winding_tables
 
@@ -186,6 +186,57 @@ def test_first_reading_too_late_is_a_bound_that_never_passes() -> None:
     assert "the first reading after switch-off came after 3 min 20 s" in within.reason
     assert above.verdict == "fail"
     assert value(above) < 60
+
+
+def test_cooling_whose_time_counts_on_from_the_soak_says_so() -> None:
+    cold, cooling = winding_tables(first=4 * HOUR + 10)
+
+    assert "log the seconds from switch-off" in judged([cold, soak(), cooling]).reason
+
+
+def test_contact_that_changes_while_cooling_is_not_judged() -> None:
+    """4 mohm of 493 mohm more from the 13th reading on: 2.6 K that no winding gains."""
+    cold, cooling = winding_tables()
+    ohms = cooling.columns["winding_resistance"] + np.where(np.arange(30) > 12, 0.004, 0.0)
+    off = replace(cooling, columns={**cooling.columns, "winding_resistance": ohms})
+
+    decided = judged([cold, soak(), off])
+
+    assert decided.verdict == "not judged"
+    assert "as no winding cools" in decided.reason
+
+
+def test_readings_that_leave_the_rise_open_are_not_judged() -> None:
+    """Nothing is known of the first minute and a half, in which a third of the rise went."""
+    cold, cooling = winding_tables(rise=Body([20.0, 40.0], [30.0, 1800.0]), first=90.0, noise=2e-4)
+
+    decided = judged([cold, soak(), cooling])
+
+    assert decided.verdict == "not judged"
+    assert "take the first within 30 s" in decided.reason
+
+
+def test_cold_winding_told_without_its_digits_is_not_judged() -> None:
+    """0.40 ohm to a hundredth: one digit is 0.01/0.4 x 257.5 K = 6.4 K."""
+    cold, cooling = winding_tables(noise=0.0)
+    points = points_of([cold, soak(), cooling], rise_limits())
+    channels = tuple(
+        replace(one, step=0.01) if one.quantity == "winding_resistance" else one for one in points.log.channels
+    )
+    points = measure_points(replace(points.log, channels=channels), [], points.limits)
+    (outcome,) = check_temperature_rise(points.limits.requirements, points).outcomes
+
+    assert "which is 6.4 K of the winding" in decide(outcome, points.limits.decision).reason
+
+
+def test_cold_winding_without_a_probe_is_told() -> None:
+    cold, cooling = winding_tables()
+    case = replace(cold, columns={**cold.columns, "temperature case": np.full(8, 23.4)})
+
+    bare, shown = judged([cold, SOAK, cooling]), judged([case, SOAK, cooling])
+
+    assert any("no probe was logged while cold" in text for text in bare.outcome.deviations)
+    assert not any("no probe was logged while cold" in text for text in shown.outcome.deviations)
 
 
 def test_cooling_that_begins_at_zero_is_not_judged() -> None:

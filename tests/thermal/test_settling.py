@@ -91,7 +91,7 @@ def test_falling_rise_is_not_settled_and_keeps_its_top() -> None:
     found = settling_of(Warming(*blocks_of(time, 23 + rise, np.full(time.size, 23.0))), allowed=ALLOWED)
 
     assert not found.settled
-    assert "falls by 2 K in 30 min" in found.reason
+    assert "falls by 2.00 K in 30 min" in found.reason
     assert found.reached == pytest.approx(rise.max(), abs=0.2)
 
 
