@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
+from dataclasses import dataclass
 
 from acceptance.checks.conditions import Condition, condition_of, meets_input, output_of
 from acceptance.checks.outcome import Candidate, CheckResult, Outcome
 from acceptance.checks.overcurrent_figures import overcurrent_figures
 from acceptance.errors import MeasurementError
-from acceptance.limitfile.model import Overcurrent
+from acceptance.limitfile.model import Output, Overcurrent
 from acceptance.overload.analysis import Overload, overloads_in
 from acceptance.overload.trace import overload_parts
 from acceptance.points.point import Point, Points
@@ -81,53 +82,104 @@ def _input_distance(point: Point, at: Condition) -> float:
 # --- outcomes -------------------------------------------------------------------------------------------------------
 
 
+@dataclass(frozen=True, slots=True)
+class _Asked:
+    """One thing that a requirement asks of an overload."""
+
+    what: str
+    unit: str
+    form: Former
+    formula: str
+    words: str = ""  # what the value refers to, behind the condition
+    low: float | None = None
+    high: float | None = None
+    text: str = ""  # the limit, where it is one in words
+
+
 def _outcomes(
     requirement: Overcurrent, points: Points, found: Sequence[Overload], *, reason: str, condition: Condition
 ) -> list[Outcome]:
     output = output_of(requirement, points.limits)
-    rated = points.limits.ratings.outputs[output]
-    outcomes: list[Outcome] = []
-
-    def add(what: str, unit: str, former: Former, formula: str, **limits: object) -> None:
-        candidates = tuple(_guarded(former, overload) for overload in found)
-        outcomes.append(
-            Outcome(
-                name=f"{requirement.name}.{what}",
-                characteristic="overcurrent",
-                condition=f"{condition}{limits.pop('words', '')}",
-                unit=unit,
-                candidates=candidates,
-                reason=reason,
-                output=output,
-                note=requirement.note or "",
-                formula=formula,
-                deviations=_deviations(what, found),
-                **limits,  # type: ignore[arg-type]
-            )
+    return [
+        Outcome(
+            name=f"{requirement.name}.{asked.what}",
+            characteristic="overcurrent",
+            condition=f"{condition}{asked.words}",
+            unit=asked.unit,
+            low=asked.low,
+            high=asked.high,
+            candidates=tuple(_guarded(asked.form, overload) for overload in found),
+            reason=reason,
+            output=output,
+            note=requirement.note or "",
+            formula=asked.formula,
+            deviations=_deviations(asked.what, found),
+            asked=asked.text,
         )
+        for asked in _asked_by(requirement, points.limits.ratings.outputs[output])
+    ]
 
-    if requirement.behaviour is not None:
-        asked = requirement.behaviour
-        words = "any of " + ", ".join(_NAMED) if asked == "any" else asked
-        add("behaviour", "", _behaviour_of(asked), "what the samples beyond the onset show", asked=words)
-    if requirement.onset is not None:
-        low, high = (share * rated.current for share in requirement.onset)
-        words = f", fall of {100 * requirement.droop:g} % of {rated.voltage:g} V"
-        formula = "I where V lies the droop below the line of the regulated branch"
-        add("onset", "A", _onset, formula, low=low, high=high, words=words)
-    if requirement.short_circuit is not None:
-        short = requirement.short_circuit
-        bounds = {"low": short.min, "high": short.max}
-        limits = {key: value * rated.current for key, value in bounds.items() if value is not None}
-        formula = "mean of I where V is below 5 % of rated; of bursts the largest reading"
-        add("short_circuit", "A", _short_circuit, formula, **limits)
-    if requirement.recovery is not None:
-        recovery = requirement.recovery
-        former = _recovery(recovery.band, recovery.within)
-        words = f", back within {100 * recovery.band:g} % of {rated.voltage:g} V"
-        formula = "from the last sample of the overload to the first of those that stay in the band: at most this"
-        add("recovery", "s", former, formula, high=recovery.within, words=words)
-    return outcomes
+
+def _asked_by(requirement: Overcurrent, rated: Output) -> list[_Asked]:
+    """What a requirement asks, in the order of its keys."""
+    every = (
+        _behaviour_asked(requirement),
+        _onset_asked(requirement, rated),
+        _short_circuit_asked(requirement, rated),
+        _recovery_asked(requirement, rated),
+    )
+    return [asked for asked in every if asked is not None]
+
+
+def _behaviour_asked(requirement: Overcurrent) -> _Asked | None:
+    kind = requirement.behaviour
+    if kind is None:
+        return None
+    text = "any of " + ", ".join(_NAMED) if kind == "any" else kind
+    return _Asked("behaviour", "", _behaviour_of(kind), "what the samples beyond the onset show", text=text)
+
+
+def _onset_asked(requirement: Overcurrent, rated: Output) -> _Asked | None:
+    if requirement.onset is None:
+        return None
+    low, high = requirement.onset
+    return _Asked(
+        "onset",
+        "A",
+        _onset,
+        "I where V lies the droop below the line of the regulated branch",
+        words=f", fall of {100 * requirement.droop:g} % of {rated.voltage:g} V",
+        low=low * rated.current,
+        high=high * rated.current,
+    )
+
+
+def _short_circuit_asked(requirement: Overcurrent, rated: Output) -> _Asked | None:
+    short = requirement.short_circuit
+    if short is None:
+        return None
+    return _Asked(
+        "short_circuit",
+        "A",
+        _short_circuit,
+        "mean of I where V is below 5 % of rated; of bursts the largest reading",
+        low=None if short.min is None else short.min * rated.current,
+        high=None if short.max is None else short.max * rated.current,
+    )
+
+
+def _recovery_asked(requirement: Overcurrent, rated: Output) -> _Asked | None:
+    recovery = requirement.recovery
+    if recovery is None:
+        return None
+    return _Asked(
+        "recovery",
+        "s",
+        _recovery(recovery.band, recovery.within),
+        "from the last sample of the overload to the first of those that stay in the band: at most this",
+        words=f", back within {100 * recovery.band:g} % of {rated.voltage:g} V",
+        high=recovery.within,
+    )
 
 
 def _guarded(former: Former, overload: Overload) -> Candidate:

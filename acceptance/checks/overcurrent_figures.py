@@ -97,7 +97,7 @@ def _onset_mark(overload: Overload, label: str, confidence: float) -> list[Mark]
 
 def _short_mark(overload: Overload, label: str, confidence: float) -> list[Mark]:
     short = _tried(overload.short)
-    if short is None:
+    if short is None or short.known != "value":
         return []
     return [Mark(label, short.current.nominal, short.voltage, expanded(short.current.value, confidence).expanded)]
 

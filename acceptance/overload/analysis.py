@@ -103,8 +103,8 @@ def overloads_in(part: Point, output: str, steady: Sequence[Point], *, droop: fl
     if not episodes:
         most = 100 * float(trace.current.max()) / trace.rated_current
         fault = (
-            f"no overload in {part.where}: at most {most:.1f} % of rated current was drawn; drive it further, until "
-            "the output gives way"
+            f"no overload of {output} in {part.where}: at most {most:.1f} % of rated current was drawn; drive it "
+            "further, until the output gives way"
         )
         return (Overload(part, trace, fault=fault),)
     return tuple(Overload(part, trace, episode) for episode in episodes)

@@ -9,8 +9,8 @@ from acceptance.errors import MeasurementError
 from acceptance.overload.bursts import Bursts, GivenUp, bursts_of, given_up
 from acceptance.overload.episodes import Episode
 from acceptance.overload.kinds import Kind, kind_of, levels_below
-from acceptance.overload.onset import into
-from acceptance.overload.steps import Step
+from acceptance.overload.steps import STEADY, Step
+from acceptance.overload.way import into
 
 __all__ = ["Behaviour", "behaviour_of"]
 
@@ -49,7 +49,27 @@ def behaviour_of(episode: Episode) -> Behaviour:
     kind = kind_of(episode)
     if kind.doubt:
         raise MeasurementError(f"{kind.doubt} ({episode.where})")  # noqa: EM102
+    _see_to_what_gave_nothing(episode)
     return Behaviour(kind.name, kind.told)
+
+
+def _see_to_what_gave_nothing(episode: Episode) -> None:
+    """See to it that the output gave something at every setting: a limiter does.
+
+    Raises
+    ------
+    MeasurementError
+        If it did not at some; single readings, or few, catch bursts or miss them by chance.
+    """
+    over = [s for s in episode.steps if s.first >= episode.entered and s.stop <= episode.last_over + 1]
+    gone = [step for step in over if step.kind != STEADY]
+    if gone:
+        msg = (
+            f"the output gave nothing at {len(gone)} of {len(over)} settings of the overload "
+            f"({episode.place(gone[0].first, gone[0].stop)}), which no limiter does: bursts, seen by too few readings, "
+            "or a latch; log it ten times in a period of the bursts, and go on for 10 s after the overload is removed"
+        )
+        raise MeasurementError(msg)
 
 
 def _in_bursts(bursts: Bursts, gone: GivenUp | None, episode: Episode) -> Behaviour:

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from acceptance.overload.episodes import Episode
-from acceptance.overload.steps import nothing_given
+from acceptance.overload.steps import is_by_hand, nothing_given
 from acceptance.overload.trace import scatter
 
 __all__ = ["Bursts", "GivenUp", "bursts_of", "given_up"]
@@ -20,6 +20,7 @@ _UNEVEN = 0.3  # of the median period, to either side
 _EVEN_SHARE = 0.6  # of the periods that lie within it
 _SAMPLES = 10  # in a period
 _DOWN = 10.0  # an output that is down for so long after the overload has given up; a slow retry comes sooner [s]
+_DOWN_CYCLED = 5.0  # the same where the source was cycled then, which brought it back [s]
 _DOWN_SAMPLES = 3
 
 
@@ -46,7 +47,8 @@ class Bursts:
     def doubt(self) -> str:
         """Why bursts that were seen do not show a hiccup; "" where they do."""
         if self.count < _FEWEST:
-            return f"{self.count} bursts were seen, and three show a hiccup; hold the overload for longer"
+            seen = "one burst was" if self.count == 1 else f"{self.count} bursts were"
+            return f"{seen} seen, and three show a hiccup; hold the overload for longer"
         if self.period_samples < _SAMPLES:
             return (
                 f"a burst comes every {self.period_samples:.3g} samples, and ten samples in a period show what it is; "
@@ -176,10 +178,28 @@ def _latched(episode: Episode, off: Mask, since: int) -> tuple[bool, str]:
     if back.size:
         return False, _back_by_itself(episode)
     if end - removed < _DOWN_SAMPLES:
-        return False, "the log ends, or the source was switched off, too soon after the overload; record for longer"
+        return False, (
+            f"{end - removed} readings were taken of the output down after the overload was removed, and three show a "
+            "latch: write down several over 10 s at rated load, with their times, before the source is cycled"
+        )
     if episode.source_off is not None:
-        return True, ""
+        return _until_cycled(episode, end, since)
     return _long_enough(episode, removed, end, since)
+
+
+def _until_cycled(episode: Episode, end: int, since: int) -> tuple[bool, str]:
+    time = episode.trace.time
+    if time is None:  # a person with a pencil: three rows take longer than any retry
+        if is_by_hand(episode.trace):
+            return True, ""
+        return False, "the overload has no time in every sample; log the time"
+    down = float(time[end - 1] - time[since])
+    if down >= _DOWN_CYCLED:
+        return True, ""
+    return False, (
+        f"the output was down for {down:.3g} s when the source was cycled, and a slow retry is not ruled out; wait "
+        f"{_DOWN:g} s at rated load before the source is cycled"
+    )
 
 
 def _back_by_itself(episode: Episode) -> str:

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from acceptance.errors import MeasurementError
-from acceptance.overload.steps import HELD, STEADY, Step, nothing_given
+from acceptance.overload.steps import HELD, STEADY, Step, is_by_hand, noise_of, nothing_given
 from acceptance.overload.trace import Trace, scatter
 
 __all__ = ["see_to_the_meters"]
@@ -22,6 +22,7 @@ _TIED = 5  # samples at the largest reading, among which a noisy one has few
 _FINE = 0.002  # of the reading: digits so coarse may well stand still
 _MOVES = 0.05  # of the rating: what the other reading changes by meanwhile
 _RANGE = 0.98  # of a meter's range
+_WELL_INSIDE = 0.9  # of a stated range: what stands still here does so at no end of it
 _DISAGREES = 0.1  # of the current that a resistance and the voltage across it make
 
 
@@ -81,10 +82,12 @@ def _clipped(trace: Trace, steps: Sequence[Step]) -> None:
     span = meter.meter_range if meter is not None and isinstance(meter.meter_range, float) else np.inf
     if _step_of(trace, trace.current_key, trace.current) > _FINE * top and top < _RANGE * span:
         return
+    if top < _WELL_INSIDE * span < np.inf:
+        return
     msg = (
         f"{trace.current_key} stands at its largest reading {top:.5g} A over {len(at_top)} settings "
         f"({trace.place(at_top[0].first, at_top[-1].stop)}) while the voltage falls: the end of a range looks like "
-        "that; measure again in a higher range, with digits enough to show the current move"
+        "that; state the meter's range under instruments: (meter_range), or measure again in a higher one"
     )
     raise MeasurementError(msg)
 
@@ -104,10 +107,10 @@ def _is_cut_off(trace: Trace, top: float) -> bool:
     """Whether half of the readings about the largest one equal it, although readings on the branch scatter."""
     loaded = (trace.current > 0.3 * trace.rated_current) & (trace.voltage > 0.8 * trace.rated_voltage)
     loaded &= ~trace.overloaded()
-    noise = scatter(trace.current[loaded])
+    noise = noise_of(trace)[1]  # within the settings: their steps are none
     digits = _step_of(trace, trace.current_key, trace.current)
-    if np.count_nonzero(loaded) < _TIED or noise < digits or digits == 0:
-        return False
+    if is_by_hand(trace) or np.count_nonzero(loaded) < _TIED or noise < digits or digits == 0:
+        return False  # rows by hand differ by their settings, which is no noise
     near = np.count_nonzero(trace.current > top - 4 * noise)
     ties = np.count_nonzero(trace.current == top)
     return bool(ties >= _TIED and ties >= 0.5 * near)
@@ -192,11 +195,13 @@ def _contradicted(trace: Trace, steps: Sequence[Step]) -> None:
     """A current that is not what the voltage drives through the resistance that was set."""
     wrong: list[tuple[Step, tuple[float, float, float]]] = []
     for step in steps:
-        if step.mode != "CR" or not step.setting > 0:
+        if step.mode != "CR" or not step.setting > 0 or trace.load_off()[step.first : step.stop].any():
             continue
         voltage, current = _given(trace, step)
         through = voltage / (step.setting + trace.lead)
-        if _disagree(trace, voltage, current, through):
+        # into a short the last digit of the voltage is amperes
+        unsure = _unsure(trace, voltage) / (step.setting + trace.lead)
+        if _disagree(trace, voltage, current - min(max(current - through, -unsure), unsure), through):
             wrong.append((step, (voltage, current, through)))
     sure = [one for one in wrong if one[0].samples >= _LEVELS]
     if len(wrong) < 2 and not sure:
@@ -208,6 +213,12 @@ def _contradicted(trace: Trace, steps: Sequence[Step]) -> None:
         "frozen, or a load that did not hold its setting; see to both, and record it again"
     )
     raise MeasurementError(msg)
+
+
+def _unsure(trace: Trace, voltage: float) -> float:
+    """What a voltage may be wrong by: twice its instrument's u, and half of its last digit. [V]"""
+    u = trace.part.bench.standard_uncertainty(trace.voltage_key, voltage)
+    return 2 * u + 0.5 * _step_of(trace, trace.voltage_key, trace.voltage)
 
 
 def _given(trace: Trace, step: Step) -> tuple[float, float]:

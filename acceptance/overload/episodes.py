@@ -97,6 +97,8 @@ def _episode(
     start, first, stop, after = bounds
     gives = ~nothing_given(trace)
     known = np.isfinite(trace.asked()) | np.isinf(trace.asked()) if trace.setting is not None else gives
+    if stop < after and trace.load_off()[stop]:  # when it was switched off is known only from what it drew
+        known = known & gives
     certain = np.flatnonzero((over & known)[first:stop])
     return Episode(
         trace=trace,

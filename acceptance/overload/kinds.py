@@ -10,10 +10,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from acceptance.overload.episodes import Episode
-from acceptance.overload.onset import into
 from acceptance.overload.steps import STEADY, Step, nothing_given
+from acceptance.overload.way import into
 
-__all__ = ["Kind", "jump_of", "kind_of", "levels_below", "limited_levels"]
+__all__ = ["Kind", "goes_on_to", "jump_of", "kind_of", "levels_below", "limited_levels"]
 
 Floats = NDArray[np.float64]
 
@@ -22,6 +22,13 @@ _FEWEST = 5  # levels between them
 _BAND = 0.05  # to either side, of the current or of the power
 _GAP = 0.35  # of rated voltage, without a level: what the output does there is not known
 _JUMP = 0.1  # of the last current on the branch: what no limiter jumps by
+_UNSEEN = 0.1  # of rated voltage, between the lowest level and the first one below 10 %: what lies there is guessed
+_LOST = 0.4  # of the current expected beyond an unseen gap: what a mean of bursts surely lacks
+_SLIGHT = 0.03  # of the last current on the branch: less is lost by no burst
+_STEEPER = 2.0  # times the typical slope of a branch: more is a break
+_SWINGS = 3  # samples at the least
+_UNSETTLED = 0.1  # of the last current on the branch: what a settled level does not move by
+_POINTING = 3  # lowest levels, which point at the current into a short
 _TELLS = 0.03  # of rated voltage: levels so far apart point at where the branch should have ended
 _WIDE = 1.3  # ratio of voltages over which a constant power is told from anything else
 _SURE = 2.0  # standard errors
@@ -67,11 +74,12 @@ def levels_below(episode: Episode) -> list[Step]:
 def kind_of(episode: Episode) -> Kind:
     """The kind of limiting, by the settled levels alone: bursts and giving up are looked at elsewhere."""
     levels = _levels(episode, limited_levels(episode))
-    doubt = _too_few(episode, levels) or _by_the_load(episode) or _a_jump(episode, levels)
+    doubt = _too_few(episode, levels) or _by_the_load(episode) or _unsettled(episode, levels)
+    doubt = doubt or _a_jump(episode, levels) or _a_break(levels) or _a_break(_with_next(episode, levels), 1.0)
     if doubt:
         return Kind(doubt=doubt)
     power = _powers(levels)
-    current_is, power_is = _is_constant(levels), _is_constant(power)
+    current_is, power_is = _is_constant(_with_edge(episode, levels)), _is_constant(power)
     wide = levels.v.max() / levels.v.min() >= _WIDE
     if power_is and wide and current_is is False:
         return Kind("constant power", f"{levels.at(0)}, {levels.at(-1)}")
@@ -81,7 +89,9 @@ def kind_of(episode: Episode) -> Kind:
     if current_is:
         return Kind("constant current", f"{levels.at(0)}, {levels.at(-1)}")
     if current_is is None or power_is is None:
-        return Kind(doubt="the current keeps within ± 5 % by less than its scatter shows; measure with less noise")
+        what = "current" if current_is is None else "power"
+        doubt = f"whether the {what} keeps within ± 5 % is not told by so much scatter"
+        return Kind(doubt=f"{doubt}; measure with less noise, or hold each setting for longer")
     return _folded(levels)
 
 
@@ -151,6 +161,32 @@ def jump_of(episode: Episode) -> str:
     return _a_jump(episode, levels) if levels.v.size and np.ptp(levels.v) > _TELLS else ""
 
 
+def _unsettled(episode: Episode, levels: _Levels) -> str:
+    """Where the current swings within one setting, by more than noise does: bursts, half averaged out."""
+    for step in limited_levels(episode):
+        current = episode.trace.current[step.first + step.samples // 2 : step.stop]
+        noise = 6 * float(np.median(levels.u)) * levels.last * math.sqrt(step.samples)
+        if current.size >= _SWINGS and np.ptp(current) > _UNSETTLED * levels.last + noise:
+            return (
+                f"the current swings between {current.min():.4g} A and {current.max():.4g} A at one setting "
+                f"({episode.place(step.first, step.stop)}): bursts, half averaged out; sample ten times in a period"
+            )
+    return ""
+
+
+def goes_on_to(episode: Episode, voltage: float) -> float | None:
+    """The current that the limited branch points at for a voltage below it; None where no levels show one. [A]"""
+    low = LOWEST * episode.trace.rated_voltage
+    levels = _levels(episode, [step for step in levels_below(episode) if step.voltage >= low])
+    if levels.v.size < _POINTING or _by_the_load(episode):
+        return None
+    if _unsettled(episode, levels) or _a_jump(episode, levels) or _a_break(levels) or _gap(levels):
+        return None
+    v, i = levels.v[-_POINTING:], levels.i[-_POINTING:]
+    slope, offset = np.polyfit(v, i, 1) if np.ptp(v) > 0 else (0.0, float(i[-1]))
+    return float(offset + slope * voltage / levels.rated_voltage) * levels.last
+
+
 def _a_jump(episode: Episode, levels: _Levels) -> str:
     """Why a branch that does not go on where the regulated one ends is no limiter's."""
     at = levels.v >= np.sort(levels.v)[max(0, levels.v.size - 4)]
@@ -161,6 +197,49 @@ def _a_jump(episode: Episode, levels: _Levels) -> str:
     return (
         f"the current jumps from {levels.last:.4g} A on the regulated branch to {levels.i[0] * levels.last:.4g} A "
         "below it, which no limiter does; a slow or averaging meter makes that of bursts: sample ten times in a period"
+    )
+
+
+def _with_next(episode: Episode, levels: _Levels) -> _Levels:
+    """The levels, and the first one below 10 % of rated voltage where nothing was measured for a while before it."""
+    lower = [s for s in levels_below(episode) if s.voltage < LOWEST * episode.trace.rated_voltage]
+    if not lower or levels.v[-1] - LOWEST <= _UNSEEN:
+        return levels
+    return _levels(episode, [*limited_levels(episode), max(lower, key=lambda step: step.voltage)])
+
+
+def _with_edge(episode: Episode, levels: _Levels) -> _Levels:
+    """The levels, and the current at 90 % of rated voltage between the highest of them and the next above."""
+    every = _levels(episode, levels_below(episode))
+    above = np.flatnonzero(every.v > HIGHEST)
+    if not above.size:
+        return levels
+    place = int(above[-1])
+    share = (HIGHEST - levels.v[0]) / (every.v[place] - levels.v[0])
+    current = levels.i[0] + share * (every.i[place] - levels.i[0])
+    u = math.hypot(levels.u[0], every.u[place])
+    edge = (HIGHEST, current, u, levels.u_v[0])
+    v, i, u_i, u_v = (
+        np.append(at, below) for at, below in zip(edge, (levels.v, levels.i, levels.u, levels.u_v), strict=True)
+    )
+    return replace(levels, v=v, i=i, u=u_i, u_v=u_v)
+
+
+def _a_break(levels: _Levels, steeper: float = _STEEPER) -> str:
+    """Why a current that falls all at once, amid a branch that falls slowly, is no limiter's."""
+    dv, di = -np.diff(levels.v), -np.diff(levels.i)
+    typical = max(float(np.median(di / np.maximum(dv, 1e-6))), 0.0)
+    expected = np.maximum(levels.i[:-1] - typical * dv, 0.0)
+    least = np.clip(_LOST * expected, _SLIGHT, _JUMP) if steeper <= 1 else _JUMP
+    noise = np.hypot(levels.u[:-1], levels.u[1:])
+    broken = np.flatnonzero(di > least + 3 * noise + steeper * typical * dv)
+    if not broken.size:
+        return ""
+    place = int(broken[0])
+    return (
+        f"the current breaks off from {levels.at(place)} to {levels.at(place + 1)}: an output that snaps into a lower "
+        "state, or bursts behind a slow or averaging meter; sweep in smaller steps there, and sample ten times in a "
+        "period of the bursts"
     )
 
 

@@ -10,16 +10,25 @@ from typing import Literal
 import numpy as np
 
 from acceptance.errors import MeasurementError
+from acceptance.overload.bursts import bursts_of
 from acceptance.overload.episodes import Episode
-from acceptance.overload.steps import HELD, STEADY, Step, nothing_given
+from acceptance.overload.kinds import jump_of, levels_below
+from acceptance.overload.steps import STEADY, Step, nothing_given
+from acceptance.overload.way import asked_at, into
 from acceptance.points.instrument import converter_step_uncertainty
 from acceptance.points.point import Estimate
 from acceptance.points.propagation import Source, Value, nominal, of_source
 
-__all__ = ["Onset", "into", "onset_of"]
+__all__ = ["Onset", "onset_of"]
 
 _ON_THE_KNEE = 0.25  # of the droop: a level that lies so far below the branch is on the limited part already
 _COLLAPSED = 0.5  # of rated voltage: in CC mode nothing lies between the branch and the collapse
+_HELD_CURRENT = 0.95  # of a CC setting: less than this was not held
+_FEWEST_BELOW = 3  # levels that make limiting a part of what comes later; fewer may be means of bursts
+_DRIFTS = 2.0  # times what a limit moves by from the third to the fourth quarter of a step, as a bound
+_SURE = 3  # samples of a setting that the output surely carried, not by the chance of a burst
+_WIDE = 0.5  # of rated current: of a wider bracket only the lower end is told
+_NOISY = 0.1  # of rated current: more scatter tells no onset
 _REGULAR = 2.0  # steps of a ramp that differ by no more than this factor
 _FEW = 4  # levels about the droop, from which on a line through them is better than two of them
 
@@ -47,45 +56,6 @@ class _Found:
     how: str
 
 
-def into(episode: Episode) -> tuple[Step, ...]:
-    """The steps of the way in, up to the deepest one: later ones are the way out, on which it may differ."""
-    way = [step for step in episode.steps if step.first < episode.end]
-    if not way:
-        return ()
-    asked = [asked_at(step, episode) for step in way]
-    if all(math.isfinite(value) for value in asked):
-        return tuple(way[: int(np.argmax(asked)) + 1])
-    depth = np.array([step.voltage for step in way])
-    return tuple(way[: int(np.argmax(depth <= depth.min() + 0.02 * episode.trace.rated_voltage)) + 1])
-
-
-def asked_at(step: Step, episode: Episode) -> float:
-    """The current that a step would have drawn on the branch; infinite or NaN where nothing tells it. [A]"""
-    branch, lead = episode.branch, episode.trace.lead
-    if step.mode == "CC":
-        return step.setting
-    if step.mode == "CR":
-        resistance = step.setting + lead + branch.resistance
-        return branch.voltage / resistance if resistance > 0 else math.nan
-    if step.mode == "CV":
-        fall = branch.voltage - step.setting
-        return fall / branch.resistance if branch.resistance > 0 and fall < episode.droop else math.inf
-    if step.mode == "CP":
-        return step.setting / branch.voltage
-    return _asked_by_bursts(step, episode)
-
-
-def _asked_by_bursts(step: Step, episode: Episode) -> float:
-    """What the resistance seen while the output gave something would have drawn. [A]"""
-    trace, here = episode.trace, slice(step.first, step.stop)
-    gives = trace.current[here] > 0.3 * trace.rated_current
-    if step.kind == HELD or not gives.any():
-        return math.nan
-    seen = np.median(trace.voltage[here][gives] / trace.current[here][gives])
-    resistance = float(seen) + episode.branch.resistance
-    return episode.branch.voltage / resistance if resistance > 0 and step.kind != STEADY else math.nan
-
-
 def onset_of(episode: Episode) -> Onset:
     """The onset of one episode.
 
@@ -94,9 +64,9 @@ def onset_of(episode: Episode) -> Onset:
     MeasurementError
         If it was never driven so far, or the samples do not tell where it is; with what to run instead.
     """
-    way = into(episode)
+    way = _until_bursts(into(episode), episode)
     in_a_burst = _in_a_burst(way, episode)
-    on = [step.kind == STEADY and episode.droop >= _fall(step, episode) and step not in in_a_burst for step in way]
+    on = [_is_on(step, episode) and step not in in_a_burst for step in way]
     if not any(on):
         return _limited_from_the_start(way, episode)
     last = max(place for place, is_on in enumerate(on) if is_on)
@@ -108,7 +78,10 @@ def onset_of(episode: Episode) -> Onset:
     b = way[last + 1]
     if b in in_a_burst:  # what was asked for until it gave nothing
         b = next((step for step in way[last + 1 :] if step.kind != STEADY), b)
-    if b.kind != STEADY or (b.mode in ("CC", "") and b.voltage < _COLLAPSED * episode.trace.rated_voltage):
+    collapsed = b.mode in ("CC", "") and b.voltage < _COLLAPSED * episode.trace.rated_voltage
+    collapsed |= b.mode == "CC" and b.current < _HELD_CURRENT * b.setting  # a mean of bursts, on and off
+    collapsed |= any(step.kind != STEADY for step in way[last + 1 :]) and len(levels_below(episode)) < _FEWEST_BELOW
+    if b.kind != STEADY or collapsed or jump_of(episode):
         return _at_a_collapse([*way[: last + 1], b], episode)
     if sum(step.samples for step in way[last + 1 :]) < 2:
         msg = (
@@ -129,6 +102,36 @@ def _in_a_burst(way: Sequence[Step], episode: Episode) -> list[Step]:
     longest = int(lengths.max())
     begins = episode.entered + first - longest - 1
     return [step for step in way if step.stop > begins and step.kind == STEADY and step.samples < 2 * longest]
+
+
+def _until_bursts(way: Sequence[Step], episode: Episode) -> Sequence[Step]:
+    """The way in up to the first setting at which the output gave nothing; later levels lie in bursts.
+
+    Raises
+    ------
+    MeasurementError
+        If it gave something again later, and the samples do not show bursts: what single readings caught is chance.
+    """
+    gone = next((n for n, step in enumerate(way) if step.kind != STEADY and step.first >= episode.entered), None)
+    if gone is None:
+        return way
+    bursts = bursts_of(episode)
+    if bursts is not None and bursts.is_shown:
+        return way[: gone + 1] if any(_is_on(step, episode) for step in way[gone + 1 :]) else way
+    later = [step for step in episode.steps if step.first >= way[gone].stop and step.stop <= episode.last_over + 1]
+    again = [step for step in later if step.kind == STEADY]
+    carried = [step for step in way[:gone] if _is_on(step, episode)]
+    if any(_is_on(step, episode) for step in way[gone + 1 :]) or (again and carried and carried[-1].samples < _SURE):
+        msg = (
+            f"the output gave nothing at one setting and something at a later one ({episode.where}): bursts, of which "
+            "single readings show some; sample ten times in a period"
+        )
+        raise MeasurementError(msg)
+    return way
+
+
+def _is_on(step: Step, episode: Episode) -> bool:
+    return step.kind == STEADY and episode.droop >= _fall(step, episode)
 
 
 def _fall(step: Step, episode: Episode) -> float:
@@ -174,12 +177,7 @@ def _at_a_collapse(way: Sequence[Step], episode: Episode) -> Onset:
     if not math.isfinite(asked):
         asked, noise = _next_of_ramp(way[:-1]), 0.0
     if not math.isfinite(asked):
-        reason = (
-            f"the output gave way beyond {a.current:.4g} A, and the log does not tell what was asked for next "
-            f"({episode.place(b.first, b.stop)}); log the load setting"
-        )
-        found = _Found(a.current, 0.0, a.u_current, 0.0, "")
-        return Onset(_estimate(found, episode), a.voltage, "at least", reason, before=a.stop - 1)
+        return _at_least(a, _untold(b, a, episode), episode)
     if asked < a.current - 0.02 * episode.trace.rated_current:
         msg = (
             f"the output gave way at a setting of {asked:.4g} A after it had carried {a.current:.4g} A "
@@ -187,9 +185,31 @@ def _at_a_collapse(way: Sequence[Step], episode: Episode) -> Onset:
         )
         raise MeasurementError(msg)
     width = max(asked - a.current, 0.0)
+    if width > _WIDE * episode.trace.rated_current:
+        return _at_least(a, _too_wide(a.current, asked), episode)
     how = f"between {a.current:.4g} A on the branch and {asked:.4g} A asked for next"
     found = _Found(a.current + width / 2, width, math.hypot(a.u_current, noise) / 2, 0.0, how)
     return Onset(_estimate(found, episode), a.voltage, how=how, before=a.stop - 1)
+
+
+def _at_least(a: Step, reason: str, episode: Episode) -> Onset:
+    """No more is known than that the output carried the current of a step on its branch."""
+    found = _Found(a.current, 0.0, a.u_current, 0.0, "")
+    return Onset(_estimate(found, episode), a.voltage, "at least", reason, before=a.stop - 1)
+
+
+def _untold(b: Step, a: Step, episode: Episode) -> str:
+    told = f"the output gave way beyond {a.current:.4g} A ({episode.place(b.first, b.stop)}), and "
+    if b.mode == "CV":
+        return told + "a CV setting does not tell what it asks for; sweep in CC or CR mode, in small steps"
+    return told + "the log does not tell what was asked for next; log the load setting"
+
+
+def _too_wide(carried: float, asked: float) -> str:
+    return (
+        f"the output carried {carried:.4g} A on its branch, and the next setting asked for {asked:.4g} A; sweep in "
+        "small steps about the onset"
+    )
 
 
 def _offset(way: Sequence[Step], episode: Episode) -> tuple[float, float]:
@@ -219,6 +239,13 @@ def _next_of_ramp(way: Sequence[Step]) -> float:
 
 def _interpolated(way: Sequence[Step], last: int, episode: Episode) -> Onset:
     found = _by_line(way, episode) or _by_bracket(way, last, episode)
+    if found.width > _WIDE * episode.trace.rated_current:
+        a, b = way[last], way[last + 1]
+        reason = (
+            f"the output was on its branch at {a.current:.4g} A, and at {b.voltage:.3g} V under the next setting, "
+            "which does not tell the onset; sweep in smaller steps about it, and if it comes in bursts, sample faster"
+        )
+        return _at_least(a, reason, episode)
     voltage = float(episode.branch.at(np.array(found.current))) - episode.droop
     return Onset(_estimate(found, episode), voltage, how=found.how, before=way[last].stop - 1)
 
@@ -261,7 +288,20 @@ def _by_bracket(way: Sequence[Step], last: int, episode: Episode) -> _Found:
     slope = (b.current - a.current) / (b.voltage - a.voltage) if volts > 0 else 0.0
     noise = math.hypot(noise, slope * math.hypot((1 - share) * a.u_voltage, share * b.u_voltage))
     how = f"between {a.current:.4g} A above and {b.current:.4g} A below the droop"
-    return _Found(value, max(ends) - min(ends), noise, slope, how)
+    return _Found(value, max(ends) - min(ends) + _drift(b, episode), noise, slope, how)
+
+
+def _drift(step: Step, episode: Episode) -> float:
+    """How far a limit that moves as it warms was from where it was read, when it was first met; in width. [A]
+
+    What it moves by in the later half of its step it has moved by in the first half as well, and about twice that.
+    """
+    current, quarter = episode.trace.current[step.first : step.stop], step.samples // 4
+    if quarter < 1:
+        return 0.0
+    moved = abs(float(np.median(current[2 * quarter : 3 * quarter]) - np.median(current[-quarter:])))
+    noise = 4 * step.u_current if step.samples > 8 else 0.0
+    return 4 * _DRIFTS * max(moved - noise, 0.0)
 
 
 def _pointed_at(way: Sequence[Step], last: int, episode: Episode) -> float:
@@ -288,6 +328,12 @@ def _estimate(found: _Found, episode: Episode) -> Estimate:
     meter shares between both cancels.
     """
     trace, part = episode.trace, episode.trace.part
+    if found.noise > _NOISY * trace.rated_current:
+        msg = (
+            f"the readings about the onset scatter by {found.noise:.2g} A ({episode.where}), which does not tell it; "
+            "hold each setting for longer, measure with less noise, and sweep in CC or CR mode about the onset"
+        )
+        raise MeasurementError(msg)
     value: Value = part.bench.correct(trace.current_key, found.current)
     value = value + part.rounding(trace.current_key, found.noise)
     if found.slope:
@@ -295,6 +341,8 @@ def _estimate(found: _Found, episode: Episode) -> Estimate:
         errors = part.bench.correct(trace.voltage_key, line) - line
         below = line - episode.droop
         errors = errors - (part.bench.correct(trace.voltage_key, below) - below)
+        # the line and the levels on both sides were rounded, each by itself
+        errors = errors + math.sqrt(3.0) * part.rounding(trace.voltage_key, found.noise / abs(found.slope))
         value = value + found.slope * errors
         branch = abs(found.slope) * episode.branch.u(found.current)
         value = value + of_source(branch, Source("the line of the regulated branch", "A"))

@@ -10,6 +10,7 @@ import numpy as np
 
 from acceptance.errors import MeasurementError
 from acceptance.overload.episodes import Episode
+from acceptance.overload.trace import Trace, scatter
 from acceptance.points.instrument import converter_step_uncertainty
 from acceptance.points.point import Estimate
 from acceptance.points.propagation import Source, of_source
@@ -75,15 +76,23 @@ def _with_errors(episode: Episode, back: int, most: float) -> Estimate:
     time, removed = trace.time, episode.removed
     assert time is not None
     assert removed is not None
-    digits = max((channel.step for channel in trace.part.log.channels if channel.key == "time"), default=0.0)
-    u_digits = math.sqrt(2.0) * converter_step_uncertainty(digits)
+    u_digits = math.sqrt(2.0) * converter_step_uncertainty(_step(trace, "time"))
     u_edge, before = 0.0, max(removed, back - _EDGE)
     if back > removed:
-        u_voltage = trace.part.bench.standard_uncertainty(trace.voltage_key, float(trace.voltage[back]))
+        u_voltage = math.hypot(
+            trace.part.bench.standard_uncertainty(trace.voltage_key, float(trace.voltage[back])),
+            converter_step_uncertainty(_step(trace, trace.voltage_key)),
+            scatter(trace.voltage[back : episode.stop]),
+        )
         moved = abs(float(trace.voltage[back] - trace.voltage[before]))
         u_edge = float(time[back] - time[before]) * u_voltage / max(moved, u_voltage, 1e-300)
     value = most + of_source(u_digits, Source("digits of the time", "B"))
     return Estimate(value + of_source(u_edge, Source("error of the voltage at the edge of the band", "B")))
+
+
+def _step(trace: Trace, key: str) -> float:
+    """The last digit that a channel was logged with, in its unit."""
+    return max((channel.step for channel in trace.part.log.channels if channel.key == key), default=0.0)
 
 
 def _remedy(episode: Episode) -> str:

@@ -24,6 +24,8 @@ STAGE = "overcurrent"
 RATED = 1.02  # of rated current: up to here a load is no overload, by the tolerance of a full load
 OFF = 0.25  # of rated voltage: an output below it, with next to no current, gives nothing
 NO_CURRENT = 0.05  # of rated current; a folded output still gives a fifth of it (makers' own answers)
+_UP = 0.5  # of rated voltage
+_DRAWS_NOTHING = 0.01  # of rated current, as far as an offset of the meter goes
 _OVERLOAD = 1.05  # of rated current: a table without stages is an overload's from here on
 _LARGEST = 1e9  # [V, A]: what is beyond it was never read
 _OF_MEANS = ("slow settling", "unsteady", "never moves")  # doubts about dwells
@@ -100,7 +102,16 @@ class Trace:
         for mode, values in by_mode.items():
             here = (self.modes == mode) & np.isfinite(self.setting)
             asked[here] = values[here]
+        asked[self.load_off()] = 0.0
         return asked
+
+    def load_off(self) -> Mask:
+        """Whether the load was switched off, whatever its setting still says: the output is up and nothing is drawn."""
+        if self.setting is None:
+            return np.zeros(self.size, bool)
+        up = self.voltage > _UP * self.rated_voltage
+        off: Mask = up & (np.abs(self.current) < _DRAWS_NOTHING * self.rated_current)
+        return off
 
     def overloaded(self) -> Mask:
         """Whether each sample is one of an overload.
@@ -115,6 +126,7 @@ class Trace:
         rated_resistance = self.rated_voltage / self.rated_current
         gives = (self.voltage > OFF * self.rated_voltage) | (self.current > NO_CURRENT * self.rated_current)
         tight = self.voltage < rated_resistance / RATED * self.current
+        tight[1:-1] &= tight[:-2] | tight[2:] | ~(gives[:-2] & gives[2:])  # a single one is noise at rated load
         return _carried(tight, gives)
 
     def _regulated(self) -> float:

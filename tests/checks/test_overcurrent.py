@@ -221,7 +221,7 @@ def latched(*, source_off: bool, down: int, back: bool = False) -> pd.DataFrame:
 
 
 def test_latch_off_is_shown_by_cycling_the_source():
-    decided = judged(latched(source_off=True, down=20), "behaviour: latch off")
+    decided = judged(latched(source_off=True, down=100), "behaviour: latch off")
 
     assert decided.verdict == "pass", decided.reason
     assert "until the source was cycled" in decided.by.candidate.at
