@@ -251,8 +251,9 @@ class Series:
     x: list[float]
     y: list[float]
     expanded_uncertainty: list[float | None]  # of y
-    # points: marks with error bars, led through; line: no marks; dots: samples that nothing joins
-    kind: Literal["points", "line", "dots"] = "points"
+    # points: marks with error bars, led through; trace: a measured line; line: one that was worked out, such as a fit;
+    # dots: samples that nothing joins
+    kind: Literal["points", "trace", "line", "dots"] = "points"
 
 
 @dataclass(frozen=True, slots=True)

@@ -160,7 +160,7 @@ def _over_time(
 
 def _trace_series(name: str, time: Floats, values: Floats) -> Series:
     x, y = thinned_trace(time, values, buckets=_BUCKETS)
-    return Series(name, x, y, [None] * len(x), "line")
+    return Series(name, x, y, [None] * len(x), "trace")
 
 
 def _moments(requirement: Overcurrent, overload: Overload, episode: Episode) -> list[Mark]:

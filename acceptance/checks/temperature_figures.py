@@ -13,6 +13,7 @@ from acceptance.thermal.warming import WINDOW
 __all__ = ["cooling_figure", "soak_figure"]
 
 _CURVE = 120  # places of a fitted curve
+_TRACE = 300  # buckets of a measured trace
 
 
 def soak_figure(warm: Warm, key: str, *, suffix: str, limit: float | None, label: str, is_rise: bool) -> Figure:
@@ -24,7 +25,7 @@ def soak_figure(warm: Warm, key: str, *, suffix: str, limit: float | None, label
     curve = warm.settling.curve
     if curve is not None and curve.residuals.size == warming.probe.size:
         # what the curve says, in the room that there was
-        series.append(_trace("fitted curve", warming.time, warming.probe - curve.residuals, buckets=_CURVE))
+        series.append(_line("fitted curve", warming.time, warming.probe - curve.residuals))
     marks = [Mark("settled", moment)] if (moment := _settled_from(warm)) is not None else []
     return Figure(
         name=f"{key}{suffix}",
@@ -53,7 +54,7 @@ def cooling_figure(cooling: Cooling, *, name: str, limit: float | None, label: s
     marks = []
     if cooling.drawn is not None:
         time = np.linspace(0.0, float(cooling.drawn.time[-1]), _CURVE)
-        series.append(_trace(cooling.drawn.method, time, cooling.drawn.curve.at(time) + cooling.room))
+        series.append(_line(cooling.drawn.method, time, cooling.drawn.curve.at(time) + cooling.room))
         marks.append(Mark("at switch-off", 0.0, cooling.hottest))
     return Figure(
         name=name,
@@ -66,8 +67,12 @@ def cooling_figure(cooling: Cooling, *, name: str, limit: float | None, label: s
     )
 
 
-def _trace(name: str, x: np.ndarray, y: np.ndarray, *, buckets: int = 300) -> Series:
-    return _known(Series(name, *thinned_trace(x, y, buckets=buckets), [], "line"))
+def _trace(name: str, x: np.ndarray, y: np.ndarray) -> Series:
+    return _known(Series(name, *thinned_trace(x, y, buckets=_TRACE), [], "trace"))
+
+
+def _line(name: str, x: np.ndarray, y: np.ndarray) -> Series:
+    return _known(Series(name, *thinned_trace(x, y, buckets=_CURVE), [], "line"))
 
 
 def _known(series: Series) -> Series:

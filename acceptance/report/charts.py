@@ -26,7 +26,7 @@ from acceptance.report.annotations import (
 )
 from acceptance.report.axes import LinearAxis, axis_for, decimate, decimate_cloud, decimate_path
 from acceptance.report.blocks import Block
-from acceptance.report.curves import SPARSE, draw_sample, draw_series, is_trace, led_through
+from acceptance.report.curves import LINES, SPARSE, draw_sample, draw_series, led_through
 from acceptance.report.fonts import printable, string_width
 from acceptance.report.pen import Pen
 from acceptance.report.placing import Box, Crowd, Label, apart, place_labels
@@ -49,7 +49,6 @@ class Chart(Block):
         self._figure = figure
         finite = [_finite(series) for series in figure.series]
         self._lost = sum(len(series.x) for series in figure.series) - sum(len(series.x) for series in finite)
-        self._traces = [is_trace(series) for series in finite]
         self._series = _thinned(finite)
         self._xs, self._ys = self._numbers()
         self._width = width
@@ -150,7 +149,7 @@ class Chart(Block):
         draw_borders(pen, self._figure, plot)
         draw_limits(pen, self._figure, plot)
         for place in self._order():
-            draw_series(pen, self._series[place], place, plot, is_trace=self._traces[place])
+            draw_series(pen, self._series[place], place, plot)
         draw_marks(pen, self._figure, plot)
         self._draw_labels(pen, x, low)
         middle = (plot.horizontal.start + plot.horizontal.end) / 2
@@ -167,8 +166,8 @@ class Chart(Block):
 
         def height(place: int) -> int:
             series = self._series[place]
-            if series.kind == "line":
-                return 1 if self._traces[place] else 2
+            if series.kind in LINES:
+                return 1 if series.kind == "trace" else 2
             return 4 if series.kind == "points" else 3 if len(series.x) <= SPARSE else 0
 
         return sorted(range(len(self._series)), key=height)
@@ -180,7 +179,7 @@ class Chart(Block):
         rows = 0
         for row, offset, place in self._legend:
             series = self._figure.series[place]
-            draw_sample(pen, series, place, (x + offset, y - row * 10.0 - 5.0), is_trace=self._traces[place])
+            draw_sample(pen, series, place, (x + offset, y - row * 10.0 - 5.0))
             pen.text(x + offset + 18, y - row * 10.0 - 7.4, fit(fold(series.name), _LABEL, self._width - 18), _LABEL)
             rows = row + 1
         y -= rows * 10.0 + self._drop
@@ -254,7 +253,7 @@ def _axis_title(axis: Axis, numbers: Sequence[float]) -> str:
 def _crowd_in(crowd: Crowd, series: Series, plot: Plot) -> None:
     """Where a series lies on the page: its points, its error bars, and the line through them."""
     points = [plot.place(x, y) for x, y in zip(series.x, series.y, strict=True)]
-    if series.kind == "line":
+    if series.kind in LINES:
         crowd.add_path(points)
         return
     weight = 3.0 if series.kind == "points" else 1.0

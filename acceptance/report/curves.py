@@ -13,29 +13,18 @@ from acceptance.report.axes import LinearAxis
 from acceptance.report.pen import Pen
 from acceptance.report.style import ACCENT, WHITE, Colour
 
-__all__ = ["SPARSE", "draw_sample", "draw_series", "is_trace", "led_through"]
+__all__ = ["LINES", "SPARSE", "draw_sample", "draw_series", "led_through"]
 
 _COLOURS: tuple[Colour, ...] = (ACCENT, (0.72, 0.40, 0.05), (0.10, 0.45, 0.35), (0.42, 0.22, 0.50), (0.35, 0.38, 0.42))
 _DASHES: tuple[tuple[float, ...], ...] = ((), (5, 2), (1.5, 1.8), (7, 2, 1.5, 2))
 _MARK = 2.3  # half the width of a mark
 _CAP = 1.9  # half the width of an error bar's end
-_FIT, _TRACE, _LED = 1.2, 0.6, 0.7  # widths of lines
+LINES = ("trace", "line")  # kinds of series that are drawn without marks
+_WIDTHS = {"points": 0.7, "trace": 0.6, "line": 1.2}
 SPARSE = 100  # so few dots are larger, and lie above the lines
-_LONG = 300  # a line of more points is a measured trace
-_TURNS = 3  # and so is one that turns back more often: a fit is smooth
 
 
-def is_trace(series: Series) -> bool:
-    """Whether a line looks measured rather than fitted: of many points, or going up and down by more than is unseen."""
-    if series.kind != "line" or len(series.y) < 3:
-        return False
-    unseen = 0.002 * (max(series.y) - min(series.y))
-    steps = [step for one, other in zip(series.y, series.y[1:], strict=False) if abs(step := other - one) > unseen]
-    turns = sum((one > 0) != (other > 0) for one, other in zip(steps, steps[1:], strict=False))
-    return len(series.y) > _LONG or turns > _TURNS
-
-
-def draw_series(pen: Pen, series: Series, place: int, plot: Plot, *, is_trace: bool = False) -> None:
+def draw_series(pen: Pen, series: Series, place: int, plot: Plot) -> None:
     """A series in the form that its kind and its place among the series ask for."""
     points = [plot.place(x, y) for x, y in zip(series.x, series.y, strict=True)]
     colour = _COLOURS[place % len(_COLOURS)]
@@ -43,15 +32,20 @@ def draw_series(pen: Pen, series: Series, place: int, plot: Plot, *, is_trace: b
     if series.kind == "dots":
         _draw_dots(pen, points, place, are_few=len(points) <= SPARSE)
         return
-    if series.kind == "line":
-        pen.line(points, _light(colour) if is_trace else colour, _TRACE if is_trace else _FIT, dash=dash)
+    if series.kind in LINES:
+        pen.line(points, _stroke(series, colour), _WIDTHS[series.kind], dash=dash)
         if len(points) == 1:
             _draw_mark(pen, place, points[0])
         return
-    pen.line(led_through(points, plot), colour, _LED, dash=dash)
+    pen.line(led_through(points, plot), colour, _WIDTHS[series.kind], dash=dash)
     _draw_bars(pen, series, points, plot.vertical, colour)
     for point in points:
         _draw_mark(pen, place, point)
+
+
+def _stroke(series: Series, colour: Colour) -> Colour:
+    """A measured trace is lighter, so that the curve fitted to it shows."""
+    return _light(colour) if series.kind == "trace" else colour
 
 
 def _light(colour: Colour) -> Colour:
@@ -131,14 +125,14 @@ def _draw_mark(pen: Pen, place: int, centre: tuple[float, float]) -> None:
             )
 
 
-def draw_sample(pen: Pen, series: Series, place: int, left: tuple[float, float], *, is_trace: bool = False) -> None:
+def draw_sample(pen: Pen, series: Series, place: int, left: tuple[float, float]) -> None:
     """A series' sign in the legend."""
     x, y = left
     if series.kind == "dots":
         _draw_dots(pen, [(x + 2, y), (x + 7, y), (x + 12, y)], place, are_few=len(series.x) <= SPARSE)
         return
     colour = _COLOURS[place % len(_COLOURS)]
-    width = _LED if series.kind == "points" else _TRACE if is_trace else _FIT
-    pen.line([(x, y), (x + 14, y)], _light(colour) if is_trace else colour, width, dash=_DASHES[place % len(_DASHES)])
+    dash = _DASHES[place % len(_DASHES)]
+    pen.line([(x, y), (x + 14, y)], _stroke(series, colour), _WIDTHS[series.kind], dash=dash)
     if series.kind == "points":
         _draw_mark(pen, place, (x + 7, y))

@@ -558,7 +558,7 @@ def test_figure_shows_probe_ambient_curve_limit_and_settling() -> None:
 
     assert figure.name == "temperature case"
     assert [series.name for series in figure.series] == ["temperature case", "ambient", "fitted curve"]
-    assert all(series.kind == "line" and len(series.x) <= 700 for series in figure.series)
+    assert all(series.kind in ("trace", "line") and len(series.x) <= 700 for series in figure.series)
     (limit,) = figure.limits
     assert limit.y == pytest.approx(63.0, abs=0.05)
     (mark,) = figure.marks

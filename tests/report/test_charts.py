@@ -12,10 +12,10 @@ from hypothesis import strategies as st
 
 from acceptance.printing import MINUS, Scale, scale_for
 from acceptance.record import Axis, Figure, LimitLine, Mark, Region, Series
-from acceptance.report.annotations import GROUND
+from acceptance.report.annotations import GROUND, Plot
 from acceptance.report.axes import axis_for, decimate, decimate_cloud, decimate_path, nice_step
 from acceptance.report.charts import Chart
-from acceptance.report.curves import is_trace
+from acceptance.report.curves import draw_series
 from acceptance.report.pen import Pen
 from acceptance.report.placing import Crowd, Label, place_labels
 from acceptance.report.style import ACCENT, FURNITURE, RED
@@ -319,16 +319,19 @@ def test_legend_names_series_and_neither_marks_nor_regions(lines):
     assert "a" not in texts
 
 
-def test_measured_traces_are_told_from_smooth_lines():
-    """What goes up and down, or has many points, was measured; an exponential was fitted."""
-    smooth = [math.exp(-n / 30) for n in range(100)]
-    rough = [value + (0.01 if n % 2 else -0.01) for n, value in enumerate(smooth)]
+def test_a_fitted_line_is_heavier_than_the_trace_it_was_fitted_to(monkeypatch):
+    """Both must be seen where they lie on one another."""
+    drawn: list[tuple[float, tuple[float, float, float]]] = []
+    monkeypatch.setattr(Pen, "line", lambda _, points, colour, width, dash=(): drawn.append((width, colour)))
+    axis = axis_for([0.0, 99.0], PLAIN, (0.0, 100.0), most=5)
     places = [float(n) for n in range(100)]
 
-    assert not is_trace(Series("fit", places, smooth, [None] * 100, "line"))
-    assert is_trace(Series("core", places, rough, [None] * 100, "line"))
-    assert is_trace(Series("long", [float(n) for n in range(400)], [1.0] * 400, [None] * 400, "line"))
-    assert not is_trace(Series("points", places, rough, [None] * 100))
+    for kind in ("trace", "line"):
+        draw_series(object.__new__(Pen), Series("case", places, places, [None] * 100, kind), 0, Plot(axis, axis))
+
+    (trace, light), (fit, dark) = drawn
+    assert trace < fit
+    assert sum(light) > sum(dark)
 
 
 @pytest.mark.parametrize("lowest", [2.0, 0.0, -0.004])
