@@ -152,7 +152,7 @@ def _over_time(
         x=Axis("time", "s"),
         y=Axis("output current", "A"),
         series=[_trace_series("output current", time, trace.current[here])],
-        limits=_short_limits(requirement, trace.rated_current),
+        limits=_short_limits(requirement, overload, episode),
         marks=marks,
     )
     return [volts, amperes]
@@ -186,8 +186,15 @@ def _band(requirement: Overcurrent, rated: float, marks: Sequence[Mark]) -> list
     return [Region(f"{requirement.name}.recovery", x_from=marks[0].x, y_from=low, y_to=high)]
 
 
-def _short_limits(requirement: Overcurrent, rated: float) -> list[LimitLine]:
-    short = requirement.short_circuit
-    if short is None or short.max is None:
+def _short_limits(requirement: Overcurrent, overload: Overload, episode: Episode) -> list[LimitLine]:
+    """The limits of the short circuit, drawn while there was one: before it more current is no fault."""
+    asked, short, time = requirement.short_circuit, _tried(overload.short), episode.trace.time
+    if asked is None or short is None or time is None:
         return []
-    return [LimitLine(f"{requirement.name}.short_circuit max", short.max * rated, "max")]
+    begins, rated = float(time[episode.start]), episode.trace.rated_current
+    span = float(time[short.first]) - begins, float(time[short.stop - 1]) - begins
+    label = f"{requirement.name}.short_circuit"
+    return [
+        *([] if asked.min is None else [LimitLine(f"{label} min", asked.min * rated, "min", *span)]),
+        *([] if asked.max is None else [LimitLine(f"{label} max", asked.max * rated, "max", *span)]),
+    ]

@@ -17,6 +17,7 @@ from acceptance.points.propagation import Source, of_source
 
 __all__ = ["Returned", "returned_after"]
 
+_LOST = 50  # an error so many times smaller than the bracket
 _EDGE = 3  # samples back from the first one in the band, over which the voltage's way into it is looked at
 
 
@@ -59,7 +60,7 @@ def returned_after(episode: Episode, *, band: float, within: float) -> Returned:
     back = removed + (int(out[-1]) + 1 if out.size else 0)
     most = float(time[back] - time[episode.last_over])
     least = max(0.0, float(time[max(back - 1, removed)] - time[removed]))
-    value = _with_errors(episode, back, most)
+    value = _with_errors(episode, back, most, bracket=most - least)
     told = f"between {least:.3g} s and {most:.3g} s, by the samples"
     if most > within >= least:
         reason = f"it took {told}, which leaves open whether that is within {within:g} s; {_remedy(episode)}"
@@ -67,10 +68,11 @@ def returned_after(episode: Episode, *, band: float, within: float) -> Returned:
     return Returned(value, removed, back, told=told)
 
 
-def _with_errors(episode: Episode, back: int, most: float) -> Estimate:
+def _with_errors(episode: Episode, back: int, most: float, *, bracket: float) -> Estimate:
     """The upper end of the bracket, which takes in what the sampling leaves open, and what else may be wrong with it.
 
     That are the digits of two times, and the moment at which a voltage that reads a little wrong crosses the edge.
+    What is lost in the bracket is left out: it would print digits that nobody saw.
     """
     trace = episode.trace
     time, removed = trace.time, episode.removed
@@ -86,6 +88,8 @@ def _with_errors(episode: Episode, back: int, most: float) -> Estimate:
         )
         moved = abs(float(trace.voltage[back] - trace.voltage[before]))
         u_edge = float(time[back] - time[before]) * u_voltage / max(moved, u_voltage, 1e-300)
+    if _LOST * math.hypot(u_digits, u_edge) < bracket:
+        return Estimate(most)
     value = most + of_source(u_digits, Source("digits of the time", "B"))
     return Estimate(value + of_source(u_edge, Source("error of the voltage at the edge of the band", "B")))
 

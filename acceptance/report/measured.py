@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Sequence
+from dataclasses import replace
 from itertools import groupby
 
 from acceptance.printing import DASH, column, count, difference_unit, printed, scale_for
@@ -101,16 +102,26 @@ _ELECTRICAL = ("voltage", "current", "power", "power_factor")
 
 
 def points(record: Record) -> list[Block]:
-    """Every dwell: where it lies, and the mean reading of each channel with twice its standard uncertainty."""
-    listed = record.points
+    """Dwells: where each lies, and the mean reading of each channel with twice its standard uncertainty.
+
+    Those of the steady test, and whatever else a finding was formed from: a mean over bursts, or over a winding that
+    cools, tells nothing.
+    """
+    used = {at.point for finding in record.findings for at in finding.points}
+    listed = [point for point in record.points if point.stage == "steady" or point.index in used]
     if not listed:
         return []
+    left_out = len(record.points) - len(listed)
+    record = replace(record, points=listed)
     first, left = _places(record)
     note = (
         "n: samples in the dwell. Effective: as many independent samples as the output voltage's scatter is worth. "
         "Settling: samples left out before the dwell. Readings: mean ± expanded uncertainty, k = 2 (efficiency: as "
         "judged); without ± the instrument's accuracy is not stated."
     )
+    if left_out:
+        dwells = "1 dwell" if left_out == 1 else f"{left_out} dwells"
+        note += f" Of other stages, in the record alone since no finding rests on a mean of them: {dwells}."
     return [
         heading("Dwells"),
         Text(note, SMALL, above=1, keep_next=True),

@@ -728,3 +728,15 @@ def test_value_without_uncertainty_of_its_own_is_printed_as_it_is():
 
     assert "0.4 s" in text
     assert "0.40" not in text
+
+
+def test_dwells_that_no_finding_rests_on_stand_in_the_record_alone():
+    """A mean over bursts, or over a winding that cools, is no reading."""
+    base = make("typical")
+    bursts = replace(base.points[-1], index=len(base.points), stage="overcurrent", where="A-17_ocp.csv, lines 3 to 9")
+
+    plain, with_bursts = text_of(base), text_of(replace(base, points=[*base.points, bursts]))
+
+    assert "A-17_ocp.csv" not in with_bursts
+    assert "no finding rests on a mean of them: 1 dwell." in with_bursts
+    assert "Of other stages" not in plain
