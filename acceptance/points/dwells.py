@@ -34,6 +34,7 @@ SUSPICIOUS = 0.3  # of a dwell: nothing that has settled moves for so long after
 HALF_LEFT = 8  # samples; below this a half says nothing about settling
 SETTLING_QUANTITIES = ("output_current", "output_voltage", "input_power")
 LARGEST = 1e150  # beyond it is no reading, and sums of squares overflow
+STEADY = "steady"  # the stage whose means are judged
 BY_HAND = "one row a condition"
 DECLARED = "load setting"
 
@@ -136,8 +137,10 @@ def find_dwells(
                 where = str(stage.iat[first]), int(table[first])
                 drift = _drift(samples, first, stop)
                 dwells.append(Dwell(first, stop, steady.begins, *where, steady.from_, drift, steady.first))
-                # what a mean must wait for: whether an overload settles is looked at sample by sample
-                if slow and where[0] != "overcurrent":
+                # what a mean must wait for: an overload and a soak are looked at sample by sample
+                if where[0] != STEADY:
+                    continue
+                if slow:
                     doubts.append(_slow_settling(log, steady, first, slow))
                 elif (
                     settle is None and stop - first >= HALF_LEFT and first - steady.first >= (stop - steady.first) // 2

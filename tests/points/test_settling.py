@@ -179,3 +179,13 @@ def test_an_input_that_steps_two_samples_after_the_load_makes_no_dwell_of_the_tw
 
     assert len(found.dwells) == 2
     assert [doubt.kind for doubt in found.doubts] == ["dwell left out"]
+
+
+@pytest.mark.parametrize("stage", ["thermal", "overcurrent", "cooling"])
+def test_settling_outside_the_steady_test_is_not_doubted(stage):
+    """A soak and an overload are looked at sample by sample, so that no mean waits for them."""
+    log = log_of(two_dwells(0.45))
+    other = replace(log, samples=log.samples.assign(stage=pd.Categorical([stage] * len(log.samples))))
+
+    assert find_dwells(log, rated={"main": 4.0}).doubts
+    assert not find_dwells(other, rated={"main": 4.0}).doubts
