@@ -28,7 +28,7 @@ class InsulationClass:
         """Table and evidence, for the report."""
         return (
             f"class {self.name}: at most {self.winding:g} °C for the winding of a small transformer (EN 61558-1; "
-            f"{self.evidence}), which is stricter than the {self.temperature:g} °C that IEC 60085 names the class by"
+            f"{self.evidence}); the class itself is named by {self.temperature:g} °C (IEC 60085)"
         )
 
 
