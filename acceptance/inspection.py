@@ -82,12 +82,12 @@ def _one(log: BenchLog, dwell: Dwell, number: int, keys: Sequence[str]) -> Dwell
     means: dict[str, float] = {}
     us: dict[str, float | None] = {}
     for key in keys:
-        samples = log.samples[key].to_numpy(dtype=np.float64)[span[0] : span[1]]
+        samples = log.part(key, *span)
         finite = samples[np.isfinite(samples)]
         if finite.size:
             spread = type_a(finite)
             means[key], us[key] = spread.mean, spread.standard_uncertainty
-    time = log.samples["time"].to_numpy(dtype=np.float64)[[span[0], span[1] - 1]] if "time" in log.samples else None
+    time = log.part("time", *span)[[0, -1]] if "time" in log.samples else None
     known = time is not None and bool(np.isfinite(time).all())
     return DwellShown(
         number=number,

@@ -98,7 +98,7 @@ def find_points(log: BenchLog, limits: Limits) -> Points:
     if not doubts:
         return points
     dwells = [point.dwell for point in points.all]
-    return measure_points(replace(log, doubts=(*log.doubts, *doubts)), dwells, limits)
+    return measure_points(replace(log, doubts=(*log.doubts, *doubts)), dwells, limits, before=points)
 
 
 def check_points(points: Points) -> list[CheckResult]:

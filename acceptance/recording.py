@@ -12,6 +12,7 @@ import numpy as np
 
 from acceptance import __version__
 from acceptance.bench.log import QUANTITIES, BenchLog, Channel, Doubt
+from acceptance.bench.packed import extent_of
 from acceptance.decision import (
     Decided,
     Verdict,
@@ -400,9 +401,9 @@ def _rule(limits: Limits) -> DecisionRule:
 def _test(log: BenchLog, limits: Limits) -> TestFacts:
     ambient = None
     if "ambient_temperature" in log.samples:
-        values = log.samples["ambient_temperature"].to_numpy(dtype=np.float64)
-        if np.isfinite(values).any():
-            ambient = [float(np.nanmin(values)), float(np.nanmax(values))]
+        low, high = extent_of(log.column("ambient_temperature"))
+        if low <= high:
+            ambient = [low, high]
     return TestFacts(
         date=log.test_date.isoformat() if log.test_date is not None else None,
         stages=[str(stage) for stage in log.samples["stage"].unique()],

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass, field, replace
 from datetime import date, datetime
 
@@ -13,8 +13,11 @@ from acceptance.bench.clocks import Times, read_dates, read_times
 from acceptance.bench.digits import coarser_step, logged_step, written_decimals
 from acceptance.bench.headings import Heading, plain, resolve_unit, shown
 from acceptance.bench.log import Channel, Span, channel_key
+from acceptance.bench.packed import Packed
+from acceptance.bench.stamps import Stamps
 from acceptance.bench.table import RawColumn, RawTable, Source
-from acceptance.bench.values import Readings, to_readings
+from acceptance.bench.values import Column, Readings, Worded, to_readings
+from acceptance.bench.words import Words, each_word
 from acceptance.errors import LogError
 from acceptance.units import KINDS, UNITS, Unit
 
@@ -35,9 +38,9 @@ class Samples:
     name: str
     file: str
     sheet: str
-    lines: NDArray[np.int64]
-    numbers: dict[str, NDArray[np.float64]] = field(default_factory=dict)  # channel key -> SI values
-    texts: dict[str, list[str]] = field(default_factory=dict)  # "stage", "serial", "load_mode ..."; "" where empty
+    lines: NDArray[np.int64] | Packed
+    numbers: dict[str, Column] = field(default_factory=dict)  # channel key -> SI values
+    texts: dict[str, Sequence[str]] = field(default_factory=dict)  # "stage", "serial", "load_mode ..."; "" where empty
     channels: list[Channel] = field(default_factory=list)
     missing: dict[str, tuple[NDArray[np.intp], str]] = field(default_factory=dict)  # key -> rows, first place
     over_range: dict[str, tuple[NDArray[np.intp], str]] = field(default_factory=dict)
@@ -127,9 +130,26 @@ def _words(key: str) -> str:
 def _mode(columns: Sequence[RawColumn], load_mode: str | None) -> str | None:
     for column in columns:
         if column.heading.quantity == "load_mode":
-            modes = {_mode_text(cell) for cell in column.cells} - {""}
+            cells = _texts_of(column)
+            modes = {_mode_text(cell) for cell in (cells.words if isinstance(cells, Words) else cells)} - {""}
             return modes.pop() if len(modes) == 1 else load_mode
     return load_mode
+
+
+def _texts_read(cells: Iterable[object], read: Callable[[object], str]) -> list[str]:
+    known: dict[object, str] = {}
+    texts = []
+    for cell in cells:
+        key = (type(cell), cell)
+        if key not in known:
+            known[key] = read(cell)
+        texts.append(known[key])
+    return texts
+
+
+def _texts_of(column: RawColumn) -> Iterable[object]:
+    assert isinstance(column.cells, (Sequence, np.ndarray))  # only readings are packed
+    return column.cells
 
 
 def _mode_text(cell: object) -> str:
@@ -149,14 +169,9 @@ def _text(cell: object) -> str:
 def _take_texts(samples: Samples, table: RawTable, column: RawColumn) -> None:
     heading = column.heading
     read = _mode_text if heading.quantity == "load_mode" else _text
-    known: dict[object, str] = {}
-    texts = []
-    for cell in column.cells:
-        key = (type(cell), cell)
-        if key not in known:
-            known[key] = read(cell)
-        texts.append(known[key])
-    samples.texts[heading.key] = [text.lower() for text in texts] if heading.quantity == "stage" else texts
+    cells = _texts_of(column)
+    texts = each_word(cells, read) if isinstance(cells, Words) else _texts_read(cells, read)
+    samples.texts[heading.key] = each_word(texts, str.lower) if heading.quantity == "stage" else texts
     samples.channels.append(_channel(table, heading, "", "not a number", None))
 
 
@@ -189,7 +204,7 @@ def _step(column: RawColumn, readings: Readings, factor: float) -> float:
     """What one unit of the last digit written is. [SI]"""
     cells = column.cells
     decimals = column.decimals
-    if decimals is None and not isinstance(cells, np.ndarray):
+    if decimals is None and isinstance(cells, Sequence):
         texts = [cell for cell in cells[:: max(1, len(cells) // 300)] if isinstance(cell, str)]
         decimals = written_decimals(texts)
     if decimals is None:
@@ -281,8 +296,14 @@ def _refuse_nothing(samples: Samples, table: RawTable) -> None:
         found = "no measured quantity is among the headings"
         expected = "name the columns under log: columns: in the limits or bench file"
         raise LogError(file, found, expected, line=table.heading_line, column=1)
-    if all(np.isnan(values).all() for values in measured.values()):
+    if all(_is_empty(values) for values in measured.values()):
         raise LogError(file, "no reading stands under the headings", "expected one row of numbers for each sample")
+
+
+def _is_empty(values: Column) -> bool:
+    if isinstance(values, Packed):
+        return all(np.isnan(part).all() for _, part in values.parts())
+    return bool(np.isnan(values).all())
 
 
 # --- time -----------------------------------------------------------------------------------------------------------
@@ -303,7 +324,7 @@ def _take_time(samples: Samples, table: RawTable, columns: Sequence[RawColumn]) 
             samples.channels.append(_channel(table, dates.heading, "", "not a number", None))
             return
         clock = dates
-    elif dates is not None and not isinstance(clock.cells, np.ndarray):
+    elif dates is not None and isinstance(clock.cells, Sequence):
         times = _times(table, clock, dates)
     else:
         times = _times(table, clock, None)
@@ -317,7 +338,7 @@ def _take_time(samples: Samples, table: RawTable, columns: Sequence[RawColumn]) 
 
 def _has_clock(column: RawColumn) -> bool:
     """Whether the cells of a column headed "date" carry a time of day."""
-    if isinstance(column.cells, np.ndarray):
+    if not isinstance(column.cells, Sequence):
         return True
     first = next((cell for cell in column.cells if cell not in (None, "")), None)
     if isinstance(first, datetime):
@@ -331,20 +352,26 @@ def _times(table: RawTable, column: RawColumn, dates: RawColumn | None) -> Times
         return read_times(column.cells, place, dates=(dates.cells, table.place(dates)))
     cells = column.cells
     unit, _ = _unit(table, column)
-    if not isinstance(cells, np.ndarray) and _is_numeric(cells):
+    if isinstance(cells, Sequence) and _is_numeric(cells):
         cells = to_readings(
             cells, place, unit=None, kind="time", decimal=table.decimal, thousands=table.thousands
         ).values
     if (
-        isinstance(cells, np.ndarray)
-        and cells.dtype.kind == "f"
-        and unit is None
-        and cells.size
-        and np.nanmax(np.abs(cells), initial=0) > _EPOCH_IN_MILLISECONDS
+        unit is None
+        and not isinstance(cells, (Sequence, Stamps, Worded))
+        and (isinstance(cells, Packed) or cells.dtype.kind == "f")
+        and _farthest(cells) > _EPOCH_IN_MILLISECONDS
     ):
         found = f'the numbers under "{shown(column.heading.text)}" are too large for seconds'
         place.refuse(0, found, "write the unit into the heading, such as (ms)")
     return read_times(cells, place, unit_factor=unit.factor if unit else 1.0)
+
+
+def _farthest(times: Column) -> float:
+    if isinstance(times, Packed):
+        low, high = times.extent()
+        return max(-low, high)
+    return float(np.nanmax(np.abs(times), initial=0))
 
 
 def _is_numeric(cells: Sequence[object]) -> bool:
@@ -362,7 +389,7 @@ def _keep_times(samples: Samples, table: RawTable, column: RawColumn, times: Tim
     samples.numbers[key] = times.seconds
     samples.day, samples.days_on, samples.started_at = times.day, times.days_on, times.started_at
     samples.doubts += times.doubts
-    rows = np.flatnonzero(np.isnan(times.seconds))
+    rows = times.seconds.missing() if isinstance(times.seconds, Packed) else np.flatnonzero(np.isnan(times.seconds))
     if rows.size:
         samples.missing[key] = (rows, table.place(column).at(int(rows[0])))
     if times.kind != "seconds":

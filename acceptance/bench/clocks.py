@@ -16,7 +16,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from acceptance.bench.headings import shown
-from acceptance.bench.values import MISSING, Cells, Place
+from acceptance.bench.packed import Packed
+from acceptance.bench.stamps import Stamps
+from acceptance.bench.values import MISSING, Cells, Column, Place, Worded
 
 __all__ = ["Times", "parse_day", "read_dates", "read_times"]
 
@@ -46,7 +48,7 @@ _STAMP = re.compile(
 class Times:
     """When each row was taken."""
 
-    seconds: NDArray[np.float64]  # as logged, or from the first row that has a clock; NaN where a cell is empty
+    seconds: Column  # as logged, or from the first row that has a clock; NaN where a cell is empty
     day: date | None = None  # the latest that a row lies in, where dates are written
     days_on: int = 0  # days, without a date: how many the last row lies after the first at the least
     started_at: datetime | None = None
@@ -92,6 +94,13 @@ def read_times(
     LogError
         At the first cell that is no time, or where dates that differ may be read in two ways.
     """
+    if isinstance(cells, Stamps):
+        if cells.form.is_clock:
+            return Times(cells.seconds, kind="clock", days_on=cells.days_on, doubts=_midnights(cells.midnights))
+        return Times(cells.seconds, cells.latest, started_at=cells.first, kind="date and time")
+    if isinstance(cells, Packed):
+        return _from_packed(cells, unit_factor)
+    assert not isinstance(cells, Worded)  # a word is no time: such a log is read whole
     if isinstance(cells, np.ndarray):
         times = _from_datetimes(cells) if cells.dtype.kind == "M" else None
         return times or _from_seconds(cells * unit_factor)
@@ -113,6 +122,10 @@ def read_times(
 
 def read_dates(cells: Cells, place: Place) -> tuple[date | None, tuple[tuple[str, str], ...]]:
     """The latest date of a column of dates, None where it may be read in two ways, and what is doubtful about it."""
+    if isinstance(cells, Stamps):
+        return cells.latest, ()
+    if isinstance(cells, (Packed, Worded)):
+        return None, ()
     if isinstance(cells, np.ndarray):
         times = _from_datetimes(cells) if cells.dtype.kind == "M" else None
         return (times.day if times else None), ()
@@ -211,6 +224,7 @@ def _from_datetimes(stamps: NDArray[Any], zone: Any = None) -> Times | None:
 
 
 def _stamps(cells: Cells, place: Place) -> tuple[list[_Stamp | None], _Order]:
+    assert not isinstance(cells, (Packed, Worded, Stamps))
     order = _Order()
     known: dict[object, _Stamp | None] = {}
     stamps: list[_Stamp | None] = []
@@ -366,7 +380,9 @@ def _from_stamps(stamps: Sequence[_Stamp | None], order: _Order, place: Place) -
     number = days[known[0]] or 0
     begun = date.fromordinal(number) if number > 0 else None
     started = _started(begun, first)
-    return Times(seconds - seconds[known[0]], _latest(days), started_at=started, kind="date and time", doubts=doubts)
+    return Times(
+        _whole(seconds - seconds[known[0]]), _latest(days), started_at=started, kind="date and time", doubts=doubts
+    )
 
 
 def _started(day: date | None, stamp: _Stamp) -> datetime | None:
@@ -388,8 +404,20 @@ def _past_midnight(seconds: NDArray[np.float64]) -> tuple[NDArray[np.float64], t
         return seconds, ()
     carried = seconds.copy()
     carried[known[1:]] += _DAY * np.cumsum(crossed)
+    return carried, _midnights(count)
+
+
+def _midnights(count: int) -> tuple[tuple[str, str], ...]:
+    if not count:
+        return ()
     times = "once" if count == 1 else f"{count} times"
-    return carried, (("midnight", f"the clock passes midnight {times}; a day was added each time"),)
+    return (("midnight", f"the clock passes midnight {times}; a day was added each time"),)
+
+
+def _whole(seconds: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Differences of times as they were written: to a microsecond, without what a float loses of the hour."""
+    rounded: NDArray[np.float64] = np.rint(seconds * 1e6) / 1e6
+    return rounded
 
 
 def _from_clocks(seconds: NDArray[np.float64], *, doubts: tuple[tuple[str, str], ...] = ()) -> Times:
@@ -400,10 +428,17 @@ def _from_clocks(seconds: NDArray[np.float64], *, doubts: tuple[tuple[str, str],
     # a clock beyond 24 h counts from the start of something: only what it ran through is known
     since = 0.0 if past else start
     days = int((known.max() - since) // _DAY) if known.size else 0
-    return Times(carried - start, kind="clock", days_on=days, doubts=doubts + past)
+    return Times(_whole(carried - start), kind="clock", days_on=days, doubts=doubts + past)
 
 
 def _from_seconds(seconds: NDArray[np.float64]) -> Times:
     """Plain seconds as they were logged, since they count from something that matters."""
     known = seconds[np.isfinite(seconds)]
     return Times(seconds, days_on=int((known.max() - known.min()) // _DAY) if known.size else 0)
+
+
+def _from_packed(cells: Packed, unit_factor: float) -> Times:
+    """The same for a packed column."""
+    seconds = cells.converted(unit_factor, 0.0) if unit_factor != 1.0 else cells
+    low, high = seconds.extent()
+    return Times(seconds, days_on=int((high - low) // _DAY) if np.isfinite(low) and np.isfinite(high) else 0)

@@ -5,13 +5,16 @@ A converter's own step may be larger, and is for the bench file to state.
 
 from __future__ import annotations
 
+import csv
 import re
 from collections.abc import Iterable, Sequence
 
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["coarser_step", "logged_step", "sampled_cells", "written_decimals"]
+from acceptance.bench.packed import Packed
+
+__all__ = ["coarser_step", "logged_step", "sampled_cells", "spots", "written_decimals"]
 
 _NUMBER = re.compile(r"\s*\"?\s*[-+\u2212]?\d*(?:[.,](?P<fraction>\d*))?(?:[eE](?P<exponent>[-+]?\d{1,3}))?")
 _DECIMALS = range(-3, 9)  # thousands to a hundred-millionth of the unit that was logged
@@ -38,24 +41,44 @@ def written_decimals(cells: Iterable[str]) -> int | None:
     return most
 
 
-def sampled_cells(body: bytes, separator: str, width: int) -> list[list[str]]:
-    """Cells of some lines spread over a table, column by column; lines with quotes are passed over."""
+def spots(size: int) -> list[int]:
+    """Bytes spread over a table of so many, in whose lines the digits are looked at."""
+    return sorted({size * i // _LINES for i in range(_LINES)})
+
+
+def sampled_cells(body: bytes, separator: str, width: int, at: Sequence[int] | None = None) -> list[list[str]]:
+    """Cells of some lines spread over a table, column by column.
+
+    Comments, and lines with a quote that is left open, are passed over. `at` tells bytes in those lines; without it
+    they are spread evenly.
+    """
     size = len(body)
     mark = separator.encode()
     columns: list[list[str]] = [[] for _ in range(width)]
-    for start in sorted({size * i // _LINES for i in range(_LINES)}):
+    for start in spots(size) if at is None else at:
         begin = body.rfind(b"\n", 0, start) + 1
         end = body.find(b"\n", begin)
         line = body[begin : end if end >= 0 else size]
-        cells = line.split(mark)
-        if b'"' in line or len(cells) < width:
+        if line.startswith(b"#") or line.count(b'"') % 2:
+            continue
+        cells = _unquoted(line, separator) if b'"' in line else line.split(mark)
+        if len(cells) < width:
             continue
         for column, cell in zip(columns, cells, strict=False):
             column.append(cell.decode("ascii", errors="replace"))
     return columns
 
 
-def logged_step(values: Sequence[float] | NDArray[np.float64], factor: float) -> float:
+def _unquoted(line: bytes, separator: str) -> list[bytes]:
+    text = line.decode("latin-1").rstrip("\r")
+    try:
+        cells = next(csv.reader([text], delimiter=separator, skipinitialspace=True), [])
+    except csv.Error:
+        return []
+    return [cell.encode("latin-1") for cell in cells]
+
+
+def logged_step(values: Sequence[float] | NDArray[np.float64] | Packed, factor: float) -> float:
     """The decimal step that all values are whole multiples of; 0 where there is none, or too few values to tell.
 
     For workbooks, where a number has lost the zeros at its end.
@@ -76,7 +99,7 @@ def logged_step(values: Sequence[float] | NDArray[np.float64], factor: float) ->
     return _lattice(logged, factor) if logged.size >= _FEWEST else 0.0
 
 
-def coarser_step(values: Sequence[float] | NDArray[np.float64], factor: float, decimals: int) -> float:
+def coarser_step(values: Sequence[float] | NDArray[np.float64] | Packed, factor: float, decimals: int) -> float:
     """A step coarser than the digits that were written, where all values lie on it and chance would not do that.
 
     12.1000, 12.0000: three digits that say nothing, in two values. Of that many digits one in a thousand logs has
@@ -90,11 +113,13 @@ def coarser_step(values: Sequence[float] | NDArray[np.float64], factor: float, d
     return step if zeros * logged.size >= 4 and zeros >= 1 else 0.0
 
 
-def _different(values: Sequence[float] | NDArray[np.float64], factor: float) -> NDArray[np.float64]:
+def _different(values: Sequence[float] | NDArray[np.float64] | Packed, factor: float) -> NDArray[np.float64]:
     """The different values, in the unit of the file, zeros left out: they lie on every step."""
-    samples = np.asarray(values, dtype=np.float64)
-    finite = samples[np.isfinite(samples)]
-    logged = np.unique(finite[:: max(1, finite.size // _LOOKED_AT)] / factor)
+    samples = values if isinstance(values, Packed) and not values.missing().size else np.asarray(values, np.float64)
+    if isinstance(samples, np.ndarray):
+        samples = samples[np.isfinite(samples)]
+    seen = samples[:: max(1, samples.size // _LOOKED_AT)]
+    logged = np.unique(seen[np.isfinite(seen)] / factor)
     return np.asarray(logged[logged != 0], dtype=np.float64)
 
 

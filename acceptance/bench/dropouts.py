@@ -5,20 +5,23 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 
 import numpy as np
+from numpy.typing import NDArray
 
 from acceptance.bench.log import Doubt, Span
 from acceptance.bench.standstill import Trace, Values, place_of, words_of
+from acceptance.bench.values import Column
 
 __all__ = ["dropouts"]
 
 _BESIDE = 10  # neighbours looked at on each side of a zero
+_NEXT = 4  # neighbours on each side that are looked at first
 _FAR = 20.0  # times their spread that these lie from zero
 _DIGITS = 3  # of the channel: a reading of no more is no reading far from zero
 _ZEROS = 2  # in one neighbourhood; more of them are the unit's manner, such as bursts
 _CHANGED = 0.2  # of the input power: then the load did change
 
 
-def dropouts(channel: Trace, tables: Sequence[Span], power: Values | None = None) -> Iterator[Doubt]:
+def dropouts(channel: Trace, tables: Sequence[Span], power: Column | None = None) -> Iterator[Doubt]:
     """Single zeros amid readings far from zero: what some loggers write for a reading that did not come.
 
     Parameters
@@ -30,6 +33,7 @@ def dropouts(channel: Trace, tables: Sequence[Span], power: Values | None = None
     zeros = np.flatnonzero(values == 0)
     if not zeros.size:
         return
+    zeros = zeros[~_between_signs(values, zeros)]
     found = [
         row for a, b in tables for row in zeros[(zeros >= a) & (zeros < b)].tolist() if _is_alone(values, row, a, b)
     ]
@@ -46,6 +50,15 @@ def dropouts(channel: Trace, tables: Sequence[Span], power: Values | None = None
     spans = tuple((row, row + 1) for row in found)
     remedy = "look to the logger, and measure again or leave the line out"
     yield Doubt("dropout", text, bars=True, channels=(channel.key,), spans=spans, remedy=remedy)
+
+
+def _between_signs(values: Values, zeros: NDArray[np.intp]) -> NDArray[np.bool_]:
+    """Which zeros have readings above and below zero next to them: noise about zero, of which there may be much."""
+    inside = (zeros >= _NEXT) & (zeros < values.size - _NEXT)
+    steps = [step for step in range(-_NEXT, _NEXT + 1) if step]
+    beside = np.stack([values[np.clip(zeros + step, 0, values.size - 1)] for step in steps])
+    beside[~np.isfinite(beside)] = 0.0
+    return inside & (beside > 0).any(axis=0) & (beside < 0).any(axis=0)
 
 
 def _is_alone(values: Values, row: int, first: int, stop: int) -> bool:
@@ -71,9 +84,11 @@ def _last_digit(values: Values) -> float:
     return float(steps.min()) if steps.size else 0.0
 
 
-def _is_vouched(power: Values, row: int) -> bool:
+def _is_vouched(power: Column, row: int) -> bool:
     """Whether the input took another power in this sample, but took some: then the load did change."""
-    beside = power[[*range(max(0, row - _BESIDE), row), *range(row + 1, min(power.size, row + 1 + _BESIDE))]]
+    first = max(0, row - _BESIDE)
+    around = power[first : row + 1 + _BESIDE]
+    beside = np.delete(around, row - first)
     typical = float(np.median(beside[np.isfinite(beside)])) if np.isfinite(beside).any() else 0.0
-    here = power[row]
+    here = around[row - first]
     return bool(here != 0 and np.isfinite(here) and abs(here - typical) > _CHANGED * abs(typical))

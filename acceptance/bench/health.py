@@ -7,20 +7,26 @@ coarse converter, a quiet dwell and a zero current stand still for good reasons.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 
 import numpy as np
 from numpy.typing import NDArray
 
 from acceptance.bench.dropouts import dropouts
 from acceptance.bench.log import BenchLog, Doubt, Span
+from acceptance.bench.packed import Packed
 from acceptance.bench.standstill import Trace, Values, clipped, frozen, piled, place_of, runs_of, words_of
+from acceptance.bench.threads import each
+from acceptance.bench.values import Column
 
 __all__ = ["check_health"]
 
 _GAP_STEPS = 5.0  # a gap is a step this many times the median step
 _COARSE_SHARE = 0.01  # repeated times beyond this share are no accident
 _LISTED = 200  # spans kept of one doubt without a bar
+_BLOCK = 4096  # samples looked at in one go
+_BLOCKS = 256  # of them at the least
+_ENOUGH = 500_000  # samples that a median is taken from, of which one in so many counts in a longer log
 
 _ANALOGUE = ("input_voltage", "input_current", "input_power", "output_voltage", "output_current", "ripple")
 _NEVER_ZERO_ONCE = ("output_voltage", "input_voltage", "input_power", "output_current")
@@ -54,22 +60,27 @@ def check_health(
     doubts: list[Doubt] = []
     for table in tables:
         doubts += _clock_doubts(log, table)
-    for key in log.samples.columns:
-        quantity = key.partition(" ")[0]
-        if quantity in _ANALOGUE:
-            channel = Trace(log, key, _values(log, key), _driver(log, key))
-            ends = list(clipped(channel, tables))
-            doubts += ends
-            doubts += piled(channel, tables, [span for doubt in ends for span in doubt.spans])
-            if quantity in _PLACED:
-                doubts += frozen(channel, tables)
-            if quantity in _NEVER_ZERO_ONCE:
-                doubts += dropouts(channel, tables, _power(log) if quantity.startswith("output") else None)
+    keys = [key for key in log.samples.columns if key.partition(" ")[0] in _ANALOGUE]
+    for found in each(lambda key: _channel_doubts(log, key, tables), keys, samples=len(log.samples)):
+        doubts += found
     doubts += _missing(log)
     doubts += _no_input_power(log, supply)
     doubts += _swapped(log, rated, rated_input_voltage)
     doubts += _scale(log, rated, rated_input_voltage)
     return tuple(doubts)
+
+
+def _channel_doubts(log: BenchLog, key: str, tables: Sequence[Span]) -> list[Doubt]:
+    """What one channel's readings betray by themselves."""
+    quantity = key.partition(" ")[0]
+    channel = Trace(log, key, _values(log, key), _driver(log, key))
+    doubts = list(clipped(channel, tables))
+    doubts += piled(channel, tables, [span for doubt in doubts for span in doubt.spans])
+    if quantity in _PLACED:
+        doubts += frozen(channel, tables)
+    if quantity in _NEVER_ZERO_ONCE:
+        doubts += dropouts(channel, tables, _power(log) if quantity.startswith("output") else None)
+    return doubts
 
 
 # --- parts of a log -------------------------------------------------------------------------------------------------
@@ -83,14 +94,14 @@ def _tables(log: BenchLog) -> Iterator[Span]:
 
 
 def _values(log: BenchLog, key: str) -> Values:
-    return log.samples[key].to_numpy(np.float64)
+    return np.asarray(log.column(key))
 
 
 def _quantity_keys(log: BenchLog) -> tuple[str, ...]:
     return tuple(key for key in log.samples.columns if key not in ("stage", "table", "line") and key != "time")
 
 
-def _driver(log: BenchLog, key: str) -> Values | None:
+def _driver(log: BenchLog, key: str) -> Column | None:
     """What tells that the load changed: the output's current, else the load setting."""
     qualifier = key.partition(" ")[2]
     names = [f"load_setting {qualifier}".strip(), f"output_current {qualifier}".strip()]
@@ -98,13 +109,13 @@ def _driver(log: BenchLog, key: str) -> Values | None:
     candidates += [*log.keys("output_current"), *log.keys("load_setting")]
     for name in candidates:
         if name in log.samples and name != key:
-            return _values(log, name)
+            return log.column(name)
     return None
 
 
-def _power(log: BenchLog) -> Values | None:
+def _power(log: BenchLog) -> Column | None:
     """What the input took: its power, else its current."""
-    return next((_values(log, key) for key in ("input_power", "input_current") if key in log.samples), None)
+    return next((log.column(key) for key in ("input_power", "input_current") if key in log.samples), None)
 
 
 # --- time -----------------------------------------------------------------------------------------------------------
@@ -113,7 +124,10 @@ def _power(log: BenchLog) -> Values | None:
 def _clock_doubts(log: BenchLog, table: Span) -> Iterator[Doubt]:
     if "time" not in log.samples or table[1] - table[0] < 2:
         return
-    step = np.diff(_values(log, "time")[table[0] : table[1]])
+    time = log.column("time")
+    if isinstance(time, Packed) and time.is_rising_evenly(*table):
+        return
+    step = np.diff(time[table[0] : table[1]])
     back = np.flatnonzero(step < 0)
     if back.size:
         row = table[0] + int(back[0])
@@ -181,7 +195,10 @@ def _missing(log: BenchLog) -> Iterator[Doubt]:
     for key in (*_quantity_keys(log), "time"):
         if key in told or key not in log.samples or log.samples[key].dtype.kind != "f":
             continue
-        empty = np.isnan(_values(log, key))
+        column = log.column(key)
+        if isinstance(column, Packed) and not column.has_holes:
+            continue
+        empty = np.isnan(np.asarray(column))
         if not empty.any():
             continue
         # a table without this column misses nothing
@@ -208,8 +225,28 @@ def _steady(log: BenchLog) -> NDArray[np.bool_]:
     stage = log.samples["stage"]
     if "steady" not in stage.cat.categories:
         # a limited or shorted output reads anything, and is no tenfold slip of a unit
-        return (stage != "overcurrent").to_numpy()
-    return (stage == "steady").to_numpy()
+        return ~log.is_stage("overcurrent")
+    return log.is_stage("steady")
+
+
+def _blocks(log: BenchLog, steady: NDArray[np.bool_], *keys: str) -> Iterator[tuple[Values, ...]]:
+    """Some channels in the steady samples, a stretch at a time; of a very long log stretches spread all over it.
+
+    They tell shares of samples, near enough from a million of them.
+    """
+    starts = range(0, steady.size, _BLOCK)
+    for first in starts[:: max(1, len(starts) // _BLOCKS)]:
+        stop = min(steady.size, first + _BLOCK)
+        rows = steady[first:stop]
+        parts = tuple(log.part(key, first, stop) for key in keys)
+        yield parts if rows.all() else tuple(part[rows] for part in parts)
+
+
+def _known(log: BenchLog, key: str, steady: NDArray[np.bool_]) -> Values:
+    """The steady readings of a channel, of a very long log every so manieth: for a median they are enough."""
+    every = max(1, steady.size // _ENOUGH)
+    values, rows = log.column(key)[::every], steady[::every]
+    return values[rows & np.isfinite(values)]
 
 
 def _output_keys(log: BenchLog, output: str, rated: Mapping[str, tuple[float, float]]) -> tuple[str, str]:
@@ -232,9 +269,9 @@ def _swapped(
         voltage, current = _output_keys(log, output, rated)
         if voltage not in log.samples or current not in log.samples:
             continue
-        v, i = _values(log, voltage)[steady], _values(log, current)[steady]
         if abs(volts - amperes) > 0.3 * max(volts, amperes) and _mostly(
             (np.abs(i - volts) < 0.1 * volts) & (np.abs(v - volts) > 0.2 * volts) & (np.abs(v) < 1.5 * amperes)
+            for v, i in _blocks(log, steady, voltage, current)
         ):
             text = (
                 f"{words_of(voltage)} reads like a current, and {words_of(current)} like the rated {volts:g} V: swapped"
@@ -246,8 +283,10 @@ def _swapped(
     yield from _gains_power(log, rated, steady)
 
 
-def _mostly(mask: NDArray[np.bool_], share: float = 0.8) -> bool:
-    return mask.size > 0 and float(np.mean(mask)) >= share
+def _mostly(masks: Iterable[NDArray[np.bool_]], share: float = 0.8) -> bool:
+    counts = [(int(np.count_nonzero(mask)), mask.size) for mask in masks]
+    size = sum(count for _, count in counts)
+    return size > 0 and sum(count for count, _ in counts) / size >= share
 
 
 def _ends_swapped(
@@ -255,8 +294,8 @@ def _ends_swapped(
 ) -> Iterator[Doubt]:
     if abs(volts - rated_input) <= 0.3 * max(volts, rated_input):
         return
-    v_in, v_out = _values(log, "input_voltage")[steady], _values(log, voltage)[steady]
-    if _mostly(np.abs(v_in - volts) < 0.1 * volts) and _mostly(np.abs(v_out - rated_input) < 0.2 * rated_input):
+    takes_output = _mostly(np.abs(v - volts) < 0.1 * volts for (v,) in _blocks(log, steady, "input_voltage"))
+    if takes_output and _mostly(np.abs(v - rated_input) < 0.2 * rated_input for (v,) in _blocks(log, steady, voltage)):
         text = f"input voltage reads like the rated {volts:g} V output, and {words_of(voltage)} like the input: swapped"
         remedy = "say which column is which under log: columns:"
         yield Doubt("swapped", text, bars=True, channels=("input_voltage", voltage), remedy=remedy)
@@ -266,16 +305,24 @@ def _gains_power(log: BenchLog, rated: Mapping[str, tuple[float, float]], steady
     """More power out than in, in nearly all samples under load: no gain error does that."""
     if "input_power" not in log.samples:
         return
-    power_in = _values(log, "input_power")
     pairs = [(v, v.replace("output_voltage", "output_current")) for v in log.keys("output_voltage")]
     pairs = [(v, i) for v, i in pairs if i in log.samples]
     if not pairs:
         return
-    power_out = np.sum([_values(log, v) * _values(log, i) for v, i in pairs], axis=0)
-    top = float(np.nanmax(power_out[steady], initial=0.0))
-    loaded = steady & (power_out > 0.1 * top) & np.isfinite(power_in)
-    if top <= 0 or np.count_nonzero(loaded) < 2 or not _mostly(power_out[loaded] > 1.02 * power_in[loaded], 0.95):
+    keys = [key for pair in pairs for key in pair]
+    top = max((float(np.nanmax(_sum_of(parts), initial=0.0)) for parts in _blocks(log, steady, *keys)), default=0.0)
+    if top <= 0:
         return
+    gains, count = [], 0
+    for power_in, *parts in _blocks(log, steady, "input_power", *keys):
+        power_out = _sum_of(parts)
+        loaded = (power_out > 0.1 * top) & np.isfinite(power_in)
+        gains.append(power_out[loaded] > 1.02 * power_in[loaded])
+        count += gains[-1].size
+    if count < 2 or not _mostly(gains, 0.95):
+        return
+    loaded = steady & (_sum_of([_values(log, key) for key in keys]) > 0.1 * top)
+    loaded &= np.isfinite(_values(log, "input_power"))
     near = all(
         abs(_median(_values(log, v)[loaded]) - rated[q][0]) <= 0.2 * rated[q][0]
         for (v, _), q in ((pair, pair[0].partition(" ")[2] or next(iter(rated), "")) for pair in pairs)
@@ -288,36 +335,43 @@ def _gains_power(log: BenchLog, rated: Mapping[str, tuple[float, float]], steady
     yield Doubt("swapped", text, bars=True, channels=(*inputs, *outputs), remedy=remedy)
 
 
+def _sum_of(parts: Sequence[Values]) -> Values:
+    """Powers of voltages and currents in turn, together. [W]"""
+    return np.asarray(np.sum([v * i for v, i in zip(parts[::2], parts[1::2], strict=True)], axis=0))
+
+
 def _scale(
     log: BenchLog, rated: Mapping[str, tuple[float, float]], rated_input_voltage: float | None
 ) -> Iterator[Doubt]:
     steady = _steady(log)
     for output, (volts, amperes) in rated.items():
         voltage, current = _output_keys(log, output, rated)
-        i = _values(log, current) if current in log.samples else None
+        has_current = current in log.samples
         if voltage in log.samples:
-            chosen = steady & _upper(i, steady)
-            yield from _off_by_tens(log, voltage, _median(_values(log, voltage)[chosen]), volts, "V")
-        if i is not None:
-            known = i[steady & np.isfinite(i)]
+            values = _upper(log, voltage, current if has_current else None, steady)
+            yield from _off_by_tens(log, voltage, _median(values), volts, "V")
+        if has_current:
+            known = _known(log, current, steady)
             high = float(np.quantile(np.abs(known), 0.95)) if known.size else 0.0
             if high > 8 * amperes:
                 yield _scale_doubt(log, current, high, amperes, "A")
     if rated_input_voltage is not None and "input_voltage" in log.samples:
-        median = _median(_values(log, "input_voltage")[steady])
+        median = _median(_known(log, "input_voltage", steady))
         yield from _off_by_tens(log, "input_voltage", median, rated_input_voltage, "V")
     if "power_factor" in log.samples:
-        factor = _median(np.abs(_values(log, "power_factor")))
+        factor = _median(np.abs(_known(log, "power_factor", np.ones(len(log.samples), bool))))
         if factor > 1.05:
             yield _scale_doubt(log, "power_factor", factor, 1.0, "")
 
 
-def _upper(current: Values | None, steady: NDArray[np.bool_]) -> NDArray[np.bool_]:
-    """Samples in the upper half of the load."""
+def _upper(log: BenchLog, voltage: str, current: str | None, steady: NDArray[np.bool_]) -> Values:
+    """The voltage in the upper half of the load; every so manieth of a very long log."""
     if current is None:
-        return steady
-    top = float(np.nanmax(np.abs(current[steady]), initial=0.0))
-    return np.abs(current) >= 0.5 * top
+        return _known(log, voltage, steady)
+    every = max(1, steady.size // _ENOUGH)
+    loads, values, rows = np.abs(log.column(current)[::every]), log.column(voltage)[::every], steady[::every]
+    top = float(np.nanmax(loads[rows], initial=0.0))
+    return values[rows & (loads >= 0.5 * top)]
 
 
 def _off_by_tens(log: BenchLog, key: str, median: float, rating: float, symbol: str) -> Iterator[Doubt]:

@@ -10,7 +10,11 @@ from datetime import date, datetime
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
+    import numpy as np
     import pandas as pd
+    from numpy.typing import NDArray
+
+    from acceptance.bench.packed import Packed
 
 __all__ = [
     "OUTPUT_QUANTITIES",
@@ -116,7 +120,8 @@ class BenchLog:
 
     `samples` has one row a sample, index 0 to n - 1, and these columns:
 
-    - one float64 column a channel (NaN where a cell was empty or not a number, and `doubts` says so);
+    - one float64 column a channel (NaN where a cell was empty or not a number, and `doubts` says so); in a very long
+      log it is packed, and `column` and `part` look at it without unpacking the whole;
       `time` in seconds, as logged where that was seconds, else from the first sample of its table (absent where no
       time was logged);
     - `stage`: categorical text, `steady` where the log tells nothing else;
@@ -142,8 +147,23 @@ class BenchLog:
         """The channels of one quantity, such as every "temperature"."""
         return [key for key in self.samples.columns if key == quantity or key.startswith(f"{quantity} ")]
 
+    def column(self, key: str) -> NDArray[np.float64] | Packed:
+        """A channel as it is kept: an array, or packed where the log is very long."""
+        packed: Packed | None = getattr(self.samples[key].array, "packed", None)
+        return packed if packed is not None else self.samples[key].to_numpy(dtype="float64")
+
+    def part(self, key: str, first: int, stop: int) -> NDArray[np.float64]:
+        """Samples first to stop - 1 of a channel, without unpacking the others."""
+        return self.column(key)[first:stop]
+
+    def is_stage(self, stage: str) -> NDArray[np.bool_]:
+        """Which samples are of a stage."""
+        column = self.samples["stage"].cat
+        number = list(column.categories).index(stage) if stage in column.categories else -2
+        found: NDArray[np.bool_] = column.codes.to_numpy() == number
+        return found
+
     def rows_of(self, span: Span) -> tuple[str, int, int]:
         """Where samples lie: table, first and last line."""
-        table = self.samples["table"].to_numpy()[span[0]]
-        lines = self.samples["line"].to_numpy()
+        table, lines = self.samples["table"].array[span[0]], self.samples["line"].array
         return self.tables[int(table)], int(lines[span[0]]), int(lines[span[1] - 1])

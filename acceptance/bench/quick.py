@@ -23,7 +23,15 @@ from acceptance.errors import LogError
 if TYPE_CHECKING:
     import pandas as pd
 
-__all__ = ["quick_tables"]
+__all__ = [
+    "clean_texts",
+    "cut_tail",
+    "has_summary",
+    "head_decimal",
+    "line_start",
+    "quick_tables",
+    "reader_options",
+]
 
 _TAIL_LINES = 40
 _ISO = re.compile(r"\d{4}-\d{2}-\d{2}[T ]\d{2}:\d{2}(:\d{2}(\.\d{1,6})?)?")
@@ -36,10 +44,10 @@ def quick_tables(
     if b"\n#" in data or set(range(layout.width)) != layout.columns.keys() | layout.unread.keys():
         return None  # comments among the data, or notes beside it
     line = head[layout.heading][0]
-    start = _offset(data, line)
+    start = line_start(data, line)
     heading = data[start : data.find(b"\n", start) + 1 or len(data)]
-    first = _offset(data, head[layout.first][0]) if layout.first < len(head) else len(data)
-    decimal = _head_decimal(head, layout)
+    first = line_start(data, head[layout.first][0]) if layout.first < len(head) else len(data)
+    decimal = head_decimal(head, layout)
     if decimal is None or first <= start or b'"' in heading and heading.count(b'"') % 2:
         return None
     tables: list[RawTable] = []
@@ -48,7 +56,7 @@ def quick_tables(
         again = data.find(b"\n" + heading, first - 1) + 1 if heading.endswith(b"\n") else 0
         last = again or len(data)
         body_line = line + data.count(b"\n", start, first)
-        cut = _cut_tail(data, first, last, separator, layout, source if not again else None)
+        cut = cut_tail(data, first, last, separator, layout, source if not again else None)
         if cut is None:
             return None
         table = _quick_table(data[first:cut], separator, decimal, layout, source, stamps=stamps, at=(line, body_line))
@@ -62,7 +70,7 @@ def quick_tables(
         start, first = again, again + len(heading)
 
 
-def _offset(data: bytes, line: int) -> int:
+def line_start(data: bytes, line: int) -> int:
     """Where a line begins, counted from 1."""
     position = 0
     for _ in range(line - 1):
@@ -70,7 +78,7 @@ def _offset(data: bytes, line: int) -> int:
     return position
 
 
-def _head_decimal(head: Sequence[Row], layout: Layout) -> str | None:
+def head_decimal(head: Sequence[Row], layout: Layout) -> str | None:
     """The decimal mark of the first rows; None where they do not settle it alone."""
     rows = head[layout.first :]
     if not any("," in cell for _, cells in rows for cell in cells if isinstance(cell, str)):
@@ -95,7 +103,7 @@ def _stamp_columns(head: Sequence[Row], layout: Layout) -> list[int]:
     return [index for index in times if _ISO.fullmatch(str(cells[index]).strip())]
 
 
-def _cut_tail(data: bytes, first: int, last: int, separator: str, layout: Layout, source: Source | None) -> int | None:
+def cut_tail(data: bytes, first: int, last: int, separator: str, layout: Layout, source: Source | None) -> int | None:
     """Where the data end and notes below them begin; None where the end wants a closer look."""
     tail_start = max(first, data.rfind(b"\n", first, max(first, last - 4096)) + 1)
     lines = data[tail_start:last].split(b"\n")[-_TAIL_LINES:]
@@ -122,7 +130,7 @@ def _quick_table(
     lines = _line_numbers(body, len(frame), at[1])
     if lines is None:
         return None
-    if any(_has_summary(frame[index]) for index in layout.unread):
+    if any(has_summary(frame[index]) for index in layout.unread):
         return None
     columns = []
     written = sampled_cells(body, separator, layout.width)
@@ -135,7 +143,7 @@ def _quick_table(
         elif cells.dtype.kind in "bu":
             return None
         elif heading.is_number and heading.quantity != "time":
-            cells = _clean_texts(cells, decimal)
+            cells = clean_texts(cells, decimal)
             if cells is None:
                 return None
         else:
@@ -152,23 +160,10 @@ def _frame(body: bytes, separator: str, decimal: str, layout: Layout, stamps: li
     """The rows as pandas reads them, ISO stamps without a zone as dates; None where a row does not fit."""
     import pandas as pd
 
-    texts = {index: str for index, heading in layout.columns.items() if not heading.is_number}
     # one column more than there are headings: what stands in it has lost its heading
     extra = layout.width
-    options: dict[str, Any] = {
-        "sep": separator,
-        "header": None,
-        "names": list(range(extra + 1)),
-        "index_col": False,
-        "dtype": texts or None,
-        "decimal": decimal,
-        "engine": "c",
-        "keep_default_na": False,
-        "na_values": {index: list(MISSING) for index in [*layout.numbers, extra]},
-        "skipinitialspace": True,
-    }
-    if _needs_precision(pd.__version__):
-        options["float_precision"] = "round_trip"
+    texts = {index: str for index, heading in layout.columns.items() if not heading.is_number}
+    options = {**reader_options(separator, decimal, layout), "names": list(range(extra + 1)), "dtype": texts or None}
     # each next one is slower and takes more: pieces may differ in kind, and stamps may be no stamps
     for more in ({"parse_dates": stamps, "date_format": "ISO8601"}, {}, {"low_memory": False}):
         if not stamps and "parse_dates" in more:
@@ -186,7 +181,26 @@ def _frame(body: bytes, separator: str, decimal: str, layout: Layout, stamps: li
     return None
 
 
-def _has_summary(cells: pd.Series[Any]) -> bool:
+def reader_options(separator: str, decimal: str, layout: Layout) -> dict[str, Any]:
+    """How pandas' C reader is to take rows without headings apart."""
+    import pandas as pd
+
+    options: dict[str, Any] = {
+        "sep": separator,
+        "header": None,
+        "index_col": False,
+        "decimal": decimal,
+        "engine": "c",
+        "keep_default_na": False,
+        "na_values": {index: list(MISSING) for index in [*layout.numbers, layout.width]},
+        "skipinitialspace": True,
+    }
+    if _needs_precision(pd.__version__):
+        options["float_precision"] = "round_trip"
+    return options
+
+
+def has_summary(cells: pd.Series[Any]) -> bool:
     """Whether "average" or its like stands in a column that is not read: its row may be no sample."""
     if cells.dtype.kind in "fiubM":
         return False
@@ -223,7 +237,7 @@ def _line_numbers(body: bytes, rows: int, first: int) -> NDArray[np.int64] | Non
     return numbers.astype(np.int64) if len(numbers) == rows else None
 
 
-def _clean_texts(cells: pd.Series[Any], decimal: str) -> list[object] | None:
+def clean_texts(cells: pd.Series[Any], decimal: str) -> list[object] | None:
     """Texts under a numeric heading, where each can only be read in one way; else None."""
     other = "," if decimal == "." else "."
     for text in cells.unique():
@@ -249,5 +263,5 @@ def _all_rows_read(columns: Sequence[RawColumn]) -> bool:
     if empty.any():
         return False
     # a remark such as "count; 200" has a number in it: its first cell is a word
-    texts = [column.cells for column in numbers if not isinstance(column.cells, np.ndarray)]
+    texts = [column.cells for column in numbers if isinstance(column.cells, Sequence)]
     return all(is_reading(cells[row]) or cells[row] is None for cells in texts for row in suspects.tolist())

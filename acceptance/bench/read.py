@@ -18,9 +18,13 @@ from acceptance.bench.assemble import Samples, assemble, spans_of
 from acceptance.bench.headings import Vocabulary, shown
 from acceptance.bench.identity import Claim, day_of_test, serial_of
 from acceptance.bench.log import BenchLog, Channel, Doubt, Evidence, Ignored, Span
+from acceptance.bench.long import LONG, read_long
+from acceptance.bench.packed import Packed
 from acceptance.bench.stages import RowStages, doubts_of, split_name, stages_of
 from acceptance.bench.table import Source
 from acceptance.bench.text import read_text
+from acceptance.bench.values import Column
+from acceptance.bench.words import Words, distinct, each_word
 from acceptance.bench.workbook import is_workbook, read_workbook
 from acceptance.errors import LogError
 
@@ -72,7 +76,7 @@ def read_logs(
     serial
         The unit's; without it (None or empty) a serial column or note tells, else the file's name without its stage.
     progress
-        Called with the number of files read and of all files.
+        Called with the bytes read so far and those of all files.
 
     Raises
     ------
@@ -86,10 +90,17 @@ def read_logs(
     vocabulary = Vocabulary(columns, outputs)
     files: list[_File] = []
     repeated: list[Ignored] = []
-    for number, path in enumerate(sorted(map(Path, paths), key=lambda path: (path.name, str(path)))):
-        _read_another(path, files, repeated, vocabulary, load_mode)
-        if progress is not None:
-            progress(number + 1, len(paths))
+    ordered = sorted(map(Path, paths), key=lambda path: (path.name, str(path)))
+    sizes = [path.stat().st_size if path.is_file() else 0 for path in ordered]
+    for path, size, before in zip(ordered, sizes, np.cumsum([0, *sizes]).tolist(), strict=False):
+
+        def told(done: int, before: int = before) -> None:
+            if progress is not None:
+                progress(before + done, sum(sizes))
+
+        read = _read_file(path, vocabulary, told, known={file.evidence.sha256 for file in files})
+        _take(read, path, files, repeated, load_mode)
+        told(size)
     _refuse_unmet_columns(files, vocabulary)
     given = serial if serial is not None and serial.strip() else None
     identity = serial_of([_claim(file) for file in files], given)
@@ -99,20 +110,44 @@ def read_logs(
 # --- files ----------------------------------------------------------------------------------------------------------
 
 
-def _read_another(
-    path: Path, files: list[_File], repeated: list[Ignored], vocabulary: Vocabulary, load_mode: str | None
-) -> None:
-    raw, name = _bytes(path)
+def _read_file(
+    path: Path, vocabulary: Vocabulary, told: Callable[[int], None], *, known: set[str]
+) -> tuple[Source, str, int]:
+    """What a file holds (nothing where its bytes are known already), the SHA-256 of its bytes, and their number."""
+    name = _file_name(path) or str(path)
+    try:
+        _refuse_no_file(path, name)
+        size = path.stat().st_size
+        with path.open("rb") as stream:
+            is_book = is_workbook(stream.read(8))
+        in_pieces = None
+        if size >= LONG and not is_book:
+            in_pieces = read_long(path, name, vocabulary, progress=told)
+        if in_pieces is not None:
+            return in_pieces
+        raw = _bytes(path, name, MAX_WORKBOOK_BYTES if is_book else MAX_TEXT_BYTES)
+    except (OSError, ValueError) as problem:
+        reason = getattr(problem, "strerror", None) or str(problem)
+        raise LogError(name, f"the file cannot be read ({shown(reason)})") from None
     digest = hashlib.sha256(raw).hexdigest()
+    if digest in known:
+        return Source(name), digest, len(raw)
+    read = read_workbook if is_workbook(raw) else read_text
+    return read(raw, name, vocabulary), digest, len(raw)
+
+
+def _take(
+    read: tuple[Source, str, int], path: Path, files: list[_File], repeated: list[Ignored], load_mode: str | None
+) -> None:
+    source, digest, size = read
+    name = source.file
     same = next((f.evidence.file for f in files if f.evidence.sha256 == digest), None)
     if same is not None:
         repeated.append(Ignored(name, "the whole file", f"its bytes are those of {same}: no sample counts twice"))
         return
-    read = read_workbook if is_workbook(raw) else read_text
-    source = read(raw, name, vocabulary)
     samples = [assemble(table, source, load_mode=load_mode) for table in source.tables]
     started = next((s.started_at for s in samples if s.started_at is not None), None)
-    evidence = Evidence(name, digest, len(raw), sum(map(len, samples)), source.dialect, started)
+    evidence = Evidence(name, digest, size, sum(map(len, samples)), source.dialect, started)
     stem, stage = split_name(_file_name(path.with_suffix("")) if path.suffix else name)
     files.append(_File(source, samples, evidence, stem, stage))
 
@@ -122,27 +157,23 @@ def _file_name(path: Path) -> str:
     return shown(path.name.encode("utf-8", "surrogateescape").decode("utf-8", "replace"), 200)
 
 
-def _bytes(path: Path) -> tuple[bytes, str]:
-    name = _file_name(path) or str(path)
-    try:
-        if path.is_dir():
-            raise LogError(name, "this is a folder", "expected a log file")
-        if not path.exists():
-            raise LogError(name, "there is no such file")
-        if not path.is_file():
-            raise LogError(name, "this is no regular file", "expected a log file")
-        size = path.stat().st_size
-        with path.open("rb") as stream:
-            limit = MAX_WORKBOOK_BYTES if is_workbook(stream.read(8)) else MAX_TEXT_BYTES
-            if size > limit:
-                raise LogError(
-                    name, f"the file is too large ({size} bytes)", f"expected at most {limit}; split the log"
-                )
-            stream.seek(0)
-            return stream.read(limit + 1), name
-    except (OSError, ValueError) as problem:
-        reason = getattr(problem, "strerror", None) or str(problem)
-        raise LogError(name, f"the file cannot be read ({shown(reason)})") from None
+def _refuse_no_file(path: Path, name: str) -> None:
+    if path.is_dir():
+        raise LogError(name, "this is a folder", "expected a log file")
+    if not path.exists():
+        raise LogError(name, "there is no such file")
+    if not path.is_file():
+        raise LogError(name, "this is no regular file", "expected a log file")
+
+
+def _bytes(path: Path, name: str, limit: int) -> bytes:
+    """The whole file, which is not plain enough to be read in pieces, or not long."""
+    size = path.stat().st_size
+    if size > limit:
+        expected = f"expected at most {limit}, or plain rows of numbers alone; split the log"
+        raise LogError(name, f"the file is too large ({size} bytes)", expected)
+    with path.open("rb") as stream:
+        return stream.read(limit + 1)
 
 
 def _refuse_unmet_columns(files: Sequence[_File], vocabulary: Vocabulary) -> None:
@@ -155,7 +186,7 @@ def _refuse_unmet_columns(files: Sequence[_File], vocabulary: Vocabulary) -> Non
 
 
 def _claim(file: _File) -> Claim:
-    columns = [text for samples in file.samples for text in dict.fromkeys(samples.texts.get("serial", ())) if text]
+    columns = [text for samples in file.samples for text in distinct(samples.texts.get("serial", ())) if text]
     return Claim(file.evidence.file, tuple(dict.fromkeys(columns)), file.source.told, file.stem_serial)
 
 
@@ -230,42 +261,55 @@ def _frame(tables: Sequence[tuple[_File, Samples]], stages: Sequence[RowStages],
     columns: dict[str, Any] = {}
     keys = dict.fromkeys(key for _, samples in tables for key in samples.numbers)
     for key in sorted(keys, key=lambda key: key != "time"):  # time first, the others as met
-        parts = [
-            samples.numbers[key] if key in samples.numbers else np.full(size, np.nan)
+        columns[key] = _column([
+            samples.numbers.get(key, np.broadcast_to(np.nan, size))
             for (_, samples), size in zip(tables, sizes, strict=True)
-        ]
-        columns[key] = parts[0] if len(parts) == 1 else np.concatenate(parts)
+        ])  # fmt: skip
     columns["stage"] = _categorical(list(stages), sizes)
     for key, modes in _modes(tables, load_mode).items():
         columns[key] = _categorical(modes, sizes)
-    columns["table"] = np.repeat(np.arange(len(sizes)), sizes)
-    columns["line"] = np.concatenate([samples.lines for _, samples in tables])
+    columns["table"] = np.repeat(np.arange(len(sizes), dtype=np.int16 if len(sizes) < 1 << 15 else np.int64), sizes)
+    columns["line"] = _column([samples.lines for _, samples in tables])
     return pd.DataFrame(columns, copy=False)
 
 
-def _modes(tables: Sequence[tuple[_File, Samples]], load_mode: str | None) -> dict[str, list[list[str] | str]]:
+def _column(parts: Sequence[Column | NDArray[np.int64]]) -> Any:
+    """One column of the samples, as a whole; packed where a table of it is."""
+    if any(isinstance(part, Packed) for part in parts):
+        from acceptance.bench.packed_frame import PackedArray
+
+        return PackedArray(Packed.joined([Packed.of(part) for part in parts]))
+    return parts[0] if len(parts) == 1 else np.concatenate(parts)
+
+
+def _modes(tables: Sequence[tuple[_File, Samples]], load_mode: str | None) -> dict[str, list[RowStages]]:
     """Load modes by channel, each table's as one text or one a sample; the stated one where none is logged."""
     keys = dict.fromkeys(key for _, samples in tables for key in samples.texts if key.partition(" ")[0] == "load_mode")
     if not keys and load_mode is not None:
         return {"load_mode": [load_mode for _ in tables]}
     default = load_mode or ""
     return {
-        key: [[text or default for text in s.texts[key]] if key in s.texts else default for _, s in tables]
+        key: [each_word(s.texts[key], lambda text: text or default) if key in s.texts else default for _, s in tables]
         for key in keys
     }
 
 
-def _categorical(parts: Sequence[list[str] | str], sizes: Sequence[int]) -> Any:
+def _categorical(parts: Sequence[RowStages], sizes: Sequence[int]) -> Any:
     """Texts as categories in the order they are met; an empty text is no value."""
     import pandas as pd
 
     codes: dict[str, int] = {}
-    arrays: list[NDArray[np.int64]] = []
+    arrays: list[NDArray[np.signedinteger]] = []
     for part, size in zip(parts, sizes, strict=True):
+        told = [part] if isinstance(part, str) else distinct(part)
+        numbers = {text: codes.setdefault(text, len(codes)) if text else -1 for text in told}
+        kind = np.min_scalar_type(-max(1, len(codes)))
         if isinstance(part, str):
-            arrays.append(np.full(size, codes.setdefault(part, len(codes)) if part else -1))
+            arrays.append(np.full(size, numbers[part], dtype=kind))
+        elif isinstance(part, Words):
+            arrays.append(np.array([numbers[text] for text in part.words], dtype=kind)[part.codes])
         else:
-            arrays.append(np.array([codes.setdefault(text, len(codes)) if text else -1 for text in part]))
+            arrays.append(np.array([numbers[text] for text in part], dtype=kind))
     return pd.Categorical.from_codes(np.concatenate(arrays), categories=pd.Index(list(codes), dtype=object))
 
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from typing import TYPE_CHECKING, NoReturn
 
 import numpy as np
@@ -28,7 +28,7 @@ from acceptance.errors import LogError
 if TYPE_CHECKING:
     from acceptance.bench.values import Cells
 
-__all__ = ["is_summary_word", "numbers_below", "tables_of"]
+__all__ = ["Walk", "is_summary_word", "numbers_below", "tables_of"]
 
 _SIDE_ROWS = 400  # notes beside a table stand beside its first rows
 _SUMMARY_WORDS = frozenset((
@@ -50,29 +50,16 @@ def tables_of(
     strict_width
         Refuse a row with more cells than headings: in delimited text its cells have lost their columns.
     """
-    walk = _Walk(rows, layout, source, name, sheet)
+    found: list[RawTable] = []
+
+    def ended(data: list[Row], line: int) -> None:
+        _close(found, data, layout, source, name=name, sheet=sheet, line=line)
+
+    walk = Walk(rows, layout, source, ended, name=name, sheet=sheet)
     for number, row in enumerate(rows[layout.first :]):
-        line, cells = row
-        walk.meet(line)
-        if number >= _SIDE_ROWS and walk.is_plain(cells):
-            walk.take_plain(row)
-        elif walk.has_odd_headings and walk.is_repeated(cells):
-            walk.begin_anew(line)
-        elif has_reading(cells, layout.numbers) and not _is_remark(cells, layout):
-            if strict_width and len(cells) > layout.width:
-                _refuse_long(row, layout, source)
-            if number < _SIDE_ROWS and (walk.has_gap or len(cells) > layout.width):
-                _side_note(cells, layout, source)
-            walk.take(row)
-        elif is_empty(cells, layout.columns):
-            _side_note(cells, layout, source)
-            walk.is_parted = walk.is_parted or all(map(is_blank, cells))
-        elif walk.is_repeated(cells):
-            walk.begin_anew(line)
-        elif not (walk.is_after_heading and unit_row(cells, layout.columns)):
-            walk.leave_out(row)
+        walk.go(number, row, strict_width=strict_width)
     walk.close()
-    return walk.found
+    return found
 
 
 def numbers_below(rows: Sequence[Row], layout: Layout) -> frozenset[int]:
@@ -82,22 +69,74 @@ def numbers_below(rows: Sequence[Row], layout: Layout) -> frozenset[int]:
     return frozenset((*layout.numbers, *others))
 
 
-class _Walk:
-    """The way down the rows under a heading row, and what was met on it."""
+class Walk:
+    """The way down the rows under a heading row, and what was met on it.
 
-    def __init__(self, rows: Sequence[Row], layout: Layout, source: Source, name: str, sheet: str) -> None:
-        self.found: list[RawTable] = []
+    `ended` is called with the rows of each table that ends, and the line of its headings.
+    """
+
+    def __init__(
+        self,
+        rows: Sequence[Row],
+        layout: Layout,
+        source: Source,
+        ended: Callable[[list[Row], int], None],
+        *,
+        name: str,
+        sheet: str = "",
+    ) -> None:
         self.is_after_heading = False
         self.is_parted = False  # whether an empty row stands between here and the data
         self.has_gap = len(layout.columns) + len(layout.unread) < layout.width
         # headings such as "101" would pass for readings where they come again
         self.has_odd_headings = any(is_reading(heading.text) for heading in layout.columns.values())
         self._layout, self._source, self._name, self._sheet = layout, source, name, sheet
+        self._ended = ended
         self._numbers = numbers_below(rows, layout)
         self._repeated = tuple(cell.strip() for cell in layout.cells[: layout.width])
         self._heading_line = self._line = rows[layout.heading][0]
         self._data: list[Row] = []
+        self._has_data = False  # whether rows of this table were handed over before
         self._summary: list[Row] = []
+
+    @property
+    def bears_on_plain(self) -> bool:
+        """Whether something met so far may make a fault, or no sample, of a row whose cells are all as expected."""
+        return bool(self._summary) or (self.is_parted and self._numbers != frozenset(self._layout.numbers))
+
+    def go(self, number: int, row: Row, *, strict_width: bool) -> None:
+        """Take the next row for what it is; its number counts from 0 under the headings."""
+        line, cells = row
+        layout, source = self._layout, self._source
+        self.meet(line)
+        if number >= _SIDE_ROWS and self.is_plain(cells):
+            self.take_plain(row)
+        elif self.has_odd_headings and self.is_repeated(cells):
+            self.begin_anew(line)
+        elif has_reading(cells, layout.numbers) and not _is_remark(cells, layout):
+            if strict_width and len(cells) > layout.width:
+                _refuse_long(row, layout, source)
+            if number < _SIDE_ROWS and (self.has_gap or len(cells) > layout.width):
+                _side_note(cells, layout, source)
+            self.take(row)
+        elif is_empty(cells, layout.columns):
+            _side_note(cells, layout, source)
+            self.is_parted = self.is_parted or all(map(is_blank, cells))
+        elif self.is_repeated(cells):
+            self.begin_anew(line)
+        elif not (self.is_after_heading and unit_row(cells, layout.columns)):
+            self.leave_out(row)
+
+    def hand_over(self) -> list[Row]:
+        """The rows of this table since it began or they were last handed over."""
+        rows, self._data = self._data, []
+        self._has_data = self._has_data or bool(rows)
+        return rows
+
+    def pass_by(self) -> None:
+        """Know that plain rows stand here, which somebody else has taken."""
+        self._has_data = True
+        self.is_after_heading = self.is_parted = False
 
     def meet(self, line: int) -> None:
         """Go on to a row; a workbook's empty rows are not among the rows."""
@@ -154,23 +193,15 @@ class _Walk:
 
     def close(self) -> None:
         """End the table."""
-        _close(
-            self.found,
-            self._data,
-            self._layout,
-            self._source,
-            name=self._name,
-            sheet=self._sheet,
-            line=self._heading_line,
-        )
+        self._ended(self._data, self._heading_line)
         for line, cells in self._summary:
             text = shown(" ".join(str(cell).strip() for cell in cells if not is_blank(cell)))
             self._source.ignore(f"line {line}", f'a summary below the data: "{text}"', file=self._name)
-        self._data, self._summary = [], []
+        self._data, self._summary, self._has_data = [], [], False
 
     def _is_summary(self, row: Row) -> bool:
         """Words where numbers should be, few cells filled, and an empty row between them and the data."""
-        if not self.is_parted or not self._data:
+        if not self.is_parted or not (self._data or self._has_data):
             return False
         filled = sum(not is_blank(cell) for cell in row[1])
         headings = len(self._layout.columns) + len(self._layout.unread)

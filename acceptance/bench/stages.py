@@ -13,6 +13,7 @@ from acceptance.bench.assemble import Samples, spans_of
 from acceptance.bench.headings import shown
 from acceptance.bench.log import Doubt
 from acceptance.bench.values import MISSING
+from acceptance.bench.words import Words, distinct, each_word
 
 __all__ = ["NOT_JUDGED", "NOT_TOLD", "STAGES", "RowStages", "doubts_of", "split_name", "stage_named", "stages_of"]
 
@@ -20,7 +21,7 @@ STAGES = ("steady", "overcurrent", "thermal", "cold", "cooling")
 NOT_JUDGED = ("warm-up", "idle", "pause", "off", "setup")  # certainly no part of the test
 NOT_TOLD = "not told"  # an empty cell that nothing settles
 
-RowStages = list[str] | str  # one a row, or one for all rows of a table
+RowStages = Sequence[str]  # one a row; or a text, which is for all rows of a table
 
 # only what has one meaning: "warm run" may be the soak or the warming up before it
 _SPELLINGS = {
@@ -90,10 +91,10 @@ def stages_of(samples: Samples, *, in_name: str, in_note: str) -> tuple[RowStage
         ("", "none told"),
     )
     written = samples.texts.get("stage", [])
-    meant = {text: _of_cell(text) for text in dict.fromkeys(written)}
-    if any(meant.values()):
-        column = [meant[text] for text in written]
-        return [text or default or NOT_TOLD for text in _filled(column)], "stage column", ""
+    column = each_word(written, _of_cell)
+    if any(distinct(column)):
+        filled = column if "" not in distinct(column) else _filled(column)
+        return each_word(filled, lambda text: text or default or NOT_TOLD), "stage column", ""
     fault = ""
     if noted and in_name and not of_sheet and noted != in_name:
         fault = f'{samples.file}: its name says the stage {in_name}, and its note says "{shown(in_note, 30)}"'
@@ -159,6 +160,9 @@ def _odd_rows(stages: RowStages, size: int) -> dict[str, NDArray[np.intp]]:
     """Rows by stage, of those stages that are not judged."""
     if isinstance(stages, str):
         return {} if stages in STAGES else {stages: np.arange(size)}
+    if isinstance(stages, Words):
+        own = {stage: number for number, stage in enumerate(stages.words) if stage not in STAGES}
+        return {stage: np.flatnonzero(stages.codes == number) for stage, number in own.items()}
     odd: dict[str, list[int]] = {}
     for row, stage in enumerate(stages):
         if stage not in STAGES:

@@ -13,12 +13,15 @@ import numpy as np
 from numpy.typing import NDArray
 
 from acceptance.bench.log import BenchLog, Doubt, Span
+from acceptance.bench.packed import extent_of
+from acceptance.bench.values import Column
 
 __all__ = ["Trace", "Values", "clipped", "frozen", "piled", "place_of", "runs_of", "words_of"]
 
 Values = NDArray[np.float64]
 
 _FROZEN_RUN = 50  # samples
+_LOOKED_AT = 20_000  # readings that a resolution is told from
 _CLIPPED_RUN = 5
 _NEAR_RAIL = 0.05  # of the reading
 _PILED = 5  # readings
@@ -54,14 +57,16 @@ class Trace:
     log: BenchLog
     key: str
     values: Values
-    driver: Values | None  # the load, where another channel tells it
+    driver: Column | None  # the load, where another channel tells it
 
 
 def _resolution(values: Values) -> float:
     """The smallest step between two readings; 0 where all are equal."""
-    sample = values[np.isfinite(values)]
-    if sample.size > 20_000:
-        sample = sample[:20_000]
+    sample = values[: 2 * _LOOKED_AT]
+    sample = sample[np.isfinite(sample)]
+    if sample.size < _LOOKED_AT < values.size:
+        sample = values[np.isfinite(values)]
+    sample = sample[:_LOOKED_AT]
     levels = np.unique(sample)
     if levels.size < 2:
         return 0.0
@@ -87,14 +92,10 @@ def clipped(channel: Trace, tables: Sequence[Span]) -> Iterator[Doubt]:
     Zero is no rail: a current is 0.000 at no load. A quiet voltage at no load is none either.
     """
     values = channel.values
-    finite = np.isfinite(values)
-    if values.size < 2 * _CLIPPED_RUN or not finite.any():
+    if values.size < 2 * _CLIPPED_RUN:
         return
-    top, bottom = (
-        float(np.max(values, where=finite, initial=-np.inf)),
-        float(np.min(values, where=finite, initial=np.inf)),
-    )
-    if top == bottom:
+    bottom, top = _finite_extent(values)
+    if top <= bottom:
         return
     for rail in (top, bottom):
         if abs(rail) <= 0.02 * max(abs(top), abs(bottom)):
@@ -111,6 +112,16 @@ def clipped(channel: Trace, tables: Sequence[Span]) -> Iterator[Doubt]:
             text += ", while its other readings vary: clipped"
             remedy = "measure again in a higher range"
             yield Doubt("clipped", text, bars=True, channels=(channel.key,), spans=spans, remedy=remedy)
+
+
+def _finite_extent(values: Values) -> tuple[float, float]:
+    """The smallest and the largest finite value; the larger first where there is none."""
+    low, high = float(np.fmin.reduce(values, initial=np.inf)), float(np.fmax.reduce(values, initial=-np.inf))
+    if np.isfinite(low) and np.isfinite(high):
+        return low, high
+    finite = np.isfinite(values)
+    low = float(np.min(values, where=finite, initial=np.inf))
+    return low, float(np.max(values, where=finite, initial=-np.inf))
 
 
 def _clipped_spans(channel: Trace, at_rail: NDArray[np.bool_], tables: Sequence[Span]) -> tuple[Span, ...]:
@@ -151,7 +162,8 @@ def _is_loaded(channel: Trace, start: int, first: NDArray[np.intp], last: NDArra
     """Whether the unit carried a load there; at no load a reading may be quiet for good reason."""
     if channel.driver is None:
         return True
-    top = float(np.nanmax(np.abs(channel.driver), initial=0.0))
+    low, high = extent_of(channel.driver)
+    top = max(-low, high, 0.0)
     loads = [np.nanmedian(np.abs(channel.driver[start + i : start + j])) for i, j in zip(first, last, strict=True)]
     return top == 0 or max(loads) >= 0.1 * top
 
@@ -189,11 +201,11 @@ def piled(channel: Trace, tables: Sequence[Span], told: Iterable[Span] = ()) -> 
 def _pile(values: Values) -> NDArray[np.bool_]:
     """The samples of a pile at the largest value; none where there is no pile."""
     none = np.zeros(values.size, bool)
-    known = np.isfinite(values)
-    count = np.count_nonzero(known)
-    top = float(np.max(values, where=known, initial=-np.inf))
+    _, top = _finite_extent(values)
     at_top = values == top
     size = np.count_nonzero(at_top)
+    known = np.isfinite(values)
+    count = np.count_nonzero(known)
     if not top > 0 or size < max(_PILED, _PILED_SHARE * count) or size == count:
         return none
     beside = known & ~at_top & (np.concatenate((at_top[1:], [False])) | np.concatenate(([False], at_top[:-1])))
@@ -217,7 +229,8 @@ def frozen(channel: Trace, tables: Sequence[Span]) -> Iterator[Doubt]:
     if not (values[:-half:half] == values[half::half]).any():  # no long run without two such equals
         return
     step = _resolution(values)
-    scale = float(np.nanmax(np.abs(values), initial=0.0))
+    low, high = (float(np.fmin.reduce(values, initial=0.0)), float(np.fmax.reduce(values, initial=0.0)))
+    scale = max(-low, high)
     found: list[Span] = []
     for a, b in tables:
         part = values[a:b]

@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 
 from acceptance.bench.headings import Heading, Vocabulary, resolve_unit, shown
 from acceptance.bench.log import Doubt, Ignored
+from acceptance.bench.packed import Packed
 from acceptance.bench.values import Place, is_reading, settle_decimal
 from acceptance.errors import LogError
 
@@ -79,7 +80,7 @@ class RawTable:
     name: str  # 'A-17.csv', 'A-17.xlsx, sheet "steady"'
     heading_line: int
     columns: tuple[RawColumn, ...]
-    lines: NDArray[np.int64]  # of each row, from 1
+    lines: NDArray[np.int64] | Packed  # of each row, from 1
     decimal: str = "."  # decimal mark of the numbers that stand as text
     thousands: bool = False  # whether the other mark groups their thousands
 

@@ -13,13 +13,14 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
+import numpy as np
+
 from acceptance.bench.headings import Vocabulary, shown
 from acceptance.bench.quick import quick_tables
 from acceptance.bench.rows import tables_of
 from acceptance.bench.table import (
     MAX_COLUMNS,
     Layout,
-    RawColumn,
     RawTable,
     Row,
     Source,
@@ -34,9 +35,9 @@ from acceptance.errors import LogError
 if TYPE_CHECKING:
     pass
 
-__all__ = ["read_text"]
+__all__ = ["SEPARATORS", "describe_source", "find_table", "read_text", "refuse_binary", "take_notes", "wide_encoding"]
 
-_SEPARATORS = {";": "semicolons", "\t": "tabs", "|": "bars", ",": "commas"}
+SEPARATORS = {";": "semicolons", "\t": "tabs", "|": "bars", ",": "commas"}
 _HEAD_LINES = (32, 600)  # notes longer than this are prose
 _HEAD_BYTES = 1 << 20
 
@@ -58,26 +59,31 @@ def read_text(raw: bytes, file: str, vocabulary: Vocabulary) -> Source:
         If it is empty, no text, or holds no table of readings; or at the first line that does not fit its headings.
     """
     text = _decode(raw, file)
-    head, separator, layout = _find_table(text.data, file, vocabulary)
+    head, separator, layout = find_table(text.data, file, vocabulary)
     source = Source(file)
-    _take_notes(source, head, layout)
+    take_notes(source, head, layout)
     tables = quick_tables(text.data, head, separator, layout, source)
     if tables is None:
         # the careful way meets the notes below the table anew
         source = Source(file)
-        _take_notes(source, head, layout)
+        take_notes(source, head, layout)
         rows = _split(text.data.decode(), separator, file)
         tables = tables_of(rows, layout, source, name=file, strict_width=True)
         _drop_cut_line(tables, text.data, rows, layout, source)
         tables = settle(tables)
+    return describe_source(source, tables, layout, f"{SEPARATORS[separator]}, {{}}, {text.encoding}")
+
+
+def describe_source(source: Source, tables: Sequence[RawTable], layout: Layout, dialect: str) -> Source:
+    """The source with its tables, the columns that were not read, and its dialect, `{}` being the decimal mark."""
     source.tables = [table for table in tables if len(table.lines)]
     if not source.tables:
-        raise LogError(file, "the headings have no readings under them", "expected one row of numbers for each sample")
+        found = "the headings have no readings under them"
+        raise LogError(source.file, found, "expected one row of numbers for each sample")
     for heading in layout.unread.values():
         if heading.text.strip():
             source.ignore(f'column "{shown(heading.text)}"', heading.reason)
-    mark = "decimal comma" if source.tables[0].decimal == "," else "decimal point"
-    source.dialect = f"{_SEPARATORS[separator]}, {mark}, {text.encoding}"
+    source.dialect = dialect.format("decimal comma" if source.tables[0].decimal == "," else "decimal point")
     return source
 
 
@@ -97,7 +103,7 @@ def _decode(raw: bytes, file: str) -> _Text:
             data, encoding = raw.decode("cp1252", errors="replace").encode(), "Latin-1"
     else:
         data = text.encode("utf-8", errors="replace")
-    _refuse_binary(data, file)
+    refuse_binary(data, file)
     if b"\r" in data:
         data = data.replace(b"\r\n", b"\n").replace(b"\r", b"\n")
     return _Text(data, encoding)
@@ -108,22 +114,30 @@ def _by_mark(raw: bytes, file: str) -> tuple[str | None, str]:
     try:
         if raw.startswith(b"\xef\xbb\xbf"):
             return raw[3:].decode("utf-8"), "UTF-8 with mark"
-        if raw.startswith((b"\xff\xfe", b"\xfe\xff")):
-            return raw.decode("utf-16"), "UTF-16 with mark"
-        sample = raw[:4000]
-        if len(sample) > 3 and sample.count(0) > len(sample) // 3:
-            low, high = sample[1::2].count(0), sample[::2].count(0)
-            if low > 0.9 * (len(sample) // 2) and not high:
-                return raw.decode("utf-16-le"), "UTF-16"
-            if high > 0.9 * (len(sample) // 2) and not low:
-                return raw.decode("utf-16-be"), "UTF-16"
+        codec, encoding = wide_encoding(raw)
+        if codec:
+            return raw.decode(codec), encoding
     except UnicodeDecodeError as problem:
         found = f"the text is not the {problem.encoding.upper()} that its first bytes say (byte {problem.start})"
         raise LogError(file, found, "the file may be cut short; copy it again") from None
     return None, ""
 
 
-def _refuse_binary(data: bytes, file: str) -> None:
+def wide_encoding(raw: bytes) -> tuple[str, str]:
+    """The codec of text with two bytes a character, and its name in the record; empty where it is another."""
+    if raw.startswith((b"\xff\xfe", b"\xfe\xff")):
+        return "utf-16", "UTF-16 with mark"
+    sample = raw[:4000]
+    if len(sample) > 3 and sample.count(0) > len(sample) // 3:
+        low, high = sample[1::2].count(0), sample[::2].count(0)
+        if low > 0.9 * (len(sample) // 2) and not high:
+            return "utf-16-le", "UTF-16"
+        if high > 0.9 * (len(sample) // 2) and not low:
+            return "utf-16-be", "UTF-16"
+    return "", ""
+
+
+def refuse_binary(data: bytes, file: str) -> None:
     sample = data[: 1 << 16]
     controls = sum(sample.count(code) for code in (*range(1, 9), 11, *range(14, 32), 127))
     if b"\x00" in data or controls * 50 > len(sample):
@@ -133,13 +147,13 @@ def _refuse_binary(data: bytes, file: str) -> None:
 # --- where the table is ---------------------------------------------------------------------------------------------
 
 
-def _find_table(data: bytes, file: str, vocabulary: Vocabulary) -> tuple[list[Row], str, Layout]:
+def find_table(data: bytes, file: str, vocabulary: Vocabulary) -> tuple[list[Row], str, Layout]:
     """The first rows, the separator that shows most headings in them, and where the table stands."""
     for count in _HEAD_LINES:
         lines = _first_lines(data, count)
         best: tuple[list[Row], str, Layout] | None = None
         split: dict[str, list[Row]] = {}
-        for separator in _SEPARATORS:
+        for separator in SEPARATORS:
             if separator != "," and not any(separator in line for line in lines):
                 continue
             rows = split[separator] = _split("\n".join(lines), separator, file)
@@ -182,7 +196,7 @@ def _split(text: str, separator: str, file: str) -> list[Row]:
     return rows
 
 
-def _take_notes(source: Source, head: Sequence[Row], layout: Layout) -> None:
+def take_notes(source: Source, head: Sequence[Row], layout: Layout) -> None:
     """Keep what stands above the table, and beside its headings."""
     for line, cells in head[: layout.heading]:
         texts = [str(cell) for cell in cells]
@@ -211,6 +225,7 @@ def _drop_cut_line(tables: list[RawTable], data: bytes, rows: Sequence[Row], lay
     table = tables[-1]
     if len(cells) >= layout.width or line != table.lines[-1] or len(table.lines) < 2:
         return
-    columns = [RawColumn(c.heading, c.position, c.unit_below, c.cells[:-1], c.decimals) for c in table.columns]
-    tables[-1] = replace(table, columns=tuple(columns), lines=table.lines[:-1])
+    columns = [replace(c, cells=c.cells[:-1]) for c in table.columns if isinstance(c.cells, (Sequence, np.ndarray))]
+    lines = np.asarray(table.lines, dtype=np.int64)[:-1]
+    tables[-1] = replace(table, columns=tuple(columns), lines=lines)
     source.ignore(f"line {line}", "the file ends within this line: it was left out")

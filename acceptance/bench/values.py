@@ -5,21 +5,37 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Callable, Iterable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import date, datetime, time, timedelta
-from typing import Any, NoReturn
+from typing import TYPE_CHECKING, Any, NoReturn, TypeAlias
 
 import numpy as np
 from numpy.typing import NDArray
 
 from acceptance.bench.headings import resolve_unit, shown
+from acceptance.bench.packed import Block, Packed
 from acceptance.errors import LogError
 from acceptance.units import Unit
 
-__all__ = ["MISSING", "Cells", "Place", "Readings", "is_reading", "settle_decimal", "to_readings"]
+if TYPE_CHECKING:
+    from acceptance.bench.stamps import Stamps
 
-# numbers, stamps (datetime64), or cells as they stand
-Cells = NDArray[Any] | Sequence[object]
+__all__ = [
+    "MISSING",
+    "Cells",
+    "Column",
+    "Place",
+    "Readings",
+    "Worded",
+    "is_reading",
+    "plain_texts",
+    "settle_decimal",
+    "to_readings",
+]
+
+# numbers, stamps (datetime64), or cells as they stand; of a very long log packed
+Cells: TypeAlias = "NDArray[Any] | Sequence[object] | Packed | Worded | Stamps"
+Column = NDArray[np.float64] | Packed  # numbers, of a very long log packed
 
 MISSING = ("", "-", "--", "NaN", "nan", "NAN", "n/a", "N/A", "na", "NA", "n.a.", "#N/A", "null", "NULL")
 _MISSING = frozenset(word.casefold() for word in MISSING)
@@ -63,7 +79,7 @@ class Place:
     file: str
     heading: str
     position: int  # column, from 1
-    lines: NDArray[np.int64]  # of each row
+    lines: NDArray[np.int64] | Packed  # of each row
     sheet: str = ""
 
     def refuse(self, row: int, found: str, expected: str) -> NoReturn:
@@ -84,10 +100,21 @@ class Place:
 class Readings:
     """One column in SI units."""
 
-    values: NDArray[np.float64]
+    values: Column
     missing: NDArray[np.intp]  # rows without a reading
     over_range: NDArray[np.intp]  # rows whose reading was over range
     cell_unit: str  # the unit written in the cells, "" where none is
+
+
+@dataclass(frozen=True, slots=True)
+class Worded:
+    """A packed column in which words say that a reading was over range."""
+
+    values: Packed  # NaN there
+    over: NDArray[np.intp]  # rows
+
+    def __len__(self) -> int:
+        return len(self.values)
 
 
 # --- which mark is decimal ------------------------------------------------------------------------------------------
@@ -141,7 +168,7 @@ def settle_decimal(columns: Iterable[tuple[Place, Cells]]) -> tuple[str, bool]:
     """
     seen: dict[str, _Evidence] = {}
     for place, cells in columns:
-        if isinstance(cells, np.ndarray):
+        if not isinstance(cells, Sequence):
             continue
         for text, (row, count) in _distinct(cells).items():
             match = _NUMBER.fullmatch(text)
@@ -220,21 +247,77 @@ def to_readings(
     LogError
         At the first cell that is no number, or whose unit is unknown, of another kind or another than the heading's.
     """
+    if isinstance(cells, (Packed, Worded)):
+        return _of_packed(cells, unit)
     if isinstance(cells, np.ndarray):
         values, over, cell_unit = cells, np.zeros(0, np.intp), ""
     else:
+        assert isinstance(cells, Sequence)  # stamps stand under no other heading than the time's
         values, worded, cell_unit = _from_texts(cells, place, unit, kind, decimal, thousands)
         over = np.flatnonzero(worded)
-    if max(np.fmax.reduce(values, initial=0.0), -np.fmin.reduce(values, initial=0.0)) > _SENT_FOR_OVER:
-        size = np.abs(values)
-        big = size > _SENT_FOR_OVER
-        sent = big & ((size < _SENT_FOR_NONE) | np.isinf(size))
-        over = np.union1d(over, np.flatnonzero(sent))
-        values = np.where(big, np.nan, values)
+    values, sent = _without_sent(values)
+    over = np.union1d(over, sent)
     if unit is not None and (unit.factor != 1.0 or unit.offset != 0.0):
         values = values * unit.factor + unit.offset
     missing = np.flatnonzero(np.isnan(values))
     return Readings(values, np.setdiff1d(missing, over) if missing.size else missing, over, cell_unit)
+
+
+def _of_packed(cells: Packed | Worded, unit: Unit | None) -> Readings:
+    """The same for a packed column, whose cells carry no unit."""
+    column, over = (cells.values, cells.over) if isinstance(cells, Worded) else (cells, np.zeros(0, np.intp))
+    blocks: list[Block] = []
+    for block, (first, values) in zip(column.blocks, column.parts(), strict=True):
+        if block.codes is not None and block.codes.dtype.kind == "f":  # whole numbers are never so large
+            values, sent = _without_sent(values)
+            over = np.union1d(over, sent + first)
+            block = replace(block, codes=values, has_holes=bool(np.isnan(values).any()))
+        blocks.append(block)
+    column = Packed(blocks)
+    if unit is not None and (unit.factor != 1.0 or unit.offset != 0.0):
+        column = column.converted(unit.factor, unit.offset)
+    missing = column.missing()
+    return Readings(column, np.setdiff1d(missing, over) if missing.size else missing, over, "")
+
+
+def plain_texts(cells: Sequence[object], decimal: str) -> tuple[NDArray[np.float64], NDArray[np.intp]] | None:
+    """Numbers without units, words for a missing reading, and words for one over range, whose rows come second.
+
+    None where a cell is anything else.
+    """
+    known: dict[object, float] = {None: math.nan}
+    worded: set[object] = set()
+    for text in dict.fromkeys(cells):
+        if not isinstance(text, str):
+            if text is not None:
+                return None
+            continue
+        stripped = text.strip()
+        match = _NUMBER.fullmatch(stripped)
+        if stripped.casefold() in _MISSING or _OVER.fullmatch(stripped):
+            known[text] = math.nan
+            if stripped.casefold() not in _MISSING:
+                worded.add(text)
+        elif match is None or (match["unit"] or "").strip() or _mark_of(match["digits"]) == "wrong":
+            return None
+        else:
+            try:
+                known[text] = float(stripped.replace(decimal, "."))
+            except ValueError:  # a sign that only people know
+                return None
+    values = np.array([known[cell] for cell in cells])
+    over = [row for row, cell in enumerate(cells) if cell in worded] if worded else []
+    return values, np.array(over, dtype=np.intp)
+
+
+def _without_sent(values: NDArray[np.float64]) -> tuple[NDArray[np.float64], NDArray[np.intp]]:
+    """The values without the numbers that instruments send for no reading, and the rows of those for over range."""
+    if not max(np.fmax.reduce(values, initial=0.0), -np.fmin.reduce(values, initial=0.0)) > _SENT_FOR_OVER:
+        return values, np.zeros(0, np.intp)
+    size = np.abs(values)
+    big = size > _SENT_FOR_OVER
+    sent = big & ((size < _SENT_FOR_NONE) | np.isinf(size))
+    return np.where(big, np.nan, values), np.flatnonzero(sent)
 
 
 def _from_texts(

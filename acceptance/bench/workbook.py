@@ -14,7 +14,9 @@ from typing import Any
 
 from acceptance.bench.headings import Vocabulary, shown
 from acceptance.bench.log import Doubt
+from acceptance.bench.packed import Packed
 from acceptance.bench.rows import tables_of
+from acceptance.bench.stamps import Stamps
 from acceptance.bench.table import (
     IDENTITY_NOTES,
     MAX_COLUMNS,
@@ -31,6 +33,7 @@ from acceptance.bench.table import (
     refuse_width,
     settle,
 )
+from acceptance.bench.values import Worded
 from acceptance.errors import LogError
 
 __all__ = ["is_workbook", "read_workbook"]
@@ -280,7 +283,8 @@ def _settle_formulas(raw: bytes, source: Source) -> None:
         (number, column)
         for number, table in enumerate(source.tables)
         for column in table.columns
-        if all(cell is None or cell != cell for cell in column.cells)
+        if not isinstance(column.cells, (Packed, Worded, Stamps))
+        and all(cell is None or cell != cell for cell in column.cells)
     ]
     if not empty:
         return

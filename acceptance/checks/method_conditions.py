@@ -119,7 +119,7 @@ def _at_full_load(point: Point, full: float) -> float | None:
     """The longest time at full load in the point's table, up to its end; None where no time was logged. [s]"""
     if not point.has("time"):
         return None
-    rows = np.arange(point.dwell.stop)
+    rows = slice(point.dwell.stop)
     here = point.log.samples["table"].to_numpy()[rows] == point.dwell.table
     for output, rating in point.limits.ratings.outputs.items():
         key = channel_key("output_current", output)

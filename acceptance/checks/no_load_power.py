@@ -77,7 +77,7 @@ def _is_one_stretch(first: Point, second: Point) -> bool:
     if a.table != b.table or a.stage != b.stage or b.first - a.stop > (a.stop - a.first) + (b.stop - b.first):
         return False
     for output, rating in first.limits.ratings.outputs.items():
-        between = first.log.samples[channel_key("output_current", output)].to_numpy()[a.stop : b.first]
+        between = first.log.part(channel_key("output_current", output), a.stop, b.first)
         if not np.all(np.abs(between) <= 0.01 * rating.current):
             return False
     voltages = (first.input_voltage(), second.input_voltage())

@@ -15,7 +15,7 @@ _LONG = 20_000_000  # bytes from which on a person would wonder [B]
 
 @contextmanager
 def reading(logs: Sequence[Path]) -> Iterator[Callable[[int, int], None] | None]:
-    """A function that takes (done, total), where a person waits for a long log; None otherwise."""
+    """A function that takes bytes done and in all, where a person waits for a long log; None otherwise."""
     size = sum(path.stat().st_size for path in logs if path.is_file())
     # a workbook takes a hundred times as long as the same table in text
     heavy = any(path.suffix.lower() in (".xlsx", ".xlsm") and path.stat().st_size > _LONG / 20 for path in logs)
@@ -23,8 +23,21 @@ def reading(logs: Sequence[Path]) -> Iterator[Callable[[int, int], None] | None]
         yield None
         return
     from rich.console import Console
-    from rich.progress import Progress
+    from rich.progress import BarColumn, Progress, TextColumn, TimeRemainingColumn, TransferSpeedColumn
 
-    with Progress(console=Console(stderr=True), transient=True) as bar:
-        task = bar.add_task("reading", total=None)
-        yield lambda done, total: bar.update(task, completed=done, total=total)
+    columns = (
+        TextColumn("{task.description}"),
+        BarColumn(),
+        TextColumn("{task.percentage:.0f} %"),
+        TransferSpeedColumn(),
+        TimeRemainingColumn(),
+        TextColumn("left"),
+    )
+    with Progress(*columns, console=Console(stderr=True), transient=True) as bar:
+        task = bar.add_task("reading", total=size)
+
+        def told(done: int, total: int) -> None:
+            # what comes after the last byte is judging, and has no end that could be told
+            bar.update(task, completed=done, total=total, description="reading" if done < total else "judging")
+
+        yield told

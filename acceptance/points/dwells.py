@@ -14,6 +14,8 @@ import numpy as np
 import numpy.typing as npt
 
 from acceptance.bench.log import BenchLog, Doubt, Span
+from acceptance.bench.packed import Packed, extent_of
+from acceptance.bench.values import Column
 from acceptance.points.borders import Codes, changes, common, gaps_in
 from acceptance.points.levels import Level, find_levels
 from acceptance.points.settling import drift_of, samples_ahead, settling_samples
@@ -80,8 +82,8 @@ class _Steady:
 class _Samples:
     """What dwells are found from: plain arrays over the whole log, and what was asked for."""
 
-    channels: Mapping[str, Array]  # channel key -> its samples, NaN where not finite
-    time: Array | None  # [s]; None where not logged
+    channels: Mapping[str, Column]  # channel key -> its samples, NaN where not finite
+    time: Column | None  # [s]; None where not logged
     settle: float | None  # [s]
     min_dwell: float | None  # [s]
     smallest: Mapping[str, float]  # output current channel -> smallest change that is a new load [A]
@@ -121,14 +123,14 @@ def find_dwells(
     """
     if not len(log.samples):
         return Dwells(())
-    channels = {key: _finite(log.samples[key].to_numpy(dtype=np.float64)) for key in _channels_used(log)}
+    channels = {key: _finite(log.column(key)) for key in _channels_used(log)}
     time = channels.pop("time", None)
     doubts = []
-    if time is None or np.isnan(time).all():
+    if time is None or _tells_nothing(time):
         doubts = [_no_time(name) for name, value in (("settle", settle), ("min_dwell", min_dwell)) if value]
         time, settle, min_dwell = None, None, None
     samples = _Samples(channels, time, settle, min_dwell, _smallestchanges(channels, rated or {}))
-    table, stage = log.samples["table"].to_numpy(dtype=np.int64), log.samples["stage"]
+    table, stage = log.samples["table"].to_numpy(), log.samples["stage"]
     dwells: list[Dwell] = []
     for group, borders in _groups(log, samples):
         for steady in _steady_stretches(samples, group, borders):
@@ -211,8 +213,18 @@ def _channels_used(log: BenchLog) -> list[str]:
     return [key for quantity in quantities for key in log.keys(quantity)]
 
 
-def _finite(x: Array) -> Array:
+def _tells_nothing(time: Column) -> bool:
+    low, high = extent_of(time)
+    return not low <= high
+
+
+def _finite(x: Column) -> Column:
     """The samples, contiguous, NaN for what is no reading; copied only where something changes."""
+    if isinstance(x, Packed):
+        low, high = x.extent()
+        if max(abs(low), abs(high)) <= LARGEST or not low <= high:
+            return x
+        x = np.asarray(x)
     infinite = np.abs(x) > LARGEST
     return np.where(infinite, np.nan, x) if infinite.any() else np.ascontiguousarray(x)
 
@@ -235,13 +247,17 @@ def _groups(log: BenchLog, samples: _Samples) -> Iterator[tuple[Span, list[int]]
     """Each stretch of one table, stage and load mode, with the borders of its gapless parts."""
     told = [log.samples["table"].to_numpy(), *(_codes(log, key) for key in ("stage", *log.keys("load_mode")))]
     for first, stop in pairwise([0, *changes(told).tolist(), len(log.samples)]):
-        gaps = [] if samples.time is None else (gaps_in(samples.time[first:stop]) + first).tolist()
+        time = samples.time
+        if time is None or (isinstance(time, Packed) and time.is_rising_evenly(first, stop)):
+            gaps = []
+        else:
+            gaps = (gaps_in(time[first:stop]) + first).tolist()
         yield (first, stop), [first, *gaps, stop]
 
 
 def _codes(log: BenchLog, key: str) -> Codes:
     """A number for each text of a column; equal numbers, equal text."""
-    return np.asarray(log.samples[key].astype("category").cat.codes, dtype=np.int64)
+    return np.asarray(log.samples[key].astype("category").cat.codes)
 
 
 # --- steady stretches -------------------------------------------------------------------------------------------
@@ -276,13 +292,15 @@ def _settings(samples: _Samples, group: Span) -> Array | None:
     told = [row for row in rows if not np.isnan(row).all()]
     if not any(np.nanmax(row) > np.nanmin(row) for row in told):
         return None
-    return np.stack(told)
+    return np.stack(told) if len(told) > 1 else told[0][np.newaxis]
 
 
 def _without_holes(setting: Array) -> Array:
     """The setting, an empty cell between two equal ones filled: the load was not set anew there."""
+    if not np.isnan(setting).any():
+        return setting
     known = np.flatnonzero(~np.isnan(setting))
-    if known.size in (0, setting.size):
+    if not known.size:
         return setting
     before = np.maximum(np.searchsorted(known, np.arange(setting.size), side="right") - 1, 0)
     after = np.minimum(before + 1, known.size - 1)
@@ -293,9 +311,10 @@ def _without_holes(setting: Array) -> Array:
 def _declared(samples: _Samples, block: Span, settings: Array) -> list[_Steady]:
     """Runs of equal settings, each cut where the input voltage is stepped; where all are empty, found instead."""
     empty = np.isnan(settings)
-    runs = list(pairwise([0, *changes([*np.where(empty, 0.0, settings), *empty]).tolist(), settings.shape[1]]))
+    columns = [*np.where(empty, 0.0, settings), *empty] if empty.any() else [*settings]
+    runs = list(pairwise([0, *changes(columns).tolist(), settings.shape[1]]))
     lengths = np.array([stop - first for first, stop in runs])
-    by_hand = float(np.median(np.repeat(lengths, lengths))) < FEW  # else a setting of one sample is part of a ramp
+    by_hand = _usual_length(lengths) < FEW  # else a setting of one sample is part of a ramp
     if by_hand and settings.shape[1] > ROWS_BY_HAND:
         runs, by_hand = _levels_read_back(settings), False
     inputs = _levels(samples, "input_voltage", block, by_hand=by_hand) or [block]
@@ -314,6 +333,14 @@ def _declared(samples: _Samples, block: Span, settings: Array) -> list[_Steady]:
             span = (block[0] + first, block[0] + stop)
             samples.left_out.append((span, "a load setting of one sample being part of a ramp"))
     return out
+
+
+def _usual_length(lengths: Codes) -> float:
+    """The median over all samples of the length of the run that each is in."""
+    ordered = np.sort(lengths)
+    upto = np.cumsum(ordered)
+    middle = np.array([(upto[-1] - 1) // 2, upto[-1] // 2])
+    return float(np.mean(ordered[np.searchsorted(upto, middle, side="right")]))
 
 
 def _levels_read_back(settings: Array) -> list[Span]:
@@ -378,18 +405,29 @@ def _levels(samples: _Samples, key: str, block: Span, *, by_hand: bool = False) 
     if key not in samples.channels:
         return []
     x = samples.channels[key][slice(*block)]
-    known = np.flatnonzero(~np.isnan(x))
-    if not known.size:
+    if key == "input_voltage" and _is_within(x, INPUT_SHARE):
+        return [block]
+    missing = np.isnan(x)
+    if missing.all():
         return []
+    # the first and the last with a reading
+    known = np.array([missing.argmin(), x.size - 1 - missing[::-1].argmin()])
     shortest = 1 if by_hand else 2
     dwell = None if samples.min_dwell is None else 1  # the clock decides later, not the count
     if key == "input_voltage":
-        tolerance = INPUT_SHARE * float(np.sort(np.abs(x[known]))[known.size // 2])  # no mean that may overflow
+        size = np.abs(x[~missing] if missing.any() else x)
+        tolerance = INPUT_SHARE * float(np.partition(size, size.size // 2)[size.size // 2])  # no mean that may overflow
         levels = find_levels(x, tolerance=tolerance, min_samples=shortest, min_dwell=dwell)
     else:
         smallest = samples.smallest.get(key, 0.0)
         levels = find_levels(x, smallest=smallest, min_samples=shortest, min_dwell=dwell)
     return [(block[0] + first, block[0] + stop) for first, stop in _over_empty_ends(levels, known, x.size)]
+
+
+def _is_within(x: Array, share: float) -> bool:
+    """Whether readings differ by no more than a share of any of them, and so of their median."""
+    low, high = float(np.fmin.reduce(x)), float(np.fmax.reduce(x))
+    return low * high > 0 and high - low <= share * (1 - 1e-9) * min(abs(low), abs(high))
 
 
 def _over_empty_ends(levels: Sequence[Level], known: Codes, size: int) -> list[Span]:
@@ -437,7 +475,7 @@ def _settled_span(samples: _Samples, steady: _Steady) -> tuple[int, int, tuple[s
     return settled, stop, slow
 
 
-def _matters(x: Array, key: str, bounds: tuple[int, int, int]) -> bool:
+def _matters(x: Column, key: str, bounds: tuple[int, int, int]) -> bool:
     """Whether leaving out what settled moves the mean by more than anybody would be after."""
     whole, kept = x[bounds[0] : bounds[2]], x[bounds[1] : bounds[2]]
     if np.isnan(whole).all() or np.isnan(kept).all():
@@ -447,7 +485,7 @@ def _matters(x: Array, key: str, bounds: tuple[int, int, int]) -> bool:
     return abs(float(np.nanmean(whole)) - mean) > share * abs(mean)
 
 
-def _after(time: Array, span: Span, wait: float) -> int:
+def _after(time: Column, span: Span, wait: float) -> int:
     """The first sample at least `wait` after the first one of a span; its end where there is none."""
     part = time[slice(*span)]
     known = part[~np.isnan(part)]

@@ -24,6 +24,7 @@ from acceptance.points.noise import (
     SWING_SHARE,
     Array,
     Noise,
+    floor_of,
     median,
     noise_of,
     running_sum,
@@ -40,6 +41,7 @@ RAMP_SHARE = 0.3  # of the step to a neighbour: a piece that drifts so far towar
 MOST_ROWS = 2000  # nobody writes down more by hand
 FEW_ROWS = 24  # too few to tell noise from conditions in any order
 MOSTLY = 0.6  # of the rows
+MANY = 1_000_000  # samples of which nothing is formed that may not be needed
 CLUSTER_SHARE = 0.08  # of the span, between two loads of a plan by hand
 
 
@@ -87,24 +89,31 @@ def find_levels(
         Samples [first, stop) and the median between them; settling and ramps left out.
     """
     values = np.ascontiguousarray(x, dtype=np.float64).ravel()
-    at = np.flatnonzero(np.isfinite(values))
-    if not at.size:
+    finite = np.isfinite(values)
+    at: npt.NDArray[np.intp] | range = range(values.size) if finite.all() else np.flatnonzero(finite)
+    if not len(at):
         return []
-    y = values if at.size == values.size else values[at]
-    largest = float(np.max(np.abs(y)))
+    y = values if isinstance(at, range) else values[at]
+    largest = max(float(np.max(y)), -float(np.min(y)))
     if largest == 0:
         return [(int(at[0]), int(at[-1]) + 1, 0.0)]
     y = y / largest  # so that no sum overflows, and a thousandfold reading has the same levels
-    noise = noise_of(y, None if tolerance is None else tolerance / largest, smallest / largest)
+    asked = None if tolerance is None else tolerance / largest
+    if _stays(y, floor_of(y, asked, smallest / largest) if asked is not None or y.size > MANY else 0.0):
+        return [(int(at[0]), int(at[-1]) + 1, median(y) * largest)]  # its noise need not be known
+    noise = noise_of(y, asked, smallest / largest)
     pieces = _segment(y, noise, min_samples=min_samples, min_dwell=min_dwell)
     return [(int(at[p.first]), int(at[p.stop - 1]) + 1, p.level * largest) for p in pieces]
 
 
+def _stays(y: Array, floor: float) -> bool:
+    return float(np.max(y)) - float(np.min(y)) <= max(floor, 1e-12)
+
+
 def _segment(y: Array, noise: Noise, *, min_samples: int, min_dwell: int | None) -> list[_Piece]:
     """The whole chain, on finite samples."""
-    whole = _Piece(0, y.size, median(y))
-    if np.ptp(y) <= max(noise.floor, 1e-12):
-        return [whole]
+    if _stays(y, noise.floor):
+        return [_Piece(0, y.size, median(y))]
     if _is_one_row_a_condition(y, noise):
         return _equal_runs(y, noise.floor)
     pieces = _merged(_pieces_between(y, _cuts(y, noise)), noise)

@@ -61,7 +61,7 @@ def lost_stretches(log: BenchLog, dwells: Sequence[Dwell], rated: Mapping[str, f
 def mostly_unsteady(log: BenchLog, dwells: Sequence[Dwell]) -> tuple[Doubt, ...]:
     """A doubt that is told where a good part of the steady test lies in no dwell."""
     free = _free(log, dwells)
-    steady = int(np.count_nonzero(log.samples["stage"].to_numpy() == "steady"))
+    steady = int(np.count_nonzero(log.is_stage("steady")))
     lost = int(np.count_nonzero(free))
     if not steady or lost < _FEWEST or lost <= _UNSTEADY * steady:
         return ()
@@ -72,7 +72,7 @@ def mostly_unsteady(log: BenchLog, dwells: Sequence[Dwell]) -> tuple[Doubt, ...]
 
 def _free(log: BenchLog, dwells: Sequence[Dwell]) -> NDArray[np.bool_]:
     """Samples of the steady test in no dwell; what settled at a dwell's level belongs to it."""
-    free: NDArray[np.bool_] = np.asarray(log.samples["stage"].to_numpy() == "steady", dtype=bool).copy()
+    free = log.is_stage("steady")
     for dwell in dwells:
         free[dwell.reached : dwell.stop] = False
     return free

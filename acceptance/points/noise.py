@@ -15,6 +15,7 @@ __all__ = [
     "SWING_SHARE",
     "Array",
     "Noise",
+    "floor_of",
     "median",
     "noise_of",
     "running_sum",
@@ -88,10 +89,7 @@ def noise_of(y: Array, tolerance: float | None, smallest: float) -> Noise:
     about half of the windows hold a step.
     """
     sigma, step = _sample_noise(y)
-    floor = tolerance
-    if floor is None:
-        low, high = _extent(y)
-        floor = max(SPAN_SHARE * (high - low), READING_SHARE * max(abs(low), abs(high)), 1.5 * step, smallest)
+    floor = floor_of(y, tolerance, smallest)
     fixed: dict[int, float] = {}
     share: dict[int, float] = {}
     total = running_sum(y)
@@ -101,6 +99,15 @@ def noise_of(y: Array, tolerance: float | None, smallest: float) -> Noise:
         fixed[window] = max(white, _normal_scale(difference))
         share[window] = _share_of_reading(difference, np.abs(mean + y[0], out=mean))
     return Noise(sigma, step, floor, tolerance is not None, fixed, share)
+
+
+def floor_of(y: Array, tolerance: float | None, smallest: float) -> float:
+    """Changes up to this are no new level: the one declared, else a guess. Arguments as of `noise_of`."""
+    if tolerance is not None:
+        return tolerance
+    low, high = _extent(y)
+    step = _converter_step(_blocks(y)[0]) if y.size > 2 else 0.0
+    return max(SPAN_SHARE * (high - low), READING_SHARE * max(abs(low), abs(high)), 1.5 * step, smallest)
 
 
 def _share_of_reading(difference: Array, reading: Array) -> float:

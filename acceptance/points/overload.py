@@ -53,5 +53,5 @@ def _kind(unit: str) -> str:
 def _mean(log: BenchLog, key: str, dwell: Dwell) -> float | None:
     if key not in log.samples:
         return None
-    samples = log.samples[key].to_numpy(dtype=np.float64)[dwell.first : dwell.stop]
+    samples = log.part(key, dwell.first, dwell.stop)
     return float(np.nanmean(samples)) if np.isfinite(samples).any() else None

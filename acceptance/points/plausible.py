@@ -117,7 +117,7 @@ def _dead_outputs(points: Points) -> Iterator[Doubt]:
             if levels >= (2 if many else _LEVELS) and _never_moves(steady, voltage):
                 yield _dead(voltage, f"while the load ran over {levels} levels")
         if steady and all(point.has(current) and point.has(setting) for point in steady):
-            settings = [float(np.nanmean(s)) for p in steady if np.isfinite(s := p.samples(setting)).any()]
+            settings = [mean for point in steady if (mean := point.plain_mean(setting)) is not None]
             if len({round(s / rating.current, 3) for s in settings}) >= _LEVELS and _never_moves(steady, current):
                 yield _dead(current, "while the load setting changed")
 
@@ -131,9 +131,9 @@ def _levels(loads: list[float]) -> int:
 
 
 def _never_moves(steady: Sequence[Point], key: str) -> bool:
-    lowest = [np.nanmin(s) for p in steady if np.isfinite(s := p.samples(key)).any()]
-    highest = [np.nanmax(s) for p in steady if np.isfinite(s := p.samples(key)).any()]
-    return bool(lowest) and min(lowest) == max(highest)
+    extents = [point.extent(key) for point in steady]
+    extents = [extent for extent in extents if extent[2]]
+    return bool(extents) and min(low for low, _, _ in extents) == max(high for _, high, _ in extents)
 
 
 def _dead(key: str, when: str) -> Doubt:
@@ -154,16 +154,13 @@ def _negative(points: Points) -> Iterator[Doubt]:
             channel_key("output_voltage", output): 0.01 * rating.voltage,
         }
         for key, bound in bounds.items():
-            below = [p for p in points.steady if p.has(key) and (mean := _mean(p, key)) is not None and mean < -bound]
+            below = [
+                p for p in points.steady if p.has(key) and (mean := p.plain_mean(key)) is not None and mean < -bound
+            ]
             if below:
-                text = f"{key} reads {_mean(below[0], key):.4g} at {below[0].where}: below zero"
+                text = f"{key} reads {below[0].plain_mean(key):.4g} at {below[0].where}: below zero"
                 remedy = "connect the meter, or turn the sign of the column, so that what the unit delivers is positive"
                 yield Doubt("negative", text, bars=True, channels=(key,), remedy=remedy)
-
-
-def _mean(point: Point, key: str) -> float | None:
-    samples = point.samples(key)
-    return float(np.nanmean(samples)) if np.isfinite(samples).any() else None
 
 
 def _unsteady(points: Points) -> Iterator[Doubt]:
@@ -190,17 +187,19 @@ def _far_off(point: Point, key: str) -> int:
         return 0
     if key in ("input_power", "input_current") and _largest_load(point) < _LOADED:
         return 0
+    quantity, _, output = key.partition(" ")
+    far = _FAR_VOLTAGE if quantity == "output_voltage" else _FAR
+    low, high, count = point.extent(key)
+    # so near each other that none can be far off their median, wherever it is
+    if not count or (low * high > 0 and high - low <= far * min(abs(low), abs(high))):
+        return 0
     samples = point.samples(key)
     samples = samples[np.isfinite(samples)]
-    if not samples.size:
-        return 0
     median = float(np.median(samples))
-    quantity, _, output = key.partition(" ")
     rating = point.limits.ratings.outputs.get(output)
     if quantity == "output_current" and rating is not None and abs(median) < _APART * rating.current:
         return 0
     spread = 1.4826 * float(np.median(np.abs(samples - median)))  # a standard deviation that no outlier moves
-    far = _FAR_VOLTAGE if quantity == "output_voltage" else _FAR
     return int(np.count_nonzero(np.abs(samples - median) > max(far * abs(median), 6 * spread)))
 
 
@@ -209,10 +208,10 @@ def _offsets(points: Points) -> Iterator[Doubt]:
     for output, rating in points.limits.ratings.outputs.items():
         key, setting = channel_key("output_current", output), channel_key("load_setting", output)
         for point in points.steady:
-            is_set = point.has(setting) and _mean(point, setting) == 0.0
+            is_set = point.has(setting) and point.plain_mean(setting) == 0.0
             if not point.has(key) or not (is_set or point.is_unloaded(output)):
                 continue
-            mean, u = _mean(point, key), point.bench.standard_uncertainty(key, 0.0)
+            mean, u = point.plain_mean(key), point.bench.standard_uncertainty(key, 0.0)
             if mean is not None and u > 0 and 2 * u < abs(mean) < _APART * rating.current:
                 text = f"{key} reads {1000 * mean:.3g} mA at no load, and its U there is {2000 * u:.2g} mA"
                 remedy = "take the zero of the current before and after the run; it is in every reading"
@@ -223,7 +222,7 @@ def _offsets(points: Points) -> Iterator[Doubt]:
 def _ripple_beyond_output(points: Points) -> Iterator[Doubt]:
     for output, rating in points.limits.ratings.outputs.items():
         key = channel_key("ripple", output)
-        largest = [float(np.nanmax(s)) for p in points.steady if p.has(key) and np.isfinite(s := p.samples(key)).any()]
+        largest = [p.extent(key)[1] for p in points.steady if p.has(key) and p.extent(key)[2]]
         if largest and max(largest) > rating.voltage:
             text = f"{key} reads {max(largest):.4g} V, more than the {rating.voltage:g} V of the output itself"
             remedy = "see the unit of the column: mV lies near; name it in the heading"
@@ -234,13 +233,12 @@ def _ripple_of_nothing(points: Points) -> Iterator[Doubt]:
     """Ripple that never changes over many readings, or is far too small to be one: a channel that is not connected."""
     for output, rating in points.limits.ratings.outputs.items():
         key = channel_key("ripple", output)
-        parts = [s[np.isfinite(s)] for p in points.steady if p.has(key) for s in (p.samples(key),)]
-        readings = np.concatenate(parts) if parts else np.array([])
-        if readings.size >= _MANY and np.ptp(readings) == 0:
-            yield _dead(key, f"of {readings.size}")
-        elif readings.size and float(readings.max()) < _LEAST_RIPPLE * rating.voltage:
-            text = (
-                f"{key} reads {1e6 * float(readings.max()):.3g} µV at most, which no switching or linear supply reaches"
-            )
+        extents = [extent for point in points.steady if point.has(key) and (extent := point.extent(key))[2]]
+        low, high = min((low for low, _, _ in extents), default=0.0), max((high for _, high, _ in extents), default=0.0)
+        readings = sum(count for _, _, count in extents)
+        if readings >= _MANY and low == high:
+            yield _dead(key, f"of {readings}")
+        elif readings and high < _LEAST_RIPPLE * rating.voltage:
+            text = f"{key} reads {1e6 * high:.3g} µV at most, which no switching or linear supply reaches"
             remedy = "see the unit of the column and the probe, and record it again"
             yield Doubt("scale", text, bars=True, channels=(key,), remedy=remedy)

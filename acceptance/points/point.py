@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Mapping, Sequence
+from contextlib import suppress
 from dataclasses import dataclass, field
 from itertools import pairwise
 from typing import Any, TypeVar
@@ -11,7 +12,9 @@ from typing import Any, TypeVar
 import numpy as np
 from numpy.typing import NDArray
 
-from acceptance.bench.log import BenchLog, channel_key
+from acceptance.bench.log import QUANTITIES, BenchLog, channel_key
+from acceptance.bench.threads import MANY, each
+from acceptance.bench.values import Column
 from acceptance.errors import MeasurementError
 from acceptance.limitfile.limits import Limits, Wiring
 from acceptance.points.dwells import Dwell
@@ -24,6 +27,7 @@ __all__ = ["Estimate", "Point", "Points", "measure_points"]
 
 RESOLUTION_COVERS = 1.5  # a logged step up to so many times the stated one is the stated one, differently rounded
 _NO_LOAD = 0.002  # of rated current
+OF_SAMPLES = ("mean", "median", "extent", "plain mean")  # what is kept, and depends on the samples alone
 
 Floats = NDArray[np.float64]
 T = TypeVar("T")
@@ -67,7 +71,7 @@ class Point:
     log: BenchLog
     limits: Limits
     bench: Bench
-    columns: Mapping[str, Floats]  # the log's channels as arrays, shared by all points
+    columns: Mapping[str, Column]  # the log's channels as arrays, shared by all points
     _kept: dict[tuple[str, ...], Any] = field(default_factory=dict)
 
     # --- samples ----------------------------------------------------------------------------------------------------
@@ -79,6 +83,27 @@ class Point:
     def samples(self, key: str) -> Floats:
         """The samples of a channel in this dwell, missing ones as NaN."""
         return self.columns[key][self.dwell.first : self.dwell.stop]
+
+    def extent(self, key: str) -> tuple[float, float, int]:
+        """The smallest and the largest reading of a channel, and how many there are; none, and the larger is first."""
+        return self._keep(("extent", key), lambda: _extent(self.samples(key)))
+
+    def plain_mean(self, key: str) -> float | None:
+        """The mean of the readings of a channel, however few there are; None where there is none."""
+        return self._keep(("plain mean", key), lambda: _plain_mean(self.samples(key)))
+
+    def look_at(self, key: str) -> None:
+        """Form what is asked of almost every channel, in one look at its samples."""
+        samples = self.samples(key)
+        if samples.size and np.isfinite(samples).all():
+            whole = type_a(samples)
+            self._kept[("extent", key)] = float(samples.min()), float(samples.max()), samples.size
+            self._kept[("plain mean", key)], self._kept[("mean", key)] = whole.mean, whole
+            return
+        self._kept[("extent", key)] = _extent(samples)
+        self._kept[("plain mean", key)] = _plain_mean(samples)
+        with suppress(MeasurementError):
+            self.mean(key)
 
     def require(self, *keys: str) -> None:
         """See to it that channels may be judged here.
@@ -169,12 +194,16 @@ class Point:
 
     def input_voltage(self) -> float | None:
         """Mean input voltage at the unit, or the one that is only stated; None where neither is there. [V]"""
+        return self._keep(("input voltage",), self._input_voltage)
+
+    def _input_voltage(self) -> float | None:
         if self.has("input_voltage"):
-            if not np.isfinite(self.samples("input_voltage")).any():
+            mean = self.plain_mean("input_voltage")
+            if mean is None:
                 return None
             wiring, key = self.limits.wiring("input"), "input_current"
             drop = wiring.resistance * self.mean(key).mean if wiring is not None and self.has(key) else 0.0
-            return float(np.nanmean(self.samples("input_voltage"))) - drop
+            return mean - drop
         return self.log.stated.get("input_voltage")
 
     # --- powers -----------------------------------------------------------------------------------------------------
@@ -364,6 +393,8 @@ class Point:
             raise MeasurementError(msg)
         samples = self.samples(key)
         known = np.isfinite(samples)
+        if known.all() and samples.size:
+            return samples
         finite = samples[known]
         self._enough(known, key)
         if not finite.size:
@@ -402,7 +433,8 @@ class Point:
 
     def _at(self, key: str, rows: NDArray[np.bool_]) -> Floats:
         if self.has(key):
-            return self.samples(key)[rows]
+            samples = self.samples(key)
+            return samples if rows.all() else samples[rows]
         return np.full(int(rows.sum()), self.log.stated[key])
 
     def _keep(self, name: tuple[str, ...], form: Callable[[], T]) -> T:
@@ -432,7 +464,7 @@ class Points:
 
         A stretch never spans two tables. Its index is that of no dwell.
         """
-        here = self.log.samples["stage"].to_numpy() == stage
+        here = self.log.is_stage(stage)
         if not here.any():
             return ()
         table = self.log.samples["table"].to_numpy()
@@ -447,22 +479,47 @@ class Points:
         return tuple(found)
 
 
-def numeric_columns(log: BenchLog) -> dict[str, Floats]:
-    """The channels of a log as arrays, without a copy where the log holds them so."""
-    return {
-        key: log.samples[key].to_numpy(dtype=np.float64)
-        for key in log.samples.columns
-        if log.samples[key].dtype.kind in "fiu"
-    }
+def numeric_columns(log: BenchLog) -> dict[str, Column]:
+    """The channels of a log as arrays, without a copy where the log holds them so, and packed ones as they are."""
+    return {key: log.column(key) for key in log.samples.columns if log.samples[key].dtype.kind in "fiu"}
 
 
-def measure_points(log: BenchLog, dwells: Sequence[Dwell], limits: Limits) -> Points:
-    """The points of a log's dwells."""
+def measure_points(log: BenchLog, dwells: Sequence[Dwell], limits: Limits, *, before: Points | None = None) -> Points:
+    """The points of a log's dwells.
+
+    Parameters
+    ----------
+    before
+        Those of the same samples and dwells, with other doubts: what was formed of the samples alone is taken over.
+    """
     bench = Bench(limits)
     columns = numeric_columns(log)
     points = tuple(Point(index, dwell, log, limits, bench, columns) for index, dwell in enumerate(dwells))
+    for point, old in zip(points, before.all if before is not None else (), strict=False):
+        point._kept.update({name: kept for name, kept in old._kept.items() if name[0] in OF_SAMPLES})
+    if before is None:
+        _form_means(points, log)
     rated = {output: rating.current for output, rating in limits.ratings.outputs.items()}
     return Points(points, log, limits, bench, lost_stretches(log, dwells, rated))
+
+
+def _form_means(points: Sequence[Point], log: BenchLog) -> None:
+    """Form the means that the record will ask for, of a very long log several at once."""
+    keys = list(dict.fromkeys(c.key for c in log.channels if c.quantity != "time" and QUANTITIES[c.quantity] != "text"))
+    if len(log.samples) < MANY:
+        return
+
+    asked = [(point, key) for point in points for key in keys if point.has(key)]
+    each(lambda one: one[0].look_at(one[1]), asked, samples=len(log.samples))
+
+
+def _extent(samples: Floats) -> tuple[float, float, int]:
+    known = samples[np.isfinite(samples)]
+    return (float(known.min()), float(known.max()), known.size) if known.size else (math.inf, -math.inf, 0)
+
+
+def _plain_mean(samples: Floats) -> float | None:
+    return float(np.nanmean(samples)) if np.isfinite(samples).any() else None
 
 
 def _words(keys: Sequence[str]) -> str:

@@ -11,6 +11,9 @@ from numpy.typing import NDArray
 __all__ = ["TypeA", "autocorrelation", "type_a"]
 
 _ENOUGH = 30  # samples from which on more than the first autocorrelation is worth looking at
+_MANY = 20_000  # samples from which on no more coefficients are formed than the sum asks for
+_BLOCK = 8192  # samples
+_DIRECT = 64  # lags up to which forming each by itself then is faster than a transform of all
 _BATCHES = 12
 _BATCHES_DIFFER = 1.79  # 95 % point of chi squared over its 11 degrees of freedom
 
@@ -32,17 +35,38 @@ def autocorrelation(samples: NDArray[np.float64], lags: int | None = None) -> ND
 
     r_k = sum (x_t - mean)(x_{t+k} - mean) / sum (x_t - mean)^2. Zeros where the samples do not vary.
     """
-    n = samples.size
     d = samples - samples.mean()
-    power = _inner(d, d)
+    return _coefficients(d, _inner(d, d), lags)
+
+
+def _coefficients(d: NDArray[np.float64], power: float, lags: int | None) -> NDArray[np.float64]:
+    """The same from deviations and the sum of their squares."""
+    n = d.size
     kept = n if lags is None else min(lags + 1, n)
     if power <= 0:
         return np.zeros(kept)
+    if n >= _MANY and 3 < kept <= _DIRECT + 1:
+        return _lagged(d, kept) / power
     if kept <= 3:
-        return np.array([_inner(d[: n - k], d[k:]) / power for k in range(kept)])
-    size = 1 << (2 * n - 1).bit_length()
+        return np.array([1.0, *(_inner(d[: n - k], d[k:]) / power for k in range(1, kept))])
+    size = 1 << (2 * n - 1).bit_length() if n < _MANY else _smooth(n + kept)  # no farther than the lags reach
     spectrum = np.fft.rfft(d, size)
     return np.fft.irfft(spectrum * spectrum.conj(), size)[:kept] / power
+
+
+def _lagged(d: NDArray[np.float64], kept: int) -> NDArray[np.float64]:
+    """Sums of products of lags 0 to kept - 1, in blocks so short that the library starts no threads for them."""
+    sums = np.zeros(kept)
+    for first in range(0, d.size, _BLOCK):
+        block, ahead = d[first : first + _BLOCK], d[first : first + _BLOCK + kept - 1]
+        beyond = block.size + kept - 1 - ahead.size
+        sums += np.correlate(np.append(ahead, np.zeros(beyond)) if beyond else ahead, block, "valid")
+    return sums
+
+
+def _smooth(least: int) -> int:
+    """A length that is quick to transform, not much above the least one."""
+    return min(m << max(0, -(-least // m) - 1).bit_length() for m in (1, 3, 5, 9, 15))
 
 
 def _inner(a: NDArray[np.float64], b: NDArray[np.float64]) -> float:
@@ -80,17 +104,19 @@ def type_a(samples: NDArray[np.float64]) -> TypeA:
     mean = float(samples.mean())
     if n == 1:
         return TypeA(mean, None, 0.0, 1, None, None)
-    deviation = float(samples.std(ddof=1))
+    d = samples - mean
+    power = _inner(d, d)
+    deviation = float(samples.std(ddof=1)) if n < _MANY else math.sqrt(power / (n - 1))
     # a spread of rounding errors alone (1e-13 of the reading) is none
     if deviation <= 1e-13 * abs(mean):
         return TypeA(mean, 0.0, n - 1.0, n, float(n), 0.0)
     if n < 4:
         return TypeA(mean, deviation / math.sqrt(n), n - 1.0, n, float(n), deviation)
-    phi = _first_order(samples)
+    phi = _first_order(d, power)
     time = _time_of_first_order(phi, n)
     freedom = max(1.0, n * (1 - phi) / (1 + phi) - 1) if phi > 0 else n - 1.0
     if n >= _ENOUGH:
-        summed, window = _summed_time(samples)
+        summed, window = _summed_time(d, power)
         # the sum has a spread of its own, sqrt(2 (2 W + 1) / n): what lies within it is no wander
         if summed > max(1.3, 1 + math.sqrt(2 * (2 * window + 1) / n)) * time:
             time, freedom = summed, max(1.0, n / (2 * window + 1))
@@ -105,10 +131,10 @@ def type_a(samples: NDArray[np.float64]) -> TypeA:
     return TypeA(mean, math.sqrt(square), freedom, n, max(1.0, effective), deviation)
 
 
-def _first_order(samples: NDArray[np.float64]) -> float:
+def _first_order(d: NDArray[np.float64], power: float) -> float:
     """The coefficient of a first-order process, freed of the bias of its estimate; 0 to 0.99."""
-    n = samples.size
-    r = float(autocorrelation(samples, 1)[1])
+    n = d.size
+    r = float(_coefficients(d, power, 1)[1])
     # E[r] = phi - (1 + 4 phi) / n. Taking off all of it makes u too large on the whole, since tau bends upwards in phi;
     # a quarter of the constant part and three quarters of the other is what covers best (tests/test_simulation.py).
     phi = (n * r + 0.25) / (n - 3) if n > 8 else r + (1 + 4 * r) / n
@@ -130,12 +156,15 @@ def _variance_by_batches(samples: NDArray[np.float64]) -> float:
     return float(means.var(ddof=1)) / _BATCHES
 
 
-def _summed_time(samples: NDArray[np.float64]) -> tuple[float, int]:
+def _summed_time(d: NDArray[np.float64], power: float) -> tuple[float, int]:
     """The integrated autocorrelation time by summation, and the lag at which the sum was cut."""
-    n = samples.size
-    lags = min(n // 3, 20_000)
-    sums = 1 + 2 * np.cumsum(autocorrelation(samples, lags)[1:])
-    far = np.flatnonzero(np.arange(1, sums.size + 1) >= 8 * sums)
+    n = d.size
+    most = min(n // 3, 20_000)
+    for lags in (10, _DIRECT, most) if n >= _MANY else (most,):  # white noise is cut at the eighth or soon after
+        sums = 1 + 2 * np.cumsum(_coefficients(d, power, lags)[1:])
+        far = np.flatnonzero(np.arange(1, sums.size + 1) >= 8 * sums)
+        if far.size:
+            break
     window = int(far[0]) + 1 if far.size else sums.size
     time = float(sums[window - 1]) * (1 + (2 * window + 1) / n)
     return max(1.0, time), window

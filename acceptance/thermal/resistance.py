@@ -43,7 +43,9 @@ class Material:
 
 
 MATERIALS: Mapping[str, Material] = {
-    "copper": Material("copper", 234.5, 0.0, "234.5 for copper (IS 2705-1:1992, annex D-1; the other sources read agree)"),
+    "copper": Material(
+        "copper", 234.5, 0.0, "234.5 for copper (IS 2705-1:1992, annex D-1; the other sources read agree)"
+    ),
     # 225 in a US product standard, 228 in textbooks and cable standards (alpha at 20 °C is 0.00403), 229 in
     # IEC 61558-1 (from memory)
     "aluminium": Material("aluminium", 228.0, 3.0, "228 for aluminium; published values are 225 to 229"),

@@ -6,11 +6,30 @@ import numpy as np
 import pandas as pd
 import pytest
 
+from acceptance.bench import threads
 from acceptance.bench.health import check_health
 from acceptance.bench.log import BenchLog, Channel, Doubt
+from acceptance.bench.packed import Packed, pack
+from acceptance.bench.packed_frame import PackedArray
 
 RATED = {"main": (12.0, 3.0)}
 LEVELS = (0.0, 0.3, 0.75, 1.5, 2.25, 3.0)
+
+
+IS_PACKED = {"columns": False}
+
+
+@pytest.fixture(autouse=True, params=["plain", "packed"])
+def form(request, monkeypatch):
+    """Every check must see the same in the packed columns of a very long log, looked at in threads."""
+    if request.param == "packed":
+        monkeypatch.setitem(IS_PACKED, "columns", True)
+        monkeypatch.setattr(threads, "MANY", 0)
+
+
+def packed(values):
+    parts = [np.ascontiguousarray(values[at : at + 97]) for at in range(0, len(values), 97)]
+    return PackedArray(Packed([pack(part, 1, look_for_run=True) for part in parts]))
 
 
 def log_of(columns, *, stage="steady", table=None, assumed=(), stated=None, doubts=()):
@@ -19,6 +38,9 @@ def log_of(columns, *, stage="steady", table=None, assumed=(), stated=None, doub
     frame["stage"] = pd.Categorical([stage] * size if isinstance(stage, str) else list(stage))
     frame["table"] = np.zeros(size, int) if table is None else table
     frame["line"] = np.arange(2, size + 2)
+    if IS_PACKED["columns"]:
+        for key in columns:
+            frame[key] = packed(frame[key].to_numpy())
     channels = []
     for key in columns:
         quantity, _, qualifier = key.partition(" ")

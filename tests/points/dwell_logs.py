@@ -14,6 +14,8 @@ import numpy.typing as npt
 import pandas as pd
 
 from acceptance.bench.log import BenchLog
+from acceptance.bench.packed import Packed, pack
+from acceptance.bench.packed_frame import PackedArray
 
 __all__ = ["KINDS", "SweepLog", "bench_log", "is_exact", "make_sweep"]
 
@@ -189,6 +191,14 @@ def is_exact(found: list[Span], truth: tuple[Span, ...]) -> bool:
     return True
 
 
+PACKED = {"columns": False}  # whether logs are built as very long ones are kept
+
+
+def packed(values: np.ndarray) -> PackedArray:
+    parts = [np.ascontiguousarray(values[at : at + 61]) for at in range(0, len(values), 61)]
+    return PackedArray(Packed([pack(part, 3, look_for_run=True) for part in parts]))
+
+
 def bench_log(**columns: object) -> BenchLog:
     """A log of these columns; `__` in a name stands for the space before an output: output_current__main."""
     data = {name.replace("__", " "): values for name, values in columns.items()}
@@ -197,6 +207,9 @@ def bench_log(**columns: object) -> BenchLog:
     for name in frame.columns:
         if name != "stage" and not name.startswith("load_mode"):
             frame[name] = frame[name].astype(np.int64 if name == "table" else np.float64)
+    for name in frame.columns if PACKED["columns"] else ():
+        if frame[name].dtype == np.float64:
+            frame[name] = packed(frame[name].to_numpy())
     frame["stage"] = pd.Categorical(frame["stage"] if "stage" in frame else ["steady"] * rows)
     if "table" not in frame:
         frame["table"] = 0

@@ -12,6 +12,7 @@ from hypothesis.extra.numpy import arrays
 from scipy.signal import lfilter
 from scipy.special import bdtr
 
+from acceptance.points import type_a as type_a_module
 from acceptance.points.propagation import coverage_factor
 from acceptance.points.type_a import TypeA, autocorrelation, type_a
 
@@ -263,3 +264,32 @@ def test_type_a_does_not_gain_by_readings_repeated(times, seed):
     assert held.mean == pytest.approx(told.mean)
     assert held.effective_readings < 40 * 1.7
     assert held.standard_uncertainty > 0.75 * once.std(ddof=1) / math.sqrt(40)
+
+
+@pytest.mark.parametrize(
+    ("phi", "wander"),
+    [
+        pytest.param(0.0, 0.0, id="white"),
+        pytest.param(0.5, 0.0, id="short memory"),
+        pytest.param(0.98, 0.0, id="long memory"),
+        pytest.param(-0.4, 0.0, id="turning about"),
+        pytest.param(0.0, 3.0, id="drift under white noise"),
+    ],
+)
+@pytest.mark.parametrize("size", [20_000, 100_003])
+def test_type_a_of_many_samples_is_that_of_all_coefficients(phi, wander, size, monkeypatch):
+    """Forming no more coefficients than the sum asks for changes nothing beyond rounding."""
+    noise = np.random.default_rng(7).normal(size=size)
+    samples = np.array(noise)
+    for at in range(1, size if phi else 0):
+        samples[at] += phi * samples[at - 1]
+    samples += 12 + wander * np.linspace(-1, 1, size) ** 2
+
+    found = type_a_module.type_a(samples)
+    monkeypatch.setattr(type_a_module, "_MANY", size + 1)
+    whole = type_a_module.type_a(samples)
+
+    assert found.mean == whole.mean
+    assert found.readings == whole.readings
+    for name in ("standard_uncertainty", "degrees_of_freedom", "effective_readings", "deviation"):
+        assert getattr(found, name) == pytest.approx(getattr(whole, name), rel=1e-11), name
