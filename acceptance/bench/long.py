@@ -21,6 +21,7 @@ import numpy as np
 from acceptance.bench.digits import spots
 from acceptance.bench.gathered import Gathered
 from acceptance.bench.headings import Vocabulary
+from acceptance.bench.memory import keep_freed_memory
 from acceptance.bench.outline import Start, outline_of
 from acceptance.bench.pieces import Odd, Piece, take_apart
 from acceptance.bench.table import Source
@@ -31,7 +32,7 @@ from acceptance.errors import LogError
 __all__ = ["LONG", "read_long"]
 
 LONG = 50_000_000  # bytes from which on a log is read in pieces
-_PIECE = 1 << 20  # small enough for a processor's own memory: twice as fast as larger ones
+_PIECE = 2 << 20  # larger ones fall out of a processor's own memory, smaller ones keep the threads waiting
 _HEAD = 2 << 20  # notes, headings and first rows lie in here
 _END = 1 << 16  # the last piece holds at least this much, so that the end of the log can be looked at
 _LONGEST_LINE = 8 << 20
@@ -67,6 +68,7 @@ def read_long(
         If no line ends in the first megabytes, the file changes while it is read, it holds no table of readings, or
         at the first line that does not fit its headings.
     """
+    keep_freed_memory()
     with path.open("rb") as stream:
         before = os.fstat(stream.fileno())
         text = _Text(stream, before.st_size, progress)

@@ -144,12 +144,14 @@ def _plain(body: bytes, plan: Outline, looked_at: Sequence[int], *, is_last: boo
 
 def _without_asides(text: bytes, plan: Outline) -> tuple[bytes, list[tuple[int, bytes]]]:
     """The lines without those that are no rows in any case, and these, each with the number of rows before it."""
-    if b"\n#" not in text and b"\n\n" not in text and not text.startswith((b"#", b"\n")):
-        return text, []
     each = np.frombuffer(text, np.uint8)
     ends = np.flatnonzero(each == ord("\n")) + 1
+    if not ends.size:
+        return text, []
     starts = np.concatenate(([0], ends[:-1]))
     first = each[starts]
+    if not ((first == ord("#")) | (first == ord("\n"))).any():  # faster than to look for both in the text
+        return text, []
     is_aside = (first == ord("\n")) & (not plan.has_more_numbers)
     if plan.layout.numbers[0] == 0 and not plan.heading.startswith(b"#"):
         is_aside |= first == ord("#")

@@ -9,7 +9,6 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 from dataclasses import dataclass
-from itertools import combinations
 from typing import Literal
 
 import numpy as np
@@ -32,6 +31,7 @@ _PAIRS = 18  # for two, each
 _LONGEST: dict[Kind, float] = {"free": 8.0, "from zero": 8.0, "to zero": 100.0}
 _STEPS = 60
 _CONVERGED = 1e-10
+_ALIKE = 1e-11  # of the product of two columns' squares: a smaller determinant is rounding
 _SLOW = 8  # time constants tried when asking how high a curve may end
 _QUICK_STEPS = 7
 _NEXT = 1.1
@@ -212,11 +212,6 @@ class _Fit:
         """The longest time constant that is looked for. [s]"""
         return _LONGEST[self.kind] * max(float(np.ptp(self.time)), float(self.time[-1]))
 
-    def rss(self, taus: Floats) -> float:
-        """Sum of squared residuals."""
-        residuals = self.solved(taus)[1]
-        return float(residuals @ residuals)
-
 
 def _constant(values: Floats) -> Target:
     array = np.asarray(values, dtype=float)
@@ -231,10 +226,37 @@ def _start(fit: _Fit, order: int) -> Floats | None:
     low, high = math.log(max(closest / 3, span / 300)), math.log(fit.longest)
     count = _GRID if order == 1 else _PAIRS
     grid = np.exp(np.linspace(low, high, count))
-    tried = [np.array(pick) for pick in combinations(grid, order)]
-    scores = [fit.rss(taus) for taus in tried]
-    best = int(np.argmin(scores))
-    return tried[best] if math.isfinite(scores[best]) else None
+    scores = _scores(fit, grid, order)
+    best = np.unravel_index(int(np.argmin(scores)), scores.shape)
+    return grid[np.array(best)] if math.isfinite(scores[best]) else None
+
+
+def _scores(fit: _Fit, grid: Floats, order: int) -> Floats:
+    """Sums of squared residuals for each time constant of a grid, or each pair of them, by normal equations.
+
+    Good enough to start from, and all of them in one go; a pair that cannot be told apart scores infinity.
+    """
+    columns = np.exp(-fit.time[:, None] / grid)
+    values = np.column_stack([fit.target(float(tau)) for tau in grid])
+    if fit.kind == "free":  # the level follows the means
+        columns, values = columns - columns.mean(axis=0), values - values.mean(axis=0)
+    elif fit.kind == "from zero":
+        columns = 1 - columns
+    squares, alone = np.square(values).sum(axis=0), np.square(columns).sum(axis=0)
+    cross = columns.T @ values
+    with np.errstate(divide="ignore", invalid="ignore"):
+        if order == 1:
+            scores = squares - np.diag(cross) ** 2 / alone
+        else:
+            # a quicker one i beside a slower one j, and the values that go with j
+            gram = columns.T @ columns
+            p, q, a, c = cross, np.diag(cross), alone[:, None], alone
+            determinant = a * c - gram**2
+            scores = squares - (c * p**2 - 2 * gram * p * q + a * q**2) / determinant
+            told = np.triu(determinant > _ALIKE * a * c, k=1)
+            scores = np.where(told, scores, math.inf)
+    finite: Floats = np.where(np.isfinite(scores), scores, math.inf)
+    return finite
 
 
 def _refined(fit: _Fit, start: Floats) -> Floats:

@@ -185,6 +185,9 @@ def _judged(
     curve, freed, noise = fitted
     window, time = criterion.window, warming.time[last]
     slope = _slope(warming, last, noise, criterion)
+    bare = replace(bare, slope=slope, slope_bound=slope.bound(criterion.confidence), u_reading=noise.of_mean(window))
+    if reason := _unsettled(bare, warming, criterion):
+        return replace(bare, reason=reason)
     level, drift = line_of(time, freed[last])
     reach, u_ahead, u_log_tau = _reaches(warming, (curve, freed, noise), slope, criterion)
     # what the lag behind the room hides counts as still to come
@@ -192,12 +195,9 @@ def _judged(
     found = replace(
         bare,
         to_come=ahead - bare.rise,
-        u_reading=noise.of_mean(window),
         u_to_come=math.hypot(u_ahead, reach * drift * min(1.0, u_log_tau)),
-        slope=slope,
-        slope_bound=slope.bound(criterion.confidence),
     )
-    reason = _unsettled(found, warming, criterion) or _far(found, curve, criterion)
+    reason = _far(found, curve, criterion)
     found = replace(found, reason=reason, settled=not reason)
     top = float(running_means(warming.time, freed, window / 3)[0].max())
     least = _CLEARLY * noise.of_mean(window / 3) + _OVERSHOOT * criterion.allowed * window
