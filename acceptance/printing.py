@@ -2,12 +2,13 @@
 
 Values come in as SI (ratios as fractions) and leave as text. Rounding follows the uncertainty: two significant digits
 of U, and as many decimals of the value. A value never prints on another side of its limit than it lies on: where
-rounding would do that, it gets more digits. Limits are printed exactly as they are, in the shortest form.
+rounding would do that, it gets more digits. Limits are printed as they were written, in the shortest form.
 
     with_uncertainty   "90.12 % ± 0.18 %"
     quantity           "12.3 mV"
     limit_range        "≥ 88 %", "23.52 V to 24.48 V"
     printed            value, U, limits and margin of one finding, in one unit, for the columns of a table
+    printed_finding    the same of a finding of the record
     column             the numbers of one column of a table, on one scale, with decimals that stand below one another
     probability        "97.3 %", "> 99.9 %"
     duration           "1 h 5 min"
@@ -21,6 +22,10 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from decimal import Decimal, localcontext
 from functools import lru_cache
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from acceptance.record import Alternative, Finding
 
 __all__ = [
     "DASH",
@@ -34,6 +39,7 @@ __all__ = [
     "limit_range",
     "minus_signs",
     "printed",
+    "printed_finding",
     "probability",
     "quantity",
     "scale_for",
@@ -234,6 +240,20 @@ def printed(
         low=scale.limit(low) if low is not None and _is_number(low) else DASH,
         high=scale.limit(high) if high is not None and _is_number(high) else DASH,
         margin=_margin_text(scale, margin, decimals, stripped=not _is_number(expanded) or expanded == 0),
+    )
+
+
+def printed_finding(finding: Finding, other: Alternative | None = None) -> Printed:
+    """The texts of a finding, or of another dwell that met its condition, all on one scale."""
+    shown = finding if other is None else other
+    return printed(
+        shown.value,
+        shown.expanded_uncertainty,
+        finding.unit,
+        low=finding.min,
+        high=finding.max,
+        margin=shown.margin,
+        per_cent=finding.in_per_cent,
     )
 
 

@@ -105,15 +105,15 @@ def _print_words(record: Record, record_path: Path, report_path: Path) -> None:
 
 
 def _line(finding: Finding, names: int) -> str:
-    from acceptance.printing import DASH, limit_range, printed
+    from acceptance.printing import DASH, limit_range, printed_finding
 
     told = [harmless(finding.name).ljust(names), harmless(finding.condition)]
     if finding.value is not None:
-        per_cent, low, high = finding.in_per_cent, finding.min, finding.max
-        u, unit = finding.expanded_uncertainty, finding.unit
-        texts = printed(finding.value, u, unit, low=low, high=high, per_cent=per_cent)
+        texts = printed_finding(finding)
         uncertainty = "" if texts.expanded == DASH else f" ± {texts.with_difference_unit(texts.expanded)}"
-        limit = harmless(finding.asked) or limit_range(low, high, unit, per_cent=per_cent)
+        limit = harmless(finding.asked) or limit_range(
+            finding.min, finding.max, finding.unit, per_cent=finding.in_per_cent
+        )
         told.append(f"{harmless(texts.with_unit(texts.value))}{uncertainty} (limit {limit})")
     if finding.reason:
         told.append(harmless(finding.reason))

@@ -6,7 +6,7 @@ import re
 from collections.abc import Sequence
 from typing import Literal
 
-from acceptance.printing import DASH, minus_signs, printed, probability
+from acceptance.printing import DASH, minus_signs, printed_finding, probability
 from acceptance.record import Alternative, Finding, Record
 from acceptance.report.blocks import Block, Text, heading, subheading
 from acceptance.report.front import limit_text, named, verdict_mark
@@ -78,15 +78,7 @@ _OPEN = re.compile(r"\bany\b")  # a condition that leaves open what was run
 
 
 def _row(finding: Finding, record: Record) -> Row:
-    texts = printed(
-        finding.value,
-        finding.expanded_uncertainty,
-        finding.unit,
-        low=finding.min,
-        high=finding.max,
-        margin=finding.margin,
-        per_cent=finding.in_per_cent,
-    )
+    texts = printed_finding(finding)
     kind = finding.characteristic.replace("_", " ")
     several = len(record.ratings.outputs) > 1 and finding.output not in finding.condition
     output = f"output {finding.output}" if several and finding.output else ""
@@ -193,15 +185,7 @@ def _other_columns(rows: Sequence[Row]) -> list[Column]:
 
 
 def _alternative(other: Alternative, finding: Finding, record: Record, number: int | None) -> list[str | Cell]:
-    texts = printed(
-        other.value,
-        other.expanded_uncertainty,
-        finding.unit,
-        low=finding.min,
-        high=finding.max,
-        margin=other.margin,
-        per_cent=finding.in_per_cent,
-    )
+    texts = printed_finding(finding, other)
     place = fold(other.where) if number is None else str(number)
     at = f":  {minus_signs(fold(other.at))}" if other.at and number is None else ""
     dwell = [Run(place + at, DENSE)]

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections import Counter
 from collections.abc import Sequence
 
-from acceptance.printing import DASH, Printed, printed, probability, quantity
+from acceptance.printing import DASH, printed_finding, probability, quantity
 from acceptance.printing import duration as printed_duration
 from acceptance.record import Finding, FindingVerdict, Hazard, Ratings, Record
 from acceptance.report.blocks import Beside, Block, Panel, Rule, Stack, Text
@@ -242,21 +242,10 @@ def _reason(finding: Finding) -> str:
         return fold(f"{finding.value}, limit {limit_text(finding)}: {reason}") if finding.asked else reason
     if finding.value is None:
         return reason
-    texts = _printed(finding, finding.value)
+    texts = printed_finding(finding)
     value = texts.with_unit(texts.value)
     value += f" ± {texts.with_difference_unit(texts.expanded)}" if texts.expanded != DASH else ""
     return fold(f"{value}, limit {limit_text(finding)}: {reason}")
-
-
-def _printed(finding: Finding, value: float | None) -> Printed:
-    return printed(
-        value,
-        finding.expanded_uncertainty,
-        finding.unit,
-        low=finding.min,
-        high=finding.max,
-        per_cent=finding.in_per_cent,
-    )
 
 
 def _shortened(text: str) -> str:
@@ -269,8 +258,7 @@ def limit_text(finding: Finding) -> str:
     """What the finding had to meet, in the unit its value is printed in, or in words."""
     if finding.asked.strip():
         return fold(finding.asked)
-    numbers = finding.value if isinstance(finding.value, (int, float)) else None
-    texts = _printed(finding, numbers)
+    texts = printed_finding(finding)
     low, high = texts.with_unit(texts.low), texts.with_unit(texts.high)
     if texts.low != DASH and texts.high != DASH:
         return f"{low} to {high}"
