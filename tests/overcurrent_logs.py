@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 
 from acceptance.bench.log import BenchLog, Channel
 from acceptance.limitfile.limits import Limits
-from tests.checks.built import limits_from
+from tests.checks.built import HEAD, limits_from
 
 Floats = NDArray[np.float64]
 
@@ -25,14 +25,6 @@ ACCURATE = """
 instruments:
   output_voltage: {device: M1, accuracy: "0.1 % reading + 6 mV"}
   output_current: {device: L1, accuracy: "0.2 % reading + 4 mA"}
-"""
-HEAD = """
-acceptance: 1
-product: {name: "Check rail 12", revision: A, protection_class: I}
-ratings:
-  input: {supply: ac, voltage: 230 V, range: [207 V, 253 V], frequency: 50 Hz}
-  outputs:
-    main: {voltage: 12 V, current: 4 A}
 """
 EVERYTHING = """
   overcurrent:

@@ -13,7 +13,7 @@ from acceptance.overload.episodes import Episode
 from acceptance.overload.trace import Trace, scatter
 from acceptance.points.instrument import converter_step_uncertainty
 from acceptance.points.point import Estimate
-from acceptance.points.propagation import Source, of_source
+from acceptance.points.propagation import Source, coverage_factor, of_source
 
 __all__ = ["Returned", "returned_after"]
 
@@ -60,6 +60,7 @@ def returned_after(episode: Episode, *, band: float, within: float) -> Returned:
     back = removed + (int(out[-1]) + 1 if out.size else 0)
     most = float(time[back] - time[episode.last_over])
     least = max(0.0, float(time[max(back - 1, removed)] - time[removed]))
+    _see_to_the_band(episode, trace.voltage[back:ends], band)
     value = _with_errors(episode, back, most, bracket=most - least)
     told = f"between {least:.3g} s and {most:.3g} s, by the samples"
     if most > within >= least:
@@ -89,9 +90,36 @@ def _with_errors(episode: Episode, back: int, most: float, *, bracket: float) ->
         moved = abs(float(trace.voltage[back] - trace.voltage[before]))
         u_edge = float(time[back] - time[before]) * u_voltage / max(moved, u_voltage, 1e-300)
     if _LOST * math.hypot(u_digits, u_edge) < bracket:
-        return Estimate(most)
+        return Estimate(most, _unstated(trace))
     value = most + of_source(u_digits, Source("digits of the time", "B"))
-    return Estimate(value + of_source(u_edge, Source("error of the voltage at the edge of the band", "B")))
+    value = value + of_source(u_edge, Source("error of the voltage at the edge of the band", "B"))
+    return Estimate(value, _unstated(trace))
+
+
+def _unstated(trace: Trace) -> frozenset[str]:
+    """The voltage, where nothing says how well it was read: then it is not known when it was in the band."""
+    return frozenset() if trace.part.bench.is_stated(trace.voltage_key) else frozenset({trace.voltage_key})
+
+
+def _see_to_the_band(episode: Episode, back: np.ndarray[tuple[int], np.dtype[np.float64]], band: float) -> None:
+    """See to it that what came back lies in the band by more than its voltage may be wrong.
+
+    Raises
+    ------
+    MeasurementError
+        If it may as well lie outside, under any rule but `simple`.
+    """
+    trace = episode.trace
+    decision, rated = trace.part.limits.decision, trace.rated_voltage
+    level = float(back.mean())
+    u = trace.part.bench.standard_uncertainty(trace.voltage_key, level)
+    bound = coverage_factor(decision.confidence, math.inf) * u
+    if decision.rule != "simple" and abs(level - rated) + bound > band * rated * (1 + 1e-9):
+        msg = (
+            f"the output came back to {level:.5g} V, which lies within {100 * band:g} % of {rated:g} V by less than "
+            f"its uncertainty of {bound:.2g} V ({episode.where}); use a better meter, or agree on a wider band"
+        )
+        raise MeasurementError(msg)
 
 
 def _step(trace: Trace, key: str) -> float:
@@ -147,4 +175,4 @@ def _not_back(
         raise MeasurementError(msg)
     last = episode.trace.voltage[episode.removed + inside.size - 1]
     reason = f"still at {last:.4g} V, outside the band, {lasts:.4g} s after the overload was removed"
-    return Returned(Estimate(lasts), episode.removed, None, "at least", reason)
+    return Returned(Estimate(lasts, _unstated(episode.trace)), episode.removed, None, "at least", reason)

@@ -428,6 +428,27 @@ def test_recovery_that_the_samples_leave_open_is_not_judged():
     assert decided.verdict == "not judged"
 
 
+def test_recovery_without_an_accuracy_of_the_voltage_is_not_judged():
+    """Nobody knows when a voltage of unknown error was in the band."""
+    bench = 'instruments:\n  output_current: {device: L1, accuracy: "0.2 % reading + 4 mA"}\n'
+
+    decided = judged(slow(Unit("constant current", 4.6)), "recovery: {within: 3 s, band: 3 %}", bench=f"\n{bench}")
+
+    assert decided.verdict == "not judged"
+    assert "output_voltage main" in decided.reason
+
+
+@pytest.mark.parametrize(("beyond", "verdict"), [(0.005, "not judged"), (0.05, "pass")])
+def test_recovery_to_the_edge_of_the_band_is_not_judged(beyond, verdict):
+    """The voltage is known to 18 mV as a bound, 20 mV as U: 5 mV inside the edge shows nothing."""
+    frame = slow(Unit("constant current", 4.6))
+    off = abs(float(frame["output_voltage main"].iloc[-20:].mean()) - VOLTS)
+
+    decided = judged(frame, f"recovery: {{within: 3 s, band: {100 * (off + beyond) / VOLTS:.4f} %}}")
+
+    assert decided.verdict == verdict
+
+
 def test_overload_that_is_not_removed_has_no_recovery():
     frame = slow(Unit("constant current", 4.6))
     decided = judged(frame.iloc[:-LONG], "recovery: {within: 2 s, band: 3 %}")
